@@ -1,0 +1,105 @@
+"""Where the ground is frozen: array functions on node temperatures, used by the study and by `soiltemp.frost`."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+__all__ = ["deepest_frost", "frozen_zones", "ice_depth"]
+
+Floats = NDArray[np.float64]
+
+
+def deepest_frost(depths: Floats, temperature: Floats, isotherm: float = 0.0) -> Floats:
+    """Lower edge of the deepest zone colder than `isotherm`, by straight lines between depths.
+
+    Parameters
+    ----------
+    depths : float64 (depth,)
+        Depths, increasing [m].
+    temperature : float64 (..., depth)
+        Temperatures [degC].
+    isotherm : float
+        Temperature below which ground counts as frozen [degC].
+
+    Returns
+    -------
+    float64 (...)
+        Depth [m]; 0 where nothing is frozen, the last depth where the column is frozen to its end.
+
+    Examples
+    --------
+    >>> deepest_frost(np.array([0.0, 1.0, 2.0]), np.array([[-2.0, 2.0, 4.0], [3.0, -1.0, 1.0], [1.0, 2.0, 3.0]]))
+    array([0.5, 1.5, 0. ])
+    """
+    cold = temperature < isotherm
+    last = depths.size - 1
+    deepest = last - np.argmax(cold[..., ::-1], axis=-1)
+    below = np.minimum(deepest + 1, last)
+    upper = np.take_along_axis(temperature, deepest[..., None], axis=-1)[..., 0]
+    lower = np.take_along_axis(temperature, below[..., None], axis=-1)[..., 0]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        share = (isotherm - upper) / (lower - upper)
+    crossing = depths[deepest] + np.where(below > deepest, share, 0.0) * (depths[below] - depths[deepest])
+    return np.asarray(np.where(cold.any(axis=-1), crossing, 0.0))
+
+
+def frozen_zones(depths: Floats, temperature: Floats, isotherm: float = 0.0) -> list[tuple[float, float]]:
+    """All zones colder than `isotherm` in one profile, from the top down, as (upper edge, lower edge) [m].
+
+    Examples
+    --------
+    >>> frozen_zones(np.array([0.0, 1.0, 2.0, 3.0, 4.0]), np.array([-1.0, 1.0, -1.0, -1.0, 1.0]))
+    [(0.0, 0.5), (1.5, 3.5)]
+    """
+    cold = temperature < isotherm
+    edges = np.flatnonzero(cold[1:] != cold[:-1])
+    share = (isotherm - temperature[edges]) / (temperature[edges + 1] - temperature[edges])
+    crossings = (depths[edges] + share * (depths[edges + 1] - depths[edges])).tolist()
+    if cold[0]:
+        crossings.insert(0, float(depths[0]))
+    if cold[-1]:
+        crossings.append(float(depths[-1]))
+    return list(zip(crossings[::2], crossings[1::2], strict=True))
+
+
+def ice_depth(depths: Floats, share: Floats) -> Floats:
+    """Lower edge of the deepest frozen ground, read from how much of each node's volume is frozen.
+
+    The volumes of the deepest zone that holds ice are added up, each with its frozen share, from the zone's first
+    wholly frozen node (or its first node at all) downward. A sharp front is placed within its element this way, where a
+    straight line between node temperatures errs by up to the element.
+
+    Parameters
+    ----------
+    depths : float64 (node,)
+        Node depths [m].
+    share : float64 (..., node)
+        Frozen share of each node's volume, 0 to 1.
+
+    Returns
+    -------
+    float64 (...)
+        Depth [m]; 0 where there is no ice.
+
+    Examples
+    --------
+    >>> ice_depth(np.array([0.0, 1.0, 2.0, 3.0]), np.array([[1.0, 0.25, 0.0, 0.0], [0.0, 0.0, 0.0, 0.0]]))
+    array([0.75, 0.  ])
+    """
+    bounds = np.concatenate([depths[:1], 0.5 * (depths[:-1] + depths[1:]), depths[-1:]])
+    volume = np.diff(bounds)
+    last = depths.size - 1
+    icy = share > 0.0
+    deepest = last - np.argmax(icy[..., ::-1], axis=-1)
+    node = np.arange(depths.size)
+    upto = node <= deepest[..., None]
+    # Upper end of the count: the lowest wholly frozen node above, or the top of the zone where none is wholly frozen.
+    whole = (share >= 1.0) & upto
+    gap = ~icy & upto
+    start_whole = np.where(whole.any(axis=-1), last - np.argmax(whole[..., ::-1], axis=-1), -1)
+    start_gap = np.where(gap.any(axis=-1), last - np.argmax(gap[..., ::-1], axis=-1) + 1, 0)
+    start = np.maximum(start_whole, start_gap)
+    counted = (node >= start[..., None]) & upto
+    below = np.sum(share * volume, axis=-1, where=counted)
+    return np.asarray(np.where(icy.any(axis=-1), bounds[start] + below, 0.0))

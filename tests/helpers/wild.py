@@ -1,0 +1,78 @@
+"""Random columns far wilder than any real one, to try the solver on: shared by the tests and the long run."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from soiltemp.column import Column
+from soiltemp.ground import Layer, Profile
+from soiltemp.materials import Material
+from soiltemp.solver.march import March, make_schedule, march
+
+
+@dataclass(frozen=True)
+class WildCase:
+    """A column, a forcing and a step."""
+
+    column: Column
+    seconds: np.ndarray
+    surface: np.ndarray
+    start: np.ndarray
+    step: float
+    base_flux: float
+
+
+def wild_case(seed: int) -> WildCase:
+    """Draw a case: 1 to 8 layers, conductivity 0.02 to 4 W/(m K), frozen/thawed ratio 1/4 to 4, freezing range 1e-4 to 3 K,
+    elements from 1 mm, steps from 1 minute to 1 year, surface to +-90 degC with jumps."""
+    rng = np.random.default_rng(seed)
+    layers = []
+    for _ in range(rng.integers(1, 9)):
+        conductivity = float(np.exp(rng.uniform(np.log(0.02), np.log(4.0))))
+        ratio = float(np.exp(rng.uniform(-np.log(4.0), np.log(4.0))))
+        capacity = float(rng.uniform(0.3e6, 4e6))
+        latent = float(rng.choice([0.0, rng.uniform(1e6, 3.3e8)]))
+        layers.append(
+            Layer(
+                Material(
+                    "wild", conductivity, conductivity * ratio, capacity, capacity * float(rng.uniform(0.5, 1.0)), latent,
+                    freezing_point=float(rng.choice([0.0, -rng.uniform(0.0, 5.0)])),
+                    freezing_range=float(np.exp(rng.uniform(np.log(1e-4), np.log(3.0)))),
+                ),
+                float(np.exp(rng.uniform(np.log(0.004), np.log(3.0)))),
+            )
+        )  # fmt: skip
+    profile = Profile(layers)
+    depths, layer = [0.0], []
+    for index, part in enumerate(profile.layers):
+        elements = 2 * int(rng.integers(1, 12))
+        sizes = np.exp(rng.uniform(0.0, 1.5, elements))
+        top = depths[-1]
+        edges = top + part.thickness * np.cumsum(sizes) / sizes.sum()
+        edges[-1] = top + part.thickness
+        depths.extend(edges.tolist())
+        layer.extend([index] * elements)
+    column = Column(profile, np.array(depths), np.array(layer, dtype=np.int64))
+    step = float(np.exp(rng.uniform(np.log(60.0), np.log(365 * 86400.0))))
+    knots = int(rng.integers(5, 60))
+    seconds = step * np.arange(knots + 1)
+    amplitude = rng.uniform(1.0, 90.0)
+    surface = np.clip(rng.uniform(-amplitude, amplitude, knots + 1), -90.0, 90.0)
+    start = np.interp(column.depths, [0.0, column.depths[-1]], rng.uniform(-20.0, 20.0, 2))
+    base_flux = float(rng.choice([0.0, rng.uniform(-0.5, 0.5)]))
+    return WildCase(column, seconds, surface, start, step, base_flux)
+
+
+def march_wild(case: WildCase, tolerance: float = np.inf) -> tuple[March, float]:
+    """March a case; return it and its heat balance error relative to the heat exchanged."""
+    schedule = make_schedule(case.seconds, case.surface, case.seconds, max_step=case.step)
+    run = march(
+        case.column.table, schedule, case.start, base_flux=case.base_flux, watch=1, tolerance=tolerance
+    )
+    stored = case.column.heat_content(run.temperature)
+    entered = run.heat + case.base_flux * (schedule.seconds - schedule.seconds[0])
+    error = np.abs((stored - stored[0]) - entered).max()
+    exchanged = np.abs(np.diff(run.heat)).sum() + abs(case.base_flux) * schedule.duration + np.abs(np.diff(stored)).sum()
+    return run, float(error / exchanged)

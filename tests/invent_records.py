@@ -1,0 +1,114 @@
+"""Invent the weather records of the example sites, always the same to the last byte.
+
+Run it from anywhere with ``python tests/invent_records.py``; it writes into ``example_sites/``. The numbers are no
+measurement: an annual wave, a daily wave where the record is hourly, and weather as a first-order autoregressive noise.
+Only additions and multiplications make the noise, so that every machine invents the same.
+"""
+
+from __future__ import annotations
+
+import datetime
+import math
+import pathlib
+import random
+from collections.abc import Iterator
+
+FOLDER = pathlib.Path(__file__).resolve().parent.parent / "example_sites"
+
+DAY = datetime.timedelta(days=1)
+HOUR = datetime.timedelta(hours=1)
+
+
+def _normal(source: random.Random) -> float:
+    """Nearly normal number (sum of twelve uniform ones less six): exact arithmetic, hence the same everywhere."""
+    return sum(source.random() for _ in range(12)) - 6.0
+
+
+def _weather(source: random.Random, memory: float, spread: float) -> Iterator[float]:
+    """First-order autoregressive noise with standard deviation `spread` [K] and autocorrelation `memory`."""
+    state = 0.0
+    fresh = math.sqrt(1.0 - memory * memory)
+    while True:
+        state = memory * state + fresh * spread * _normal(source)
+        yield state
+
+
+def _season(moment: datetime.datetime, coldest: datetime.datetime) -> float:
+    """Cosine of the annual wave: 1 at the coldest time, -1 half a year later."""
+    return math.cos(2.0 * math.pi * ((moment - coldest) / DAY) / 365.25)
+
+
+def wether_lane() -> str:
+    """Daily means of six years, cold and continental; the winter of 2018-19 is the severe one."""
+    source = random.Random(20150701)
+    noise = _weather(source, memory=0.78, spread=1.0)
+    missing = {datetime.date(2016, 3, 8), datetime.date(2017, 11, 20), datetime.date(2017, 11, 21)}
+    missing |= {datetime.date(2019, 8, 3) + day * DAY for day in range(3)}
+    sentinels = {datetime.date(2016, 12, 29), datetime.date(2018, 6, 17), datetime.date(2020, 2, 10)}
+    doubled = datetime.date(2018, 4, 2)
+    severe = (datetime.datetime(2018, 12, 1), datetime.datetime(2019, 3, 20))
+    lines = [
+        "# Invented for demonstration by tests/invent_records.py; not a measurement",
+        "# place: Wether Lane (invented), latitude 47.2, longitude -94.6",
+        "# values: daily mean of the air temperature 1.5 m above ground",
+        "# time_zone: local standard time (UTC-6)",
+        "date,air_temperature_degC",
+    ]
+    moment = datetime.datetime(2015, 7, 1)
+    while moment < datetime.datetime(2021, 7, 1):
+        season = _season(moment, datetime.datetime(2016, 1, 18))
+        value = 4.2 - 17.0 * season + next(noise) * (4.6 + 2.2 * season)  # weather is rougher in winter
+        if severe[0] <= moment < severe[1]:
+            value -= 6.5
+        date = moment.date()
+        text = "-9999" if date in sentinels else f"{value:.1f}"
+        if date not in missing:
+            lines.append(f"{date.isoformat()},{text}")
+        if date == doubled:
+            lines.append(f"{date.isoformat()},{text}")
+        moment += DAY
+    return "\n".join(lines) + "\n"
+
+
+def kettle_yard() -> str:
+    """Hourly readings of one year in degF, cold and near the sea: a long winter, cool summer, small daily wave."""
+    source = random.Random(20200701)
+    noise = _weather(source, memory=0.985, spread=1.0)
+    flutter = random.Random(20200702)
+    outages = (
+        (datetime.datetime(2020, 9, 14, 10), 3),
+        (datetime.datetime(2020, 12, 5, 22), 9),
+        (datetime.datetime(2021, 2, 17, 4), 1),
+        (datetime.datetime(2021, 5, 26, 13), 2),
+    )
+    missing = {first + hour * HOUR for first, hours in outages for hour in range(hours)}
+    lines = [
+        "# Invented for demonstration by tests/invent_records.py; not a measurement",
+        "# place: Kettle Yard (invented), latitude 60.5, longitude -151.0",
+        "# values: readings of the air temperature 2 m above ground",
+        "# time_zone: local standard time (UTC-9)",
+        "time,t_air [degF]",
+    ]
+    moment = datetime.datetime(2020, 7, 1)
+    while moment <= datetime.datetime(2021, 7, 1):
+        season = _season(moment, datetime.datetime(2021, 1, 16))
+        daily = (2.6 - 1.8 * season) * math.cos(2.0 * math.pi * (moment.hour - 5) / 24.0)
+        celsius = 1.2 - 11.5 * season - daily + next(noise) * (3.4 + 2.0 * season) + 0.25 * _normal(flutter)
+        if moment not in missing:
+            lines.append(f"{moment:%Y-%m-%d %H:%M},{celsius * 1.8 + 32.0:.1f}")
+        moment += HOUR
+    return "\n".join(lines) + "\n"
+
+
+RECORDS = {"wether_lane_air.csv": wether_lane, "kettle_yard_air.csv": kettle_yard}
+
+
+def main() -> None:
+    """Write every record into the folder of the example sites."""
+    FOLDER.mkdir(exist_ok=True)
+    for name, invent in RECORDS.items():
+        (FOLDER / name).write_bytes(invent().encode("ascii"))
+
+
+if __name__ == "__main__":
+    main()
