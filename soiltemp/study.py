@@ -135,7 +135,7 @@ def solve(
     >>> import soiltemp
     >>> silt = soiltemp.Material("silt", 1.2, 1.9, 2.8e6, 2.1e6, 90e6)
     >>> profile = soiltemp.Profile([soiltemp.Layer(silt, 15.0)])
-    >>> surface = soiltemp.periodic_surface("4 degC", "17 K", "01-20", start="2020-07-01", years=1, every="1D")
+    >>> surface = soiltemp.periodic_surface("6 degC", "16 K", "01-20", start="2020-07-01", years=1, every="1D")
     >>> result = soiltemp.solve(profile, surface, initial="cycle", depths=[0.5, 1.0, 2.0])
     >>> bool(1.5 < result.frost_depth.max() < 2.2)
     True
@@ -356,7 +356,7 @@ def _labelled(problem: _Problem, answer: _Answer, times: Any, outputs: Floats, w
     values = {
         "ground_temperature": (("time", "depth"), column.at(run.temperature, wanted)),
         "surface_heat_flux": (("time",), flux),
-        "base_heat_flux": (("time",), np.full(outputs.size, -problem.base_flux)),
+        "base_heat_flux": (("time",), np.full(outputs.size, 0.0 - problem.base_flux)),
         "heat_content": (("time",), column.heat_content(run.temperature)),
         "frost_depth": (("time",), answer.frost),
         "frozen_ground_depth": (("time",), answer.frozen),

@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from scipy.integrate import quad  # type: ignore[import-untyped]  # scipy ships no types
+from scipy.integrate import quad
 
 from soiltemp.errors import InputError
 from soiltemp.materials import Curves, Material

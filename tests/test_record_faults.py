@@ -355,6 +355,30 @@ CASES: dict[str, tuple[str | bytes, dict[str, Any], type[SoilTempError], tuple[s
             "leave the faulty",
         ),
     ),
+    "huge values": (
+        daily(["1e308", "1.5"]),
+        {},
+        DataFileError,
+        ("line 2", "2020-01-01", "1e+308 degC", "-90 to 60 degC"),
+    ),
+    "overflow": (
+        with_line(5, "2020-01-04,1e400"),
+        {},
+        DataFileError,
+        ("line 5", '"1e400"', "a number", "correct"),
+    ),
+    "long unprintable name": (
+        "date,t\u2028" + 3000 * "x" + "\n2020-01-01,1\n2020-01-02,2\n",
+        {},
+        UnitError,
+        ('column "t?xxx', "...", "no unit"),
+    ),
+    "many columns": (
+        ",".join(f"column_{k}" for k in range(900)) + "\n" + ",".join(["1.5"] * 900) + "\n",
+        {},
+        DataFileError,
+        ("no columns with dates", '"column_0"', "more"),
+    ),
     "minimum above maximum": (
         "date,tmin [degC],tmax [degC]\n" + "".join(f"2020-01-{d:02d},{d},{d - 5}\n" for d in range(1, 9)),
         {"column": ("tmin [degC]", "tmax [degC]")},

@@ -12,7 +12,16 @@ import numpy as np
 from soiltemp.errors import InputError, message
 from soiltemp.units import to_si
 
-__all__ = ["EARLIEST", "LATEST", "interval_text", "read_duration", "read_moment", "show_moment", "show_name", "show_value"]
+__all__ = [
+    "EARLIEST",
+    "LATEST",
+    "interval_text",
+    "read_duration",
+    "read_moment",
+    "show_moment",
+    "show_name",
+    "show_value",
+]
 
 EARLIEST = np.datetime64("1750-01-01", "s")
 """No record is older (our choice, against typos): regular readings begin in the 18th century."""

@@ -46,6 +46,7 @@ MOST_IMPOSSIBLE = 0.01
 """Largest share of impossible values taken for single faults; above it unit, column or sensor is wrong."""
 
 _RESOLUTION_COARSE = 0.4  # K; a record rounded to half or whole degrees repeats itself more often
+_KELVIN = (200.0, 350.0)  # no air temperature in degC or degF, every one in K
 _FEW = 3  # so many impossible values are single faults in any record
 _MOST_SHOWN = 10  # findings of one kind in the table
 _ZERO_CURTAIN = 0.5  # K; ground at 0 degC stays there while its water freezes or thaws
@@ -179,35 +180,32 @@ def check_unit_plausible(
 
     Notes
     -----
-    As stated degC: a median above 150 is kelvin. More than 1 % of the values (and more than 3) above the possible range, or,
-    over 30 days or more, a 95th percentile above 42 degC, is degF: daily mean air temperatures above 42 degC
-    hardly occur anywhere. As stated degF: at least 300 days of which 95 % lie below 5 degC is degC taken for
-    degF. As stated K: a median below -150 degC is degC or degF. The percentile rules hold for air and natural
-    ground, and are not used where the caller states another range of possible values.
+    As stated degC or degF: a median from 200 to 350 is kelvin. As stated degC: more than 1 % of the values (and
+    more than 3) above the possible range or, over 30 days or more, a 95th percentile above 42 degC, is degF:
+    daily mean air temperatures above 42 degC hardly occur anywhere. As stated degF: at least 300 days of which
+    95 % lie below 5 degC is degC. As stated K: a median below 123 K is degC or degF. The percentile rules hold
+    for air and natural ground, and are not used where the caller states another range of possible values.
     """
-    good = celsius[np.isfinite(celsius)]
+    good = np.clip(celsius[np.isfinite(celsius)], -1e6, 1e6)
     if good.size < 2:
         return
     median, high = (float(value) for value in np.percentile(good, (50.0, 95.0)))
     raw = {"degC": good, "degF": good * 1.8 + 32.0, "K": good + 273.15}[unit]
-    bulk = [float(value) for value in np.percentile(raw, (0.5, 99.5))]
+    lowest, middle, highest = (float(value) for value in np.percentile(raw, (0.5, 50.0, 99.5)))
     usual = limits == IMPOSSIBLE
     seems: str | None = None
-    if unit != "K" and float(np.median(raw)) > 200.0:
+    if unit != "K" and _KELVIN[0] < middle < _KELVIN[1]:
         seems = "K"
-    elif unit == "degC" and bulk[0] >= -90.0 and bulk[1] <= 140.0:
-        if int((good > limits[1]).sum()) > max(_FEW, MOST_IMPOSSIBLE * good.size) or (
-            usual and days >= 30.0 and high > 42.0
-        ):
+    elif unit == "degC" and lowest >= -90.0 and highest <= 140.0:
+        many = int((good > limits[1]).sum()) > max(_FEW, MOST_IMPOSSIBLE * good.size)
+        if many or (usual and days >= 30.0 and high > 42.0):
             seems = "degF"
     elif unit == "degF" and usual and days >= 300.0 and high < 5.0:
         seems = "degC"
     elif unit == "K" and median < -150.0:
         seems = "degC or degF"
     if seems is not None:
-        found = (
-            f"values from {raw.min():.1f} to {raw.max():.1f} (median {np.median(raw):.1f}) stated in {unit}"
-        )
+        found = f"values from {raw.min():.5g} to {raw.max():.5g} (median {middle:.4g}) stated in {unit}"
         allowed = f"values possible in {unit}, while these look like {seems}"
         raise DataFileError(message(where, found, allowed, "correct the unit, or the column"))
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -246,7 +247,7 @@ def _numbers(table: TextTable, index: int, missing_words: Sequence[str]) -> npt.
             text = (
                 text.replace(",", ".") if "." not in text else text + ","
             )  # a point beside commas is no number
-        if is_number(text):
+        if is_number(text) and math.isfinite(float(text)):
             known[cell] = float(text)
         elif not cell or cell.lower() in words:
             known[cell] = np.nan
