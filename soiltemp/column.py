@@ -69,7 +69,9 @@ def graded_grid(
     """
     # The target size is integrated on a fine ladder of depths: number of elements above depth z.
     base = float(np.sum(thicknesses))
-    ladder = np.unique(np.concatenate([np.linspace(0.0, min(base, frost_zone + 8.0), 2000), np.linspace(0.0, base, 2000)]))
+    ladder = np.unique(
+        np.concatenate([np.linspace(0.0, min(base, frost_zone + 8.0), 2000), np.linspace(0.0, base, 2000)])
+    )
     target = np.minimum(SMALLEST_ELEMENT + (GROWTH - 1.0) * ladder, FINE_ELEMENT)
     target = np.maximum(target, FINE_ELEMENT + (GROWTH - 1.0) * (ladder - frost_zone))
     target = np.minimum(target, COARSEST_ELEMENT)
@@ -173,7 +175,10 @@ def build_column(profile: Profile, *, frost_zone: float, fineness: float = 1.0) 
     if layer.size > 5000:
         raise InputError(
             message(
-                "column", f"{layer.size} elements", "at most 5000", "merge thin layers, or end the profile at a lesser depth"
+                "column",
+                f"{layer.size} elements",
+                "at most 5000",
+                "merge thin layers, or end the profile at a lesser depth",
             )
         )
     return Column(profile, depths, layer)

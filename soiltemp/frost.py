@@ -34,7 +34,12 @@ def _temperature(result: xr.Dataset) -> xr.DataArray:
     temperature = result["ground_temperature"]
     if set(temperature.dims) != {"time", "depth"}:
         raise InputError(
-            message("ground_temperature", f"dimensions {temperature.dims}", "time and depth", "select the others first")
+            message(
+                "ground_temperature",
+                f"dimensions {temperature.dims}",
+                "time and depth",
+                "select the others first",
+            )
         )
     if not bool(np.isfinite(temperature).all()):
         raise InputError(
@@ -78,7 +83,11 @@ def frost_depth(result: xr.Dataset) -> xr.DataArray:
     temperature = _temperature(result)
     values = deepest_frost(np.asarray(temperature["depth"], dtype=np.float64), np.asarray(temperature))
     return xr.DataArray(
-        values, {"time": temperature["time"]}, ("time",), "frost_depth", {**attributes("frost_depth"), "cell_methods": "time: point"}
+        values,
+        {"time": temperature["time"]},
+        ("time",),
+        "frost_depth",
+        {**attributes("frost_depth"), "cell_methods": "time: point"},
     )
 
 
@@ -92,7 +101,12 @@ def frozen_ground_depth(result: xr.Dataset) -> xr.DataArray:
     """
     if "frozen_ground_depth" not in result:
         raise InputError(
-            message("result", "no frozen_ground_depth", "a result of solve() or run()", "use frost_depth for other data")
+            message(
+                "result",
+                "no frozen_ground_depth",
+                "a result of solve() or run()",
+                "use frost_depth for other data",
+            )
         )
     return result["frozen_ground_depth"]
 
@@ -247,7 +261,12 @@ def heat_balance(result: xr.Dataset) -> xr.Dataset:
     missing = [name for name in needed if name not in result]
     if missing:
         raise InputError(
-            message("result", f"no {', '.join(missing)}", f"a result with {', '.join(needed)}", "use a result of solve()")
+            message(
+                "result",
+                f"no {', '.join(missing)}",
+                f"a result with {', '.join(needed)}",
+                "use a result of solve()",
+            )
         )
     seconds = np.diff(np.asarray(result["time"])) / np.timedelta64(1, "ns") / 1e9
 

@@ -47,6 +47,7 @@ class _Problem:
     cycle: Schedule | None
     start: Floats | None
     base_flux: float
+    base: tuple[Floats, Floats] | None
     watch: int
     tolerance: float
 
@@ -68,6 +69,7 @@ def solve(
     *,
     initial: Literal["cycle"] | float | str | xr.DataArray,
     base_heat_flux: float | str = 0.0,
+    base_temperature: xr.DataArray | None = None,
     depths: Any = None,
     output_every: Any = "1D",
     max_step: Any = None,
@@ -93,6 +95,9 @@ def solve(
         repeated.
     base_heat_flux : float or str
         Heat flux upward into the base [W m-2], -10 to 10.
+    base_temperature : xr.DataArray (time), optional
+        Temperature of the base [degC] instead of a heat flux, as from the lowest probe of a thermistor string; point
+        values that span the surface temperature. Not with `initial="cycle"`.
     depths : sequence of float or str, optional
         Depths of the output [m], within the column. The grid's own nodes where none are given.
     output_every : str, float or timedelta
@@ -112,7 +117,7 @@ def solve(
     -------
     xr.Dataset
         `ground_temperature` (time, depth) [degC]; `surface_heat_flux` and `base_heat_flux` (time) [W m-2], positive
-        downward, means over the time since the previous output (the value at the start, for the first);
+        downward (so a `base_heat_flux` argument of 0.06 comes back as -0.06), means over the time since the previous output (the value at the start, for the first);
         `heat_content` (time) [J m-2] above 0 degC; `frost_depth` and `frozen_ground_depth` (time) [m];
         `ground_temperature_error` (depth) [K], `frost_depth_error` and `frozen_ground_depth_error` [m].
 
@@ -150,6 +155,12 @@ def solve(
         if tolerance is None
         else to_si(tolerance, "temperature_difference", "tolerance", low=1e-6, high=10.0)
     )
+    base = None if base_temperature is None else _base_series(base_temperature, start_time, length)
+    if base is not None and (_is_cycle(initial) or base_flux != 0.0):
+        raise InputError(
+            message("base_temperature", 'initial="cycle" or a base_heat_flux beside it', "a base temperature alone",
+                    "give `initial` as a profile or a temperature, and no heat flux")
+        )  # fmt: skip
     column = build_column(profile, frost_zone=_frost_zone(profile, seconds, surface))
     wanted = column.depths if depths is None else _depths(depths, profile)
     outputs = every * np.arange(int(length / every + 1e-9) + 1)
@@ -157,10 +168,11 @@ def solve(
     watch_from = min(WATCHED_DEPTH, float(positive.min())) if depths is not None and positive.size else WATCHED_DEPTH
     problem = _Problem(
         column=column,
-        schedule=make_schedule(seconds, surface, outputs, max_step=step),
+        schedule=make_schedule(seconds, surface, outputs, max_step=step, also=None if base is None else base[0]),
         cycle=_cycle_schedule(seconds, surface, step) if _is_cycle(initial) else None,
         start=None if _is_cycle(initial) else _start(initial, column),
         base_flux=base_flux,
+        base=base,
         watch=_watch(column, watch_from),
         tolerance=limit,
     )
@@ -185,6 +197,18 @@ def solve(
 
 def _is_cycle(initial: Any) -> bool:
     return isinstance(initial, str) and initial == "cycle"
+
+
+def _base_series(base_temperature: xr.DataArray, start: np.datetime64, length: float) -> tuple[Floats, Floats]:
+    """Knots of the base temperature in seconds since the start of the surface temperature."""
+    seconds, celsius, first = forcing_knots(base_temperature)
+    seconds = seconds + float((first - start) / np.timedelta64(1, "ns")) / 1e9
+    if seconds[0] > 0.0 or seconds[-1] < length:
+        raise InputError(
+            message("base_temperature", f"{first} and {seconds[-1] - seconds[0]:g} s from there",
+                    f"all of {start} and {length:g} s from there", "give a series that spans the surface temperature")
+        )  # fmt: skip
+    return seconds, celsius
 
 
 def _part(progress: Progress | None, first: float, last: float) -> Progress | None:
@@ -223,7 +247,12 @@ def _depths(depths: Any, profile: Profile) -> Floats:
     )
     if values.size == 0 or np.any(np.diff(values) <= 0.0):
         raise InputError(
-            message("depths", f"{values.tolist()}", "one depth or more, each deeper than the one before", "sort them")
+            message(
+                "depths",
+                f"{values.tolist()}",
+                "one depth or more, each deeper than the one before",
+                "sort them",
+            )
         )
     return values
 
@@ -238,7 +267,12 @@ def _start(initial: Any, column: Column) -> Floats:
         return np.full(column.depths.size, to_si(initial, "temperature", 'initial (or "cycle")', low=-80.0, high=80.0))
     if initial.dims != ("depth",) or "depth" not in initial.coords:
         raise InputError(
-            message("initial", f"dimensions {initial.dims}", "one dimension, depth, with its coordinate [m]", "rename it")
+            message(
+                "initial",
+                f"dimensions {initial.dims}",
+                "one dimension, depth, with its coordinate [m]",
+                "rename it",
+            )
         )
     depth, values = np.asarray(initial["depth"], dtype=np.float64), np.asarray(initial, dtype=np.float64)
     base = column.profile.base
@@ -305,7 +339,8 @@ def _answer(problem: _Problem, progress: Progress | None) -> _Answer:
         raise InputError(message("initial", "nothing", '"cycle", a temperature or a profile', "give one"))
     first = 0.7 if problem.cycle is not None else 0.0
     told = None if progress is None else (lambda share: progress(first + (1 - first) * share, "marching"))
-    run = march(problem.column.table, problem.schedule, start, progress=told, **settings)
+    base = None if problem.base is None else np.interp(problem.schedule.seconds, *problem.base)
+    run = march(problem.column.table, problem.schedule, start, base_temperature=base, progress=told, **settings)
     return _Answer(
         run=run,
         start=start,
@@ -350,13 +385,13 @@ def _coarsened(problem: _Problem, watch_from: float) -> _Problem:
 def _labelled(problem: _Problem, answer: _Answer, times: Any, outputs: Floats, wanted: Floats) -> xr.Dataset:
     """The answer as a dataset with names and units."""
     column, run = problem.column, answer.run
-    flux = np.empty(outputs.size)
-    flux[1:] = np.diff(run.heat) / np.diff(outputs)
-    flux[0] = _surface_flux(column, run.temperature[0])
+    first = _end_fluxes(column, run.temperature[0], problem)
+    flux = np.concatenate([[first[0]], np.diff(run.heat) / np.diff(outputs)])
+    base_flux = np.concatenate([[first[1]], np.diff(run.heat_out) / np.diff(outputs)])
     values = {
         "ground_temperature": (("time", "depth"), column.at(run.temperature, wanted)),
         "surface_heat_flux": (("time",), flux),
-        "base_heat_flux": (("time",), np.full(outputs.size, 0.0 - problem.base_flux)),
+        "base_heat_flux": (("time",), base_flux),
         "heat_content": (("time",), column.heat_content(run.temperature)),
         "frost_depth": (("time",), answer.frost),
         "frozen_ground_depth": (("time",), answer.frozen),
@@ -376,15 +411,23 @@ def _labelled(problem: _Problem, answer: _Answer, times: Any, outputs: Floats, w
     return result
 
 
-def _surface_flux(column: Column, temperature: Floats) -> float:
-    """Heat flux through the surface at one moment [W m-2], positive downward."""
-    curves = column.curves[int(column.layer[0])]
-    potential = curves.conduction_potential(temperature[:2])
-    return float((potential[0] - potential[1]) / column.thickness[0])
+def _end_fluxes(column: Column, temperature: Floats, problem: _Problem) -> tuple[float, float]:
+    """Heat flux through the surface and the base at one moment [W m-2], positive downward."""
+
+    def flux(element: int) -> float:
+        potential = column.curves[int(column.layer[element])].conduction_potential(temperature[[element, element + 1]])
+        return float((potential[0] - potential[1]) / column.thickness[element])
+
+    return flux(0), 0.0 - problem.base_flux if problem.base is None else flux(column.layer.size - 1)
 
 
 def _with_errors(
-    result: xr.Dataset, problem: _Problem, fine: _Answer, coarse_problem: _Problem, coarse: _Answer, wanted: Floats
+    result: xr.Dataset,
+    problem: _Problem,
+    fine: _Answer,
+    coarse_problem: _Problem,
+    coarse: _Answer,
+    wanted: Floats,
 ) -> xr.Dataset:
     """Add the differences to the run that was twice as coarse."""
     difference = problem.column.at(fine.run.temperature, wanted) - coarse_problem.column.at(
@@ -406,4 +449,6 @@ def _initial_text(initial: Any, answer: _Answer, length: float) -> str:
         years = int((length + 86400.0) // (365 * 86400.0))
         what = "the forcing" if years == 1 else f"the average year of the {years} whole years of the forcing"
         return f"periodic steady state of {what}, settled after {answer.periods} repeated years"
-    return "profile given by the user" if isinstance(initial, xr.DataArray) else f"{initial} throughout, given by the user"
+    return (
+        "profile given by the user" if isinstance(initial, xr.DataArray) else f"{initial} throughout, given by the user"
+    )

@@ -57,13 +57,9 @@ KINDS: dict[str, Kind] = {
         Kind("temperature_difference", "K", "delta_degF", '"17 K" or "30 delta_degF"'),
         Kind("length", "m", "ft", '"1.2 m" or "4 ft"'),
         Kind("density", "kg/m^3", "lb/ft^3", '"1600 kg/m^3" or "100 lb/ft^3"'),
-        Kind(
-            "conductivity", "W/(m K)", "BTU/(hour ft delta_degF)", '"1.5 W/(m K)" or "0.9 BTU/(hour ft degF)"'
-        ),
+        Kind("conductivity", "W/(m K)", "BTU/(hour ft delta_degF)", '"1.5 W/(m K)" or "0.9 BTU/(hour ft degF)"'),
         Kind("resistance", "m^2 K/W", "hour ft^2 delta_degF/BTU", '"1.5 m^2 K/W" or "9 hour ft^2 degF/BTU"'),
-        Kind(
-            "heat_capacity", "J/(m^3 K)", "BTU/(ft^3 delta_degF)", '"2.5 MJ/(m^3 K)" or "37 BTU/(ft^3 degF)"'
-        ),
+        Kind("heat_capacity", "J/(m^3 K)", "BTU/(ft^3 delta_degF)", '"2.5 MJ/(m^3 K)" or "37 BTU/(ft^3 degF)"'),
         Kind("specific_heat", "J/(kg K)", "BTU/(lb delta_degF)", '"850 J/(kg K)" or "0.2 BTU/(lb degF)"'),
         Kind("latent_heat", "J/m^3", "BTU/ft^3", '"80 MJ/m^3" or "2160 BTU/ft^3"'),
         Kind("diffusivity", "m^2/s", "ft^2/hour", '"0.7e-6 m^2/s" or "0.027 ft^2/hour"'),
@@ -84,9 +80,7 @@ _UNIT_NAME = r"[A-Za-z_µμ°Δ%]+(?:\s*(?:\^|\*\*)\s*(?:-?[1-9]|\(-?[1-9]\)))?"
 _UNIT = re.compile(rf"(?:1\s*/)?[\s(]*{_UNIT_NAME}(?:[\s*/()]+{_UNIT_NAME})*[\s)]*")
 _LONGEST_UNIT = 80
 
-_SPELLINGS = str.maketrans(
-    {"℃": "°C", "℉": "°F", "²": "^2", "³": "^3", "·": " ", "−": "-", "\N{NO-BREAK SPACE}": " "}
-)
+_SPELLINGS = str.maketrans({"℃": "°C", "℉": "°F", "²": "^2", "³": "^3", "·": " ", "−": "-", "\N{NO-BREAK SPACE}": " "})
 _CF_EXPONENT = re.compile(r"(?<=[A-Za-z])(-?[1-9])(?![A-Za-z0-9])")  # "W m-1 K-1", "kg/m3"
 _MISREAD = {"C": "the coulomb", "F": "the farad"}
 
@@ -250,14 +244,10 @@ def to_si(
         result = _convert(number, unit_text, rule, name, shown)
     unit_shown = "" if rule.si_unit == "1" else f" {rule.si_unit}"
     if not math.isfinite(result):
-        raise InputError(
-            message(name, shown, f"a finite number{unit_shown and ' in' + unit_shown}", "correct it")
-        )
+        raise InputError(message(name, shown, f"a finite number{unit_shown and ' in' + unit_shown}", "correct it"))
     if kind == "temperature" and result < ABSOLUTE_ZERO:
         raise InputError(
-            message(
-                name, f"{result:g} degC", f"{ABSOLUTE_ZERO} degC (absolute zero) and above", "check the unit"
-            )
+            message(name, f"{result:g} degC", f"{ABSOLUTE_ZERO} degC (absolute zero) and above", "check the unit")
         )
     if (low is not None and result < low) or (high is not None and result > high):
         if high is None:
@@ -285,15 +275,11 @@ def _split(value: Any, rule: Kind, name: str) -> tuple[float, str | None, str]:
         number = _real(value.magnitude)
         if number is None:
             a_kind = f"one {rule.name.replace('_', ' ')}"
-            raise InputError(
-                message(name, _found(value.magnitude), a_kind, "give a single real number and its unit")
-            )
+            raise InputError(message(name, _found(value.magnitude), a_kind, "give a single real number and its unit"))
         return number, unit_text, f'"{number:g} {unit_text}"'
     number = _real(value)
     if number is None:
-        raise InputError(
-            message(name, _found(value), f"a number in {rule.si_unit}", f"write it as {rule.example}")
-        )
+        raise InputError(message(name, _found(value), f"a number in {rule.si_unit}", f"write it as {rule.example}"))
     return number, None, f"{number:g}"
 
 

@@ -201,6 +201,19 @@ def test_crushed_rock() -> None:
     assert conductivity_cote_konrad_2005(1800.0, 0.0, **arguments) == pytest.approx(0.42702, rel=1e-4)
 
 
+def test_cote_konrad_takes_crushed_rock_as_gravel() -> None:
+    arguments: dict[str, Any] = {"state": "thawed", "quartz_fraction": 0.3}
+    for grain, dry_conductivity, moisture_class in (
+        ("coarse", "crushed", "gravel_coarse_sand"),
+        ("coarse", "natural", "medium_fine_sand"),
+        ("fine", "natural", "silt_clay"),
+    ):
+        arguments |= {"grain": grain, "dry_conductivity": dry_conductivity}
+        k = conductivity_cote_konrad_2005(1800.0, 0.05, **arguments)
+        named = conductivity_cote_konrad_2005(1800.0, 0.05, moisture_class=moisture_class, **arguments)
+        assert k == named
+
+
 @pytest.mark.parametrize(
     ("moisture_class", "thawed", "frozen"),
     [

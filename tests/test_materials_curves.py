@@ -23,7 +23,7 @@ SALTY = Curves(
 def curves(draw: st.DrawFn) -> Curves:
     """Columns of the sort the solver must stand: slope ratios to 1000, freezing ranges from 1e-4 K."""
     gaps = draw(st.lists(st.floats(1e-4, 5.0), min_size=0, max_size=5))
-    top = draw(st.sampled_from([0.0, -0.1, -1.7]))
+    top = draw(st.sampled_from([0.0, -0.1, -1.7, 4.0]))
     knots = tuple((top - np.cumsum([0.0, *gaps]))[::-1].tolist()) if gaps else ()
     segments = len(knots) + 1
     power = st.floats(-1.5, 1.5)

@@ -359,7 +359,7 @@ CASES: dict[str, tuple[str | bytes, dict[str, Any], type[SoilTempError], tuple[s
         daily(["1e308", "1.5"]),
         {},
         DataFileError,
-        ("line 2", "2020-01-01", "1e+308 degC", "-90 to 60 degC"),
+        ('column "t_air [degC]"', "1 values at 2 different times", "at least two values"),
     ),
     "overflow": (
         with_line(5, "2020-01-04,1e400"),

@@ -119,6 +119,7 @@ def test_exact_values(value: Any, kind: str, expected: float) -> None:
         ("0.24 m", "fraction", UnitError, "a fraction"),
         ("5 degree", "fraction", UnitError, "a fraction"),
         ("3 dB", "fraction", UnitError, "a fraction"),
+        ("3 A dB", "angle", UnitError, "an angle"),
         ("1,5 m", "length", InputError, "decimal comma"),
         ("about 4 ft", "length", InputError, "a number"),
         ("", "length", InputError, "a number"),

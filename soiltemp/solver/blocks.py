@@ -3,7 +3,7 @@
 A node of a block is one record: `FIELDS` rows of `WIDTH` lanes, one lane a column, so that the inner loops run over
 lanes with constant distances and turn into vector instructions. The order of operations in a lane is that of
 `march_one`; results are equal to the last bit, whatever the company a column is marched in. A column that needs
-sub-steps or Katzenelson's path is taken out of the block for that step, worked by `kernel.careful`, and put back.
+sub-steps or Katzenelson's path is taken out of the block for that step, worked by `careful`, and put back.
 
 Record 0 stands for the surface and is empty, record n stands below the base and carries the base flux as its
 potential: so neither end needs a case of its own.
@@ -14,8 +14,9 @@ from __future__ import annotations
 import numpy as np
 from numba import njit, prange
 
-from soiltemp.solver import kernel
-from soiltemp.solver.kernel import (
+from soiltemp.solver import stage
+from soiltemp.solver.careful import careful
+from soiltemp.solver.stage import (
     B1,
     B2,
     C_STAGE,
@@ -24,6 +25,7 @@ from soiltemp.solver.kernel import (
     E2,
     E3,
     FACTORS,
+    FINGERPRINT,
     GAMMA,
     KNOT_SLACK,
     MAX_HOLDS,
@@ -31,12 +33,11 @@ from soiltemp.solver.kernel import (
     SOLVES,
     STEPS,
     W_FLUX,
-    careful,
     flux_difference,
     health,
     middle_of,
     place,
-    potential_at_surface,
+    potential,
 )
 
 __all__ = ["WIDTH", "march_columns", "march_columns_parallel"]
@@ -44,7 +45,7 @@ __all__ = ["WIDTH", "march_columns", "march_columns_parallel"]
 WIDTH = 32
 """Columns abreast. Narrower blocks are unrolled before they can be vectorised, wider ones outgrow the second cache."""
 
-# Rows of a record. The first eight are the piece in force, in the order of `kernel.PIECE_FIELDS`.
+# Rows of a record. The first eight are the piece in force, in the order of `stage.PIECE_FIELDS`.
 A, B, UA, U, VA, V, LO, HI = (field * WIDTH for field in range(8))
 P, F, E, K, Z = (field * WIDTH for field in range(8, 13))  # factors, constant part, substitution
 S, T, FLUX = (field * WIDTH for field in range(13, 16))  # state at the start of the step
@@ -55,7 +56,7 @@ FIELDS = 22
 
 @njit(**OPTIONS)
 def _factor(x, c, top, base):
-    """`kernel._factor_one` in every lane."""
+    """`stage.factor` in every lane."""
     m = middle_of(x.shape[0] - 1)
     for i in range(top, m):
         own, up, down = x[i], x[i - 1], x[i + 1]
@@ -112,9 +113,7 @@ def _meet(x, boundary):
     _inward(x, n - 1, m, -1)
     own, up, down = x[m], x[m - 1], x[m + 1]
     for j in range(WIDTH):
-        own[Z + j] = (
-            own[P + j] * (own[R + j] + own[K + j]) + own[F + j] * up[Z + j] + own[E + j] * down[Z + j]
-        )
+        own[Z + j] = own[P + j] * (own[R + j] + own[K + j]) + own[F + j] * up[Z + j] + own[E + j] * down[Z + j]
 
 
 @njit(**OPTIONS)
@@ -163,7 +162,7 @@ def _start(x, c):
 
 
 @njit(**OPTIONS)
-def _settle(x, tables, table_of, segment, c, stage, boundary, watch, factored, lost, count):
+def _settle(x, tables, table_of, segment, c, which_stage, boundary, watch, factored, lost, count):
     """Solve one stage by layer 1 in all lanes; mark in `lost` the lanes that did not settle."""
     n = x.shape[0] - 1
     m = middle_of(n)
@@ -179,7 +178,7 @@ def _settle(x, tables, table_of, segment, c, stage, boundary, watch, factored, l
         middle = x[m]
         coupling = middle[E : E + WIDTH].copy()
         middle[E : E + WIDTH] = 0.0
-        if stage == 1:
+        if which_stage == 1:
             _outward_1(x, m, m - 1, m - n)
             _outward_1(x, m - 1, 0, -1)
             _outward_1(x, m + 1, n, 1)
@@ -214,7 +213,7 @@ def _settle(x, tables, table_of, segment, c, stage, boundary, watch, factored, l
         if not moved:
             return
         factored[0] = 0.0
-        if stage == 1:  # its right side was overwritten by that of stage 2
+        if which_stage == 1:  # its right side was overwritten by that of stage 2
             _start(x, c)
 
 
@@ -234,7 +233,7 @@ def _accept(x, c, inverse):
 
 @njit(**OPTIONS)
 def _potential(tops, j, temperature):
-    """`kernel.potential_at_surface` of lane `j`, from its rows (intercept, slope, upper bound)."""
+    """`stage.potential` of lane `j`, from its rows (intercept, slope, upper bound)."""
     k = 0
     while temperature > tops[j, k, 2]:
         k += 1
@@ -273,23 +272,25 @@ def _march_block(
     lost, dead = np.zeros(WIDTH, dtype=np.bool_), np.zeros(WIDTH, dtype=np.bool_)
     table_of, force_of = np.zeros(WIDTH, dtype=np.int64), np.zeros(WIDTH, dtype=np.int64)
     tops = np.zeros((WIDTH, tables.shape[2], 3))
+    bottom = np.zeros((1, 3))
+    bottom[0, 1], bottom[0, 2] = 1.0, np.inf  # the base value is a heat flux
     node = x[1]
     for j in range(WIDTH):
         column = first + min(j, lanes - 1)  # spare lanes repeat the last column and are not looked at
         table_of[j], force_of[j] = which[column], forced_by[column]
         table = tables[table_of[j]]
         for k in range(tables.shape[2]):
-            tops[j, k, 0] = table[0, k, kernel.VA]
-            tops[j, k, 1] = table[0, k, kernel.V]
-            tops[j, k, 2] = table[0, k, kernel.HI]
-        piece[kernel.UA, n] = base_flux[column]
+            tops[j, k, 0] = table[0, k, stage.VA]
+            tops[j, k, 1] = table[0, k, stage.V]
+            tops[j, k, 2] = table[0, k, stage.HI]
+        piece[stage.UA, n] = base_flux[column]
         x[n, UA + j] = base_flux[column]
         t[:] = temperature[column]
         t[0] = surfaces[force_of[j], 0]
         place(table, piece, lane_segment, t)
         for i in range(1, n):
-            s[i] = piece[kernel.A, i] + piece[kernel.B, i] * t[i]
-        phi_2[j] = potential_at_surface(table, t[0])
+            s[i] = piece[stage.A, i] + piece[stage.B, i] * t[i]
+        phi_2[j] = potential(tops[j], t[0])
         flux_difference(piece, phi_2[j], t, flux)
         _put_lane(x, j, segment, piece, lane_segment, t, s, flux, 0.0)
         q_2[j] = phi_2[j] - (node[UA + j] + node[U + j] * t[1])
@@ -340,9 +341,9 @@ def _march_block(
                     continue
                 t[:], s[:], flux[:] = kept[0, j], kept[1, j], kept[2, j]
                 t[0] = begin[j]
-                piece[kernel.UA, n] = base_flux[first + j]
-                code, gained = careful(
-                    tables[table_of[j]], piece, lane_segment, h, begin[j], begin[j] + change[j], watch, tolerance,
+                code, gained, _ = careful(
+                    tables[table_of[j]], tops[j], bottom, piece, lane_segment, h, begin[j], begin[j] + change[j],
+                    base_flux[first + j], base_flux[first + j], watch, tolerance,
                     t, s, flux, work, alone, count[first + j],
                 )  # fmt: skip
                 _put_lane(x, j, segment, piece, lane_segment, t, s, flux, c)
@@ -380,45 +381,51 @@ def _march_block(
             end[:] = np.nan
 
 
-def _march_columns(
-    tables, which, dt, surfaces, forced_by, parts, row, base_flux, watch, tolerance, temperature, out_temperature,
-    out_heat, status, stopped, count,
-):  # fmt: skip
-    """March many columns of one grid size, block by block.
+def _make(fingerprint, mode):
+    """Compile `march_columns` for one thread ("serial") or numba's threads ("parallel"); see `stage.FINGERPRINT`."""
 
-    Parameters
-    ----------
-    tables : float64 (profile, node, segment, 8)
-        Pieces of each profile.
-    which : int64 (column,)
-        Profile of each column.
-    dt, parts, row, watch, tolerance
-        As in `kernel.march_one`, common to all columns.
-    surfaces : float64 (forcing, interval + 1)
-        Surface temperatures [degC].
-    forced_by : int64 (column,)
-        Forcing of each column.
-    base_flux : float64 (column,)
-        Heat flux upward into each base [W m-2].
-    temperature : float64 (column, node)
-        Start; replaced by the end [degC], NaN where a column stopped.
-    out_temperature : float64 (column, row, node)
-        Filled [degC]; NaN from where a column stopped.
-    out_heat : float64 (column, row)
-        Filled [J m-2]; NaN from where a column stopped.
-    status, stopped : int64 (column,)
-        Filled, see `kernel.march_one`.
-    count : int64 (column, 7)
-        Added to; solves and factorisations of a block are counted once, at its first column.
-    """
-    columns = temperature.shape[0]
-    for block in prange((columns + WIDTH - 1) // WIDTH):
-        first = block * WIDTH
-        _march_block(
-            tables, which, dt, surfaces, forced_by, parts, row, base_flux, watch, tolerance, temperature,
-            out_temperature, out_heat, status, stopped, count, first, min(WIDTH, columns - first),
-        )  # fmt: skip
+    def march_columns(
+        tables, which, dt, surfaces, forced_by, parts, row, base_flux, watch, tolerance, temperature, out_temperature,
+        out_heat, status, stopped, count,
+    ):  # fmt: skip
+        """March many columns of one grid size, block by block.
+
+        Parameters
+        ----------
+        tables : float64 (profile, node, segment, 8)
+            Pieces of each profile.
+        which : int64 (column,)
+            Profile of each column.
+        dt, parts, row, watch, tolerance
+            As in `kernel.march_one`, common to all columns.
+        surfaces : float64 (forcing, interval + 1)
+            Surface temperatures [degC].
+        forced_by : int64 (column,)
+            Forcing of each column.
+        base_flux : float64 (column,)
+            Heat flux upward into each base [W m-2].
+        temperature : float64 (column, node)
+            Start; replaced by the end [degC], NaN where a column stopped.
+        out_temperature : float64 (column, row, node)
+            Filled [degC]; NaN from where a column stopped.
+        out_heat : float64 (column, row)
+            Filled [J m-2]; NaN from where a column stopped.
+        status, stopped : int64 (column,)
+            Filled, see `kernel.march_one`.
+        count : int64 (column, 7)
+            Added to; solves and factorisations of a block are counted once, at its first column.
+        """
+        _ = fingerprint, mode
+        columns = temperature.shape[0]
+        for block in prange((columns + WIDTH - 1) // WIDTH):
+            first = block * WIDTH
+            _march_block(
+                tables, which, dt, surfaces, forced_by, parts, row, base_flux, watch, tolerance, temperature,
+                out_temperature, out_heat, status, stopped, count, first, min(WIDTH, columns - first),
+            )  # fmt: skip
+
+    return njit(parallel=mode == "parallel", **OPTIONS)(march_columns)
 
 
-march_columns = njit(**OPTIONS)(_march_columns)
-march_columns_parallel = njit(parallel=True, **OPTIONS)(_march_columns)
+march_columns = _make(FINGERPRINT, "serial")
+march_columns_parallel = _make(FINGERPRINT, "parallel")

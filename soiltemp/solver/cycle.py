@@ -3,10 +3,10 @@
 Over one period of it the mean heat flux is the base flux at every depth, so the mean conduction potential has a known
 gradient in every layer. A year that is not yet periodic stores heat dS at each node, and its mean flux in an element is
 off by the heat stored below it per period. Putting the means right moves the temperatures by K^-1 dS / P (K: steady
-conduction of the column, P: period). Left at that, the fast parts, which have mostly died out within the year, would be
-moved too far; so the move itself diffuses for half a period: one implicit step, (C + P/2 K) move = C K^-1 dS / P. For a
-part of the ground that decays by exp(-x) in a period the error then shrinks by exp(-x) - (1 - exp(-x)) / (x + x^2/2), at
-most 0.09 in size for any x.
+conduction of the column, P: period). Left at that, the fast parts, which have mostly died out within the year, would
+be moved too far; so the move itself diffuses for half a period: one implicit step, (C + P/2 K) move = C K^-1 dS / P.
+For a part of the ground that decays by exp(-x) in a period the error then shrinks by exp(-x) - (1 - exp(-x)) /
+(x + x^2/2), at most 0.09 in size for any x.
 """
 
 from __future__ import annotations
@@ -20,8 +20,8 @@ from numpy.typing import NDArray
 from scipy.linalg import solveh_banded
 
 from soiltemp.errors import SolverError
-from soiltemp.solver.kernel import PIECE_FIELDS
 from soiltemp.solver.march import Schedule, march
+from soiltemp.solver.stage import PIECE_FIELDS
 
 __all__ = ["SETTLED", "Cycle", "find_cycle"]
 
@@ -137,7 +137,12 @@ def find_cycle(
     share = 1.0
     for period in range(1, MOST_PERIODS + 1):
         run = march(table, schedule, state, base_flux=base_flux, watch=watch, tolerance=tolerance)
-        move = _move(table, run.temperature.mean(axis=0), _stored(table, run.end) - _stored(table, state), schedule.duration)
+        move = _move(
+            table,
+            run.temperature.mean(axis=0),
+            _stored(table, run.end) - _stored(table, state),
+            schedule.duration,
+        )
         worst = int(np.argmax(np.abs(move)))
         if abs(move[worst]) > 0.5 * largest:
             # much latent heat at the edge of ground frozen all year makes whole moves swing to and fro
@@ -150,6 +155,6 @@ def find_cycle(
             progress(min(0.95, period / MOST_PERIODS + 0.1))
     raise SolverError(
         f'initial "cycle": after {MOST_PERIODS} repeated years the ground at node {worst} still moves by '
-        f"{largest:.3g} K a year; allowed: {SETTLED} K; ground that hovers at its freezing point may need centuries, so "
-        "give `initial` as a measured profile or a temperature instead."
+        f"{largest:.3g} K a year; allowed: {SETTLED} K; ground that hovers at its freezing point may need centuries, "
+        "so give `initial` as a measured profile or a temperature instead."
     )

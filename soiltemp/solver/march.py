@@ -13,7 +13,8 @@ from numpy.typing import NDArray
 
 from soiltemp.errors import SolverError
 from soiltemp.solver.blocks import march_columns, march_columns_parallel
-from soiltemp.solver.kernel import COUNTERS, NON_FINITE, NOT_CONVERGED, OUT_OF_RANGE, PIECE_FIELDS, march_one
+from soiltemp.solver.kernel import march_one
+from soiltemp.solver.stage import COUNTERS, NON_FINITE, NOT_CONVERGED, OUT_OF_RANGE, PIECE_FIELDS
 
 __all__ = ["STATUS_MEANING", "Block", "March", "Schedule", "make_schedule", "march", "march_block"]
 
@@ -26,7 +27,7 @@ STATUS_MEANING = {
     OUT_OF_RANGE: "a temperature is beyond 200 degC",
 }
 
-_A, _B, _HI = PIECE_FIELDS.index("A"), PIECE_FIELDS.index("B"), PIECE_FIELDS.index("HI")
+_A, _B, _UA, _U, _VA, _V, _LO, _HI = range(len(PIECE_FIELDS))
 
 WINDOW = 20_000
 """Intervals marched between two looks at progress and cancellation; about 30 ms of work."""
@@ -57,7 +58,9 @@ class Schedule:
         return float(self.seconds[-1] - self.seconds[0])
 
 
-def make_schedule(seconds: Floats, surface: Floats, outputs: Floats, *, max_step: float) -> Schedule:
+def make_schedule(
+    seconds: Floats, surface: Floats, outputs: Floats, *, max_step: float, also: Floats | None = None
+) -> Schedule:
     """Cut time at the knots of the forcing and at the output times.
 
     Parameters
@@ -68,8 +71,12 @@ def make_schedule(seconds: Floats, surface: Floats, outputs: Floats, *, max_step
         Output times [s], increasing, inside the forcing.
     max_step : float
         Longest step [s].
+    also : float64 (knot,), optional
+        Further times to cut at, such as the knots of a base temperature [s].
     """
     bounds = np.union1d(seconds, outputs)
+    if also is not None:
+        bounds = np.union1d(bounds, also[(also > bounds[0]) & (also < bounds[-1])])
     row = np.full(bounds.size, -1, dtype=np.int64)
     row[np.searchsorted(bounds, outputs)] = np.arange(outputs.size)
     # a hair of slack: 3600.0000001 s is one step of an hour and not two
@@ -81,8 +88,8 @@ def make_schedule(seconds: Floats, surface: Floats, outputs: Floats, *, max_step
 class March:
     """What came of one column.
 
-    The heat through the surface counts the half element that hangs on the surface node: its temperature is given, so
-    what it stores never passes through the kernel's flux.
+    The heat through an end counts the half element that hangs on an end node whose temperature is given: what it stores
+    never passes through the kernel's flux.
 
     Attributes
     ----------
@@ -90,6 +97,8 @@ class March:
         Temperatures at the output times [degC].
     heat : float64 (row,)
         Heat that entered through the surface since the start [J m-2].
+    heat_out : float64 (row,)
+        Heat that left through the base since the start [J m-2].
     end : float64 (node,)
         Temperatures at the end [degC].
     counters : dict
@@ -98,13 +107,14 @@ class March:
 
     temperature: Floats
     heat: Floats
+    heat_out: Floats
     end: Floats
     counters: dict[str, int]
 
 
-def _surface_store(table: Floats, temperature: Floats) -> Floats:
-    """Heat stored by the surface node at given temperatures [J m-2]."""
-    pieces = table[0, : 1 + int(np.argmax(table[0, :, _HI]))]
+def _end_store(pieces: Floats, temperature: Floats) -> Floats:
+    """Heat stored by a node, from its pieces, at temperatures that were given to it [J m-2]."""
+    pieces = pieces[: 1 + int(np.argmax(pieces[:, _HI]))]
     segment = np.searchsorted(pieces[:-1, _HI], temperature)
     return np.asarray(pieces[segment, _A] + pieces[segment, _B] * temperature)
 
@@ -117,6 +127,7 @@ def march(
     base_flux: float,
     watch: int,
     tolerance: float,
+    base_temperature: Floats | None = None,
     progress: Callable[[float], None] | None = None,
 ) -> March:
     """March one column through a schedule.
@@ -130,11 +141,13 @@ def march(
     start : float64 (node,)
         Temperatures at the start [degC]; not changed.
     base_flux : float
-        Heat flux upward into the base [W m-2].
+        Heat flux upward into the base [W m-2]; not used where a base temperature is given.
     watch : int
         First node whose error is looked at.
     tolerance : float
         Largest error estimate of a step [K].
+    base_temperature : float64 (interval bound,), optional
+        Temperature of the last node at the bounds of the schedule [degC].
     progress : callable, optional
         Called with the finished share, 0 to 1, after every window of intervals. An exception it raises ends the march:
         this is how a run is cancelled.
@@ -148,26 +161,33 @@ def march(
     SolverError
         If the kernel stopped; the message gives the time since the start and the reason.
     """
-    temperature = np.empty((schedule.rows, start.size))
-    heat = np.empty(schedule.rows)
-    state = np.array(start, dtype=np.float64)
+    rows = schedule.rows
+    base_given = base_temperature is not None
+    solved = start.size - 1 if base_given else start.size
+    if base_temperature is not None:
+        base, bottom = base_temperature, table[-1][:, [_UA, _U, _HI]]
+    else:
+        base, bottom = np.full(schedule.seconds.size, base_flux), np.array([[0.0, 1.0, np.inf]])
+    temperature, heat = np.empty((rows, start.size)), np.empty((2, rows))
+    state = np.array(start[:solved], dtype=np.float64)
     count = np.zeros(len(COUNTERS), dtype=np.int64)
     intervals = schedule.parts.size
     dt = schedule.dt
-    entered = 0.0
-    gained = np.empty(schedule.rows + 1)
+    total = np.zeros(2)
     for first in range(0, intervals, WINDOW):
         last = min(first + WINDOW, intervals)
-        row = schedule.row[first : last + 1].copy()
-        # the end of a window is read for its heat, in a row of its own where it is no output
-        if row[-1] < 0:
-            row[-1] = schedule.rows
+        wanted = schedule.row[first : last + 1].copy()
         if first > 0:
-            row[0] = -1
-        window = np.empty((schedule.rows + 1, start.size)) if row[-1] == schedule.rows else temperature
+            wanted[0] = -1  # the window before has filled it
+        outputs = wanted[wanted >= 0]
+        # rows of this window alone, and one more for its end, which is read for its heat
+        local = np.where(wanted >= 0, np.cumsum(wanted >= 0) - 1, -1)
+        local[-1] = outputs.size if local[-1] < 0 else local[-1]
+        window, gained = np.empty((outputs.size + 1, solved)), np.empty((2, outputs.size + 1))
         status, stopped = march_one(
-            table, dt[first:last], schedule.surface[first : last + 1], schedule.parts[first:last], row,
-            base_flux, watch, tolerance, state, window, gained, count,
+            np.ascontiguousarray(table[:solved]), np.ascontiguousarray(bottom), dt[first:last],
+            schedule.surface[first : last + 1], base[first : last + 1], schedule.parts[first:last], local,
+            watch, tolerance, state, window, gained[0], gained[1], count,
         )  # fmt: skip
         if status in STATUS_MEANING:
             day = (schedule.seconds[first + stopped] - schedule.seconds[0]) / 86400.0
@@ -175,16 +195,23 @@ def march(
                 f"solver, {day:.3f} days after the start: {STATUS_MEANING[status]}; no result is returned; "
                 "check the material values and the surface temperature at that time, or give a smaller max_step."
             )
-        rows = row[row >= 0]
-        outputs = rows[rows < schedule.rows]
-        if window is not temperature:
-            temperature[outputs] = window[outputs]
-        heat[outputs] = entered + gained[outputs]
-        entered += gained[row[-1]]
+        temperature[outputs, :solved] = window[: outputs.size]
+        heat[:, outputs] = total[:, None] + gained[:, : outputs.size]
+        total += gained[:, local[-1]]
         if progress is not None:
             progress(last / intervals)
-    heat += _surface_store(table, temperature[:, 0]) - _surface_store(table, schedule.surface[:1])
-    return March(temperature, heat, state, dict(zip(COUNTERS, (int(value) for value in count), strict=True)))
+    heat[0] += _end_store(table[0], temperature[:, 0]) - _end_store(table[0], schedule.surface[:1])
+    if base_given:
+        temperature[:, -1] = base[schedule.row >= 0]
+        heat[1] -= _end_store(table[-1], temperature[:, -1]) - _end_store(table[-1], base[:1])
+        state = np.append(state, base[-1])
+    return March(
+        temperature,
+        heat[0],
+        heat[1],
+        state,
+        dict(zip(COUNTERS, (int(value) for value in count), strict=True)),
+    )
 
 
 @dataclass(frozen=True, eq=False)
@@ -244,5 +271,5 @@ def march_block(
     for column in range(columns):
         surface = surfaces[forced_by[column]]
         table = tables[which[column]]
-        block.heat[column] += _surface_store(table, surface[schedule.row >= 0]) - _surface_store(table, surface[:1])
+        block.heat[column] += _end_store(table[0], surface[schedule.row >= 0]) - _end_store(table[0], surface[:1])
     return block

@@ -1,0 +1,236 @@
+"""How every picture looks, and how it is renewed: built once, then one `data` per source, and only what differs."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from bokeh.models import (
+    ColumnDataSource,
+    DatetimeTickFormatter,
+    HoverTool,
+    Legend,
+    LegendItem,
+    Range1d,
+    Title,
+)
+from bokeh.plotting import figure as new_figure
+from numpy.typing import NDArray
+
+from soiltemp.figures.display import Display
+from soiltemp.figures.reading import BuriedLine
+
+__all__ = [
+    "AIR",
+    "COLD",
+    "FROZEN",
+    "INK",
+    "LINE",
+    "PAPER",
+    "QUIET",
+    "SOIL",
+    "THAW",
+    "WARM",
+    "Picture",
+    "Sheet",
+    "assign",
+    "band_of",
+    "legend_below",
+    "nice_limits",
+    "packed",
+    "style_time_axis",
+]
+
+Columns = dict[str, Any]
+
+FONT = "Arial, 'Liberation Sans', Helvetica, sans-serif"
+SMALL, MEDIUM, LARGE = "12px", "13px", "16px"
+
+INK = "#1d2730"
+QUIET = "#525d66"
+PAPER = "#ffffff"
+RULE = "#dde1e3"
+COLD = "#1c5d96"
+WARM = "#a8491a"
+FROZEN = "#cfe2ef"
+THAW = "#3d7a3a"
+SOIL = "#6b4f2a"
+LINE = "#6d2c91"
+AIR = "#7b8790"
+
+
+@dataclass(frozen=True)
+class Picture:
+    """What a picture shows: the columns of its sources, the ends of its axes (first, last), the line under its title."""
+
+    sources: Mapping[str, Columns]
+    x: tuple[float, float]
+    y: tuple[float, float]
+    subtitle: str
+
+
+class Sheet:
+    """A bokeh figure with its sources.
+
+    Parameters
+    ----------
+    picture : Picture
+        The first content.
+    title : str
+        What the picture is of. Text of users has no place here: bokeh reads formulas in titles.
+    width, height : int
+        Size in pixels.
+    x_axis_type : {"auto", "datetime"}
+        Kind of the horizontal axis.
+    """
+
+    def __init__(self, picture: Picture, *, title: str, width: int, height: int, x_axis_type: str = "auto") -> None:
+        self.sources = {name: ColumnDataSource(data=dict(columns)) for name, columns in picture.sources.items()}
+        self.figure = new_figure(
+            width=width,
+            height=height,
+            x_range=Range1d(*picture.x),
+            y_range=Range1d(*picture.y),
+            x_axis_type=x_axis_type,
+            tools="pan,box_zoom,wheel_zoom,reset,save",
+            active_drag=None,
+            active_scroll=None,
+            toolbar_location="right",
+        )
+        self.figure.toolbar.logo = None
+        self.figure.toolbar.autohide = True
+        self.subtitle = Title(
+            text=picture.subtitle, text_font=FONT, text_font_size=MEDIUM, text_font_style="normal", text_color=QUIET
+        )
+        self.figure.add_layout(self.subtitle, "above")
+        self.figure.add_layout(
+            Title(text=title, text_font=FONT, text_font_size=LARGE, text_font_style="bold", text_color=INK), "above"
+        )
+        self._dress()
+
+    def _dress(self) -> None:
+        drawn = self.figure
+        drawn.background_fill_color = PAPER
+        drawn.border_fill_color = PAPER
+        drawn.outline_line_color = None
+        drawn.min_border_right = 12
+        drawn.axis.axis_label_text_font = FONT
+        drawn.axis.axis_label_text_font_size = MEDIUM
+        drawn.axis.axis_label_text_font_style = "normal"
+        drawn.axis.axis_label_text_color = INK
+        drawn.axis.major_label_text_font = FONT
+        drawn.axis.major_label_text_font_size = SMALL
+        drawn.axis.major_label_text_color = INK
+        drawn.axis.axis_line_color = QUIET
+        drawn.axis.major_tick_line_color = QUIET
+        drawn.axis.minor_tick_line_color = None
+        drawn.axis.major_tick_in = 0
+        drawn.grid.grid_line_color = RULE
+
+    def hover(self, renderer: Any, tooltips: list[tuple[str, str]], mode: str, **formatters: str) -> None:
+        """Show the numbers of one source beside the pointer."""
+        self.figure.add_tools(
+            HoverTool(
+                renderers=[renderer],
+                tooltips=tooltips,
+                mode=mode,
+                point_policy="snap_to_data",
+                line_policy="nearest",
+                formatters={f"@{name}": kind for name, kind in formatters.items()},
+            )
+        )
+
+    def show(self, picture: Picture) -> None:
+        """Renew what differs, each source by one assignment."""
+        for name, columns in picture.sources.items():
+            if not _same_columns(self.sources[name].data, columns):
+                self.sources[name].data = dict(columns)
+        assign(self.figure.x_range, start=picture.x[0], end=picture.x[1])
+        assign(self.figure.y_range, start=picture.y[0], end=picture.y[1])
+        # the home view of the reset tool is that of the new data
+        assign(self.figure.x_range, reset_start=picture.x[0], reset_end=picture.x[1])
+        assign(self.figure.y_range, reset_start=picture.y[0], reset_end=picture.y[1])
+        assign(self.subtitle, text=picture.subtitle)
+
+
+def assign(model: Any, **values: Any) -> None:
+    """Set those properties of a bokeh model that differ."""
+    changed = {name: value for name, value in values.items() if getattr(model, name) != value}
+    if changed:
+        model.update(**changed)
+
+
+def _same_columns(old: Mapping[str, Any], new: Mapping[str, Any]) -> bool:
+    return old.keys() == new.keys() and all(_same(old[name], column) for name, column in new.items())
+
+
+def _same(old: Any, new: Any) -> bool:
+    if isinstance(new, np.ndarray):
+        return isinstance(old, np.ndarray) and np.array_equal(old, new, equal_nan=new.dtype.kind == "f")
+    return len(old) == len(new) and all(
+        _same(one, other) if isinstance(other, np.ndarray) else one == other for one, other in zip(old, new, strict=True)
+    )
+
+
+def packed(values: Any) -> NDArray[np.float32]:
+    """Values as float32: half of the traffic, and finer than any pixel."""
+    return np.asarray(values, dtype=np.float32)
+
+
+def legend_below(drawn: Any, items: Iterable[tuple[str, list[Any]]], *, columns: int | str = "auto") -> None:
+    """Put the legend under the plot, where it hides nothing."""
+    drawn.add_layout(
+        Legend(
+            items=[LegendItem(label=label, renderers=renderers) for label, renderers in items],
+            orientation="horizontal",
+            ncols=columns,
+            location="left",
+            click_policy="hide",
+            border_line_color=None,
+            background_fill_color=None,
+            label_text_font=FONT,
+            label_text_font_size=SMALL,
+            label_text_color=INK,
+            glyph_width=34,
+            spacing=18,
+            margin=4,
+            padding=2,
+        ),
+        "below",
+    )
+
+
+def style_time_axis(drawn: Any) -> None:
+    """Dates that can be read: the month with its year, or the day with its month."""
+    drawn.xaxis.formatter = DatetimeTickFormatter(
+        hours="%H:%M\n%d %b", days="%d %b\n%Y", months="%b\n%Y", years="%Y", hourmin="%H:%M\n%d %b"
+    )
+    drawn.xaxis.axis_label = None
+
+
+def nice_limits(low: float, high: float, step: float, origin: float = 0.0) -> tuple[float, float]:
+    """The multiples of a step, counted from `origin`, that enclose a range; never one and the same."""
+    first = origin + step * float(np.floor((low - origin) / step + 1e-9))
+    last = origin + step * float(np.ceil((high - origin) / step - 1e-9))
+    return (first, last) if last > first else (first - step, last + step)
+
+
+def band_of(line: BuriedLine | None, display: Display, x: tuple[float, float]) -> Columns:
+    """The band of depth that a buried line takes up, with its name: one row, or none."""
+    if line is None:
+        return {name: packed([]) for name in ("left", "right", "top", "bottom")} | {"text": []}
+    return {
+        "left": np.asarray([x[0]]),
+        "right": np.asarray([x[1]]),
+        "top": packed([display.depth(line.crown)]),
+        "bottom": packed([display.depth(line.bottom)]),
+        "text": [line_text(line, display)],
+    }
+
+
+def line_text(line: BuriedLine, display: Display) -> str:
+    """How a buried line is called in a picture: "line, 1.80 to 2.10 m"."""
+    first = display.depth_text(line.crown).removesuffix(f" {display.depth_unit}")
+    return f"buried line, {first} to {display.depth_text(line.bottom)}"

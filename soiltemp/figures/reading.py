@@ -1,0 +1,256 @@
+"""What the pictures take from a result: the surface, the buried line, the layers, the edges of frozen ground."""
+
+from __future__ import annotations
+
+import tomllib
+from collections.abc import Iterable
+from dataclasses import dataclass
+from typing import Any, Literal
+
+import numpy as np
+import xarray as xr
+from contourpy import LineType, contour_generator
+from numpy.typing import NDArray
+
+from soiltemp.errors import InputError, message
+from soiltemp.frost import envelope, frost_depth, zones
+from soiltemp.units import to_si
+
+__all__ = [
+    "BuriedLine",
+    "Stratum",
+    "block_means",
+    "freezing_lines",
+    "frost_curves",
+    "layers_of",
+    "line_of",
+    "milliseconds",
+    "picture_depth",
+    "surface_of",
+    "thawed_depth",
+]
+
+Floats = NDArray[np.float64]
+
+_JUST_BELOW_FREEZING = -1e-9  # ground at exactly 0 degC is not frozen, here as in `frost_depth`
+_DEEPEST_LINE = 100.0
+_LARGEST_LINE = 20.0
+
+
+@dataclass(frozen=True)
+class BuriedLine:
+    """A buried line: depth of its crown and outside diameter [m]."""
+
+    crown: float
+    diameter: float
+
+    @property
+    def bottom(self) -> float:
+        """Depth of its lowest point [m]."""
+        return self.crown + self.diameter
+
+
+@dataclass(frozen=True)
+class Stratum:
+    """A layer as drawn: its name, top and bottom [m]."""
+
+    name: str
+    top: float
+    bottom: float
+
+
+def milliseconds(times: Any) -> Floats:
+    """Times as bokeh counts them: ms since 1970, as float64 (float32 would round them to two minutes)."""
+    return np.asarray(times).astype("datetime64[ns]").astype(np.int64) / 1e6
+
+
+def line_of(result: xr.Dataset, given: Any = None) -> BuriedLine | None:
+    """The buried line, as given or as the site file in the result has it.
+
+    Parameters
+    ----------
+    result : xr.Dataset
+        A result; `input_site_file` is looked into where nothing is given.
+    given : (depth of the crown, outside diameter), optional
+        Floats [m] or strings with units; the crown 0 to 100 m, the diameter up to 20 m.
+
+    Raises
+    ------
+    InputError, UnitError
+        Not two lengths, or out of range.
+    """
+    if isinstance(given, BuriedLine):
+        return given
+    if given is None:
+        table = _site_table(result).get("line", {})
+        if not isinstance(table, dict) or not {"cover", "outside_diameter"} <= set(table):
+            return None
+        given = (table["cover"], table["outside_diameter"])
+    if isinstance(given, str) or not isinstance(given, Iterable) or len(pair := tuple(given)) != 2:
+        raise InputError(
+            message("line", f"{given!r}"[:60], "two lengths: depth of the crown and outside diameter",
+                    'write ("1.8 m", "0.3 m")')
+        )  # fmt: skip
+    return BuriedLine(
+        to_si(pair[0], "length", "line, depth of the crown", low=0.0, high=_DEEPEST_LINE),
+        to_si(pair[1], "length", "line, outside diameter", low=1e-3, high=_LARGEST_LINE),
+    )
+
+
+def _site_table(result: xr.Dataset) -> dict[str, Any]:
+    if "input_site_file" not in result:
+        return {}
+    try:
+        return tomllib.loads(str(result["input_site_file"].item()))
+    except (ValueError, tomllib.TOMLDecodeError) as error:
+        raise InputError(
+            message("result, input_site_file", f"{error}", "the text of one site file", "run the site again")
+        ) from error
+
+
+def layers_of(result: xr.Dataset, given: Any = None) -> tuple[Stratum, ...]:
+    """The layers, as given or as the result carries them in `input_layer_name` and `input_layer_thickness`.
+
+    Parameters
+    ----------
+    result : xr.Dataset
+        A result.
+    given : iterable of (name, top, bottom), optional
+        Depths as floats [m] or strings with units, each layer below the one before.
+
+    Raises
+    ------
+    InputError, UnitError
+        Something else than that.
+    """
+    if given is None:
+        if not {"input_layer_name", "input_layer_thickness"} <= set(result.variables):
+            return ()
+        names = [_text(name) for name in result["input_layer_name"].values.ravel()]
+        bottoms = np.cumsum(np.asarray(result["input_layer_thickness"], dtype=np.float64)).tolist()
+        given = tuple(zip(names, [0.0, *bottoms[:-1]], bottoms, strict=True))
+    strata: list[Stratum] = []
+    for number, layer in enumerate(given, start=1):
+        if isinstance(layer, Stratum):
+            strata.append(layer)
+            continue
+        where = f"layers, item {number}"
+        if isinstance(layer, str) or not isinstance(layer, Iterable) or len(parts := tuple(layer)) != 3:
+            raise InputError(
+                message(where, f"{layer!r}"[:60], "name, top and bottom", 'write ("silt", 0.0, 1.5)')
+            )
+        top = to_si(parts[1], "length", f"{where}, top", low=strata[-1].bottom - 1e-9 if strata else 0.0)
+        strata.append(Stratum(_text(parts[0]), top, to_si(parts[2], "length", f"{where}, bottom", low=top + 1e-6)))
+    return tuple(strata)
+
+
+def _text(value: Any) -> str:
+    return value.decode("utf-8", "replace") if isinstance(value, bytes) else str(value)
+
+
+def surface_of(result: xr.Dataset) -> Floats | None:
+    """Temperature of the ground surface [degC] at the output times, None where the result does not hold it."""
+    if "surface_temperature" in result and result["surface_temperature"].dims == ("time",):
+        return np.asarray(result["surface_temperature"], dtype=np.float64)
+    field = result["ground_temperature"]
+    if float(field["depth"][0]) > 0.0:
+        return None
+    return np.asarray(field.transpose("time", "depth")[:, 0], dtype=np.float64)
+
+
+def frost_curves(result: xr.Dataset) -> tuple[Floats, Floats | None]:
+    """Frost depth and, where the result holds it, the depth of frozen ground [m], checked to be finite."""
+    curves = [frost_depth(result)]
+    if "frozen_ground_depth" in result:
+        curves.append(result["frozen_ground_depth"])
+    for curve in curves:
+        if curve.dims != ("time",) or not bool(np.isfinite(curve).all()):
+            raise InputError(
+                message(str(curve.name), f"dimensions {curve.dims} or missing values", "a finite depth at each time",
+                        "pass what solve() or open_result() returned")
+            )  # fmt: skip
+    values = [np.asarray(curve, dtype=np.float64) for curve in curves]
+    return values[0], values[1] if len(values) > 1 else None
+
+
+def thawed_depth(result: xr.Dataset) -> Floats:
+    """Upper edge of the deepest frozen zone [m] where the ground above it has thawed; NaN at other times.
+
+    Found by straight lines between the depths of the result, as `soiltemp.frost.zones` does.
+    """
+    frost, _ = frost_curves(result)
+    tops = np.asarray(zones(result)["zone_top"], dtype=np.float64)
+    last = np.maximum(np.sum(np.isfinite(tops), axis=1) - 1, 0)
+    top = np.take_along_axis(tops, last[:, None], axis=1)[:, 0]
+    first_depth = float(result["depth"][0])
+    # depths asked for farther apart than the solver's nodes can put an upper edge below the frost depth
+    return np.where((top > first_depth) & (top < frost), top, np.nan)
+
+
+def block_means(times: Floats, field: Floats, most: int) -> tuple[Floats, Floats, int]:
+    """Means over so many output times that at most `most` are left: times, field (time, depth), and how many.
+
+    Samples left out instead would turn a daily wave into a slow one that is not there.
+    """
+    count = -(-times.size // most)
+    if count == 1:
+        return times, field, 1
+    starts = np.arange(0, times.size - times.size % count, count)
+    kept = starts.size * count  # an incomplete last block is left out
+    return (
+        times[:kept].reshape(-1, count).mean(axis=1),
+        field[:kept].reshape(-1, count, field.shape[1]).mean(axis=1),
+        count,
+    )
+
+
+def freezing_lines(
+    times: Floats, depths: Floats, field: Floats, level: float = 0.0
+) -> tuple[list[Floats], list[Floats]]:
+    """Lines of one temperature [degC] through time and depth: their times and their depths, line by line."""
+    if times.size < 2 or depths.size < 2:
+        return [], []
+    generator = contour_generator(times - times[0], depths, field.T, line_type=LineType.Separate)
+    lines = [np.asarray(line, dtype=np.float64) for line in generator.lines(level + _JUST_BELOW_FREEZING)]
+    return [line[:, 0] + times[0] for line in lines], [line[:, 1] for line in lines]
+
+
+def picture_depth(
+    result: xr.Dataset, line: BuriedLine | None, *, until: Literal["frost", "seasons"], deepest: Any = None
+) -> float:
+    """Depth down to which a picture is drawn [m].
+
+    Parameters
+    ----------
+    result : xr.Dataset
+        A result.
+    line : BuriedLine or None
+        Kept in the picture.
+    until : {"frost", "seasons"}
+        A quarter more than the greatest frost depth; or to where the temperature varies by a tenth of what it does at
+        the top, but at least twice the frost depth, to show what lies below the frost.
+    deepest : float or str, optional
+        Depth asked for [m], taken as it is.
+    """
+    if deepest is not None:
+        return to_si(deepest, "length", "deepest", low=0.05, high=1000.0)
+    frost, frozen = frost_curves(result)
+    reached = max(float(frost.max()), 0.0 if frozen is None else float(frozen.max()))
+    known = float(result["depth"][-1])
+    wanted = [0.5, 1.25 * reached if until == "frost" else 2.0 * reached]
+    if line is not None:
+        wanted.append(1.15 * line.bottom + 0.1)
+    if until == "seasons":
+        bounds = envelope(result)
+        span = np.asarray(bounds["maximum_temperature"] - bounds["minimum_temperature"], dtype=np.float64)
+        moving = np.flatnonzero(span >= 0.1 * span.max())
+        wanted.append(float(result["depth"][int(moving[-1])]))
+        # one depth alone is drawn with ground above and below it
+        return min(_rounded_up(max(wanted)), max(known, reached)) if result.sizes["depth"] > 1 else 2.0 * known + 0.5
+    return _rounded_up(max(wanted))
+
+
+def _rounded_up(value: float) -> float:
+    """The next of a coarse ladder, so that small changes of a result leave the picture where it is."""
+    step = 0.25 if value <= 3.0 else 0.5 if value <= 6.0 else 1.0 if value <= 15.0 else 5.0
+    return float(np.ceil(value / step - 1e-9) * step)
