@@ -112,7 +112,7 @@ class Column:
     @cached_property
     def thickness(self) -> Floats:
         """Element thickness [m], (element,)."""
-        return np.diff(self.depths)
+        return np.asarray(np.diff(self.depths))
 
     @cached_property
     def curves(self) -> tuple[Curves, ...]:
@@ -204,7 +204,7 @@ def _merged(first: Curves, second: Curves) -> Floats:
     knots = np.unique(np.concatenate([np.asarray(first.knots, dtype=float), np.asarray(second.knots, dtype=float)]))
     if knots.size < 2:
         return knots
-    return knots[np.concatenate([[True], np.diff(knots) > SAME_KNOT])]
+    return np.asarray(knots[np.concatenate([[True], np.diff(knots) > SAME_KNOT])])
 
 
 def _pieces(thickness: Floats, layer: NDArray[np.int64], curves: tuple[Curves, ...]) -> Floats:

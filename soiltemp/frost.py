@@ -250,7 +250,8 @@ def heat_balance(result: xr.Dataset) -> xr.Dataset:
     Returns
     -------
     xr.Dataset
-        `heat_through_surface`, `heat_through_base` (positive into the column), `heat_stored`, `heat_balance_error` (time).
+        `heat_through_surface`, `heat_through_base` (positive into the column), `heat_stored` and their
+        `heat_balance_error` (time).
 
     Raises
     ------

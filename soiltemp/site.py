@@ -13,6 +13,7 @@ from collections.abc import Collection, Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass
 from difflib import get_close_matches
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -56,9 +57,7 @@ KEYS: dict[str, tuple[str, ...]] = {
     "surface": ("cover", "n_factor_table", "freezing_n_factor", "thawing_n_factor"),
     "layer": ("name", "material", "soil", "conductivity_model", "thickness"),
     "line": ("name", "cover", "outside_diameter"),
-    "study": (
-        *("start", "end", "initial", "base_heat_flux", "output_every", "depths", "max_step", "tolerance"),
-    ),
+    "study": (*("start", "end", "initial", "base_heat_flux", "output_every", "depths", "max_step", "tolerance"),),
 }
 """The sections of a site file and the keys of each."""
 
@@ -326,7 +325,7 @@ def _parse(text: str, folder: Path, source: str) -> Site:
     tables = _toml(text, source)
     _check_sections(tables, source)
     place = _Table.of(tables, "site", source)
-    name = place.name("name")
+    name = check_name(place.need("name"), place.place)
     where_on_earth = [place.quantity(key, low=-limit, high=limit) for key, limit in _DEGREES]
     altitude = place.quantity("altitude", low=-450.0, high=9000.0) if place.has("altitude") else None
     profile = _profile(tables, source)
@@ -426,10 +425,12 @@ class _Table:
             raise InputError(message(source, found, f"[{section}] with {keys}", f"add the section [{section}]"))
         return cls.made(tables.get(section, {}), section, f"{source}, {section}.", KEYS[section], f"{section}.")
 
+    @property
+    def place(self) -> str:
+        return self.where.rstrip("., ")
+
     @classmethod
-    def made(
-        cls, values: Any, section: str, where: str, keys: Collection[str], glossary: str
-    ) -> _Table:
+    def made(cls, values: Any, section: str, where: str, keys: Collection[str], glossary: str) -> _Table:
         place = where.rstrip("., ")
         if not isinstance(values, dict):
             keys_shown = ", ".join(keys)
@@ -458,21 +459,20 @@ class _Table:
         meaning = "a value" if term is None else term.meaning.rstrip(".")
         return meaning[:1].lower() + meaning[1:]
 
-    def kind(self, key: str) -> str:
-        return GLOSSARY[f"{self.glossary}{key}"].kind
+    def kind_or_none(self, key: str) -> str:
+        term = GLOSSARY.get(f"{self.glossary}{key}")
+        return "" if term is None else term.kind
 
     def need(self, key: str) -> Any:
         if key not in self.values:
             term = GLOSSARY.get(f"{self.glossary}{key}")
             example = KINDS[term.kind].example.partition(" or ")[0] if term is not None and term.kind else '"..."'
             place = f"[{self.section}]" if self.section != "layer" else "the layer"
-            raise InputError(
-                message(self.at(key), "nothing", self.term(key), f"add {key} = {example} to {place}")
-            )
+            raise InputError(message(self.at(key), "nothing", self.term(key), f"add {key} = {example} to {place}"))
         return self.values[key]
 
     def quantity(self, key: str, *, low: float | None = None, high: float | None = None) -> float:
-        kind = self.kind(key)
+        kind = GLOSSARY[f"{self.glossary}{key}"].kind
         # degrees of latitude and longitude go without a unit
         bare = "si" if kind == "angle" else "refuse"
         return to_si(self.need(key), kind, self.at(key), low=low, high=high, bare=bare)
@@ -483,12 +483,236 @@ class _Table:
             raise InputError(message(self.at(key), _found(value), self.term(key), "write it in quotes"))
         return value
 
-    def name(self, key: str) -> str:
-        with _at(self.where.rstrip("., ")):
-            return check_name(self.need(key), key) if key != "name" else _named(self.need(key), self)
-
     def duration(self, key: str, low: float, high: float) -> float:
         value = self.need(key)
         if not isinstance(value, str):
             return to_si(value, "time", self.at(key), low=low, high=high, bare="refuse")
         return read_duration(value, self.at(key), low=low, high=high)
+
+
+def _found(value: Any) -> str:
+    """What stands in place of something else, with its type in the words of TOML."""
+    types = {"str": "text", "dict": "a table", "list": "an array", "bool": "a truth value", "int": "the number"}
+    kind = type(value).__name__
+    return f"{types.get(kind, kind.replace('float', 'the number'))} {show_value(value)}"
+
+
+def _climate(table: _Table, folder: Path, study: Study) -> Record | Periodic:
+    given = [key for key in ("air_temperature", "surface_temperature", "periodic") if table.has(key)]
+    if len(given) != 1:
+        found = " and ".join(given) or "none of them"
+        allowed = "one of air_temperature, surface_temperature (records) and periodic"
+        raise InputError(message(table.place, found, allowed, "give exactly one source of the climate"))
+    options = {key: table.values[key] for key in _RECORD_OPTIONS if table.has(key)}
+    if given == ["periodic"]:
+        if options:
+            remedy = "take it out, or give a record instead of periodic"
+            raise InputError(message(table.at(next(iter(options))), "it beside periodic", "it with a record", remedy))
+        return _periodic(table, study)
+    path = table.words(given[0])
+    if not path.isprintable():
+        raise InputError(message(table.at(given[0]), _found(path), "the path of a file", "correct the path"))
+    return Record(given[0], folder / path, _record_options(table, options))
+
+
+def _periodic(climate: _Table, study: Study) -> Periodic:
+    table = _Table.made(
+        climate.values["periodic"], "periodic", f"{climate.at('periodic')}.", KEYS["climate.periodic"],
+        "climate.periodic.",
+    )  # fmt: skip
+    daily = table.quantity("daily_amplitude") if table.has("daily_amplitude") else 0.0
+    made = Periodic(table.quantity("mean"), table.quantity("amplitude"), table.need("coldest"), daily)
+    with _at(table.place):
+        periodic_surface(made.mean, made.amplitude, made.coldest, study.start, 1, "6h", daily)
+    return made
+
+
+def _record_options(table: _Table, options: dict[str, Any]) -> tuple[tuple[str, Any], ...]:
+    """Options of the record with their units, checked as far as they can be without the record."""
+    for key in ("longest_gap", "stuck_after"):
+        if key in options and not isinstance(options[key], str):
+            table.duration(key, 0.0, np.inf)
+    for key in ("column", "time_column", "missing_values", "allowed_range"):
+        if isinstance(options.get(key), list):
+            options[key] = tuple(options[key])
+    for key, several in (("column", 2), ("time_column", 4), ("unit", 1), ("time_zone", 1), ("date_order", 1)):
+        words = options[key] if isinstance(options.get(key), tuple) else (options.get(key, "-"),)
+        if not all(isinstance(word, str) for word in words) or not 1 <= len(words) <= several:
+            allowed = "a text" if several == 1 else f"a text, or up to {several} in brackets"
+            raise InputError(message(table.at(key), _found(table.values[key]), allowed, "write it in quotes"))
+    missing = options.get("missing_values", ())
+    if not isinstance(missing, tuple) or any(isinstance(word, (list, dict)) for word in missing):
+        found, allowed = _found(table.values["missing_values"]), "numbers or words in brackets"
+        raise InputError(message(table.at("missing_values"), found, allowed, "write it as [-888]"))
+    limits = options.get("allowed_range")
+    if isinstance(limits, tuple):
+        place = table.at("allowed_range")
+        options["allowed_range"] = tuple(to_si(limit, "temperature", place, bare="refuse") for limit in limits)
+    checked = {key: options[key] for key in ("unit", "values", "allowed_range", "stuck_after") if key in options}
+    with _at(table.place):
+        ReadingOptions.read(
+            checked.get("unit"), checked.get("values"), options.get("stamp_at", "start"),
+            options.get("longest_gap", "3 days"), None, None, missing, checked.get("allowed_range", (-90.0, 60.0)),
+            checked.get("stuck_after"),
+        )  # fmt: skip
+    return tuple(options.items())
+
+
+def _surface(table: _Table, climate: Record | Periodic) -> Surface:
+    cover = table.words("cover") if table.has("cover") else None
+    factors = [key for key in ("n_factor_table", "freezing_n_factor", "thawing_n_factor") if table.has(key)]
+    if isinstance(climate, Record) and climate.quantity == "surface_temperature":
+        if factors:
+            found = f"{factors[0]} beside a record of the surface temperature, which is used as it is"
+            remedy = "take it out, or give air_temperature"
+            raise InputError(message(table.place, found, "n-factors with an air temperature", remedy))
+        return Surface(cover, None)
+    freezing = (
+        table.quantity("freezing_n_factor", low=FREEZING_RANGE[0], high=FREEZING_RANGE[1])
+        if (table.has("freezing_n_factor"))
+        else None
+    )
+    thawing = (
+        table.quantity("thawing_n_factor", low=THAWING_RANGE[0], high=THAWING_RANGE[1])
+        if (table.has("thawing_n_factor"))
+        else None
+    )
+    if table.has("n_factor_table"):
+        with _at(table.at("n_factor_table")):
+            return Surface(cover, n_factors(table.words("n_factor_table"), freezing=freezing, thawing=thawing))
+    if freezing is None or thawing is None:
+        found = f"{factors[0]} alone" if factors else "no n-factors, and none is assumed"
+        names = ", ".join(f'"{name}"' for name in n_factor_tables())
+        allowed = "freezing_n_factor and thawing_n_factor as numbers, or n_factor_table with a name of the table"
+        remedy = f"state both numbers, or write n_factor_table = one of {names}"
+        raise InputError(message(table.place, found, allowed, remedy))
+    return Surface(cover, NFactors(freezing, thawing, "stated in the site file"))
+
+
+def _profile(tables: dict[str, Any], source: str) -> Profile:
+    layers = tables.get("layer")
+    if not isinstance(layers, list):
+        found = "no layer" if layers is None else "layer as one table" if isinstance(layers, dict) else _found(layers)
+        raise InputError(message(source, found, "one [[layer]] for each layer, top down", "write [[layer]]"))
+    made = [_layer(values, number, source) for number, values in enumerate(layers, start=1)]
+    with _at(source):
+        return Profile(made)
+
+
+def _layer(values: Any, number: int, source: str) -> Layer:
+    where = f"{source}, layer {number}"
+    if isinstance(values, dict):
+        inner = [values.get(key) for key in ("name", "material", "soil")]
+        names = [value.get("name") if isinstance(value, dict) else value for value in inner]
+        shown = next((name for name in names if isinstance(name, str)), None)
+        where += "" if shown is None else f" {show_value(shown)}"
+    table = _Table.made(values, "layer", f"{where}, ", KEYS["layer"], "layer.")
+    name = check_name(table.need("name"), table.place) if table.has("name") else None
+    if table.has("soil") == table.has("material"):
+        found = "soil and material" if table.has("soil") else "neither soil nor material"
+        remedy = 'write material = "sand, saturated" or soil = {grain = ..., dry_density = ..., water_content = ...}'
+        raise InputError(message(table.place, found, "one of the two", remedy))
+    made = _soil(table) if table.has("soil") else _material(table)
+    thickness = table.quantity("thickness", low=1e-3, high=1000.0)
+    model = table.words("conductivity_model") if table.has("conductivity_model") else None
+    with _at(table.place):
+        return Layer(made, thickness, conductivity_model=model, name=name)
+
+
+def _properties(layer: _Table, key: str, keys: tuple[str, ...], needed: tuple[str, ...]) -> dict[str, Any]:
+    """Values of a soil or material, in SI; what is no quantity as it stands."""
+    table = _Table.made(layer.values[key], "layer", f"{layer.place}, {key}.", keys, "")
+    for name in needed:
+        table.need(name)
+    return {name: table.quantity(name) if table.kind_or_none(name) else table.need(name) for name in table.values}
+
+
+def _soil(layer: _Table) -> Soil:
+    values = _properties(layer, "soil", _SOIL, ("grain", "dry_density", "water_content"))
+    with _at(layer.place):
+        return Soil(**values)
+
+
+def _material(layer: _Table) -> Material:
+    if not isinstance(layer.values["material"], dict):
+        with _at(layer.place):
+            return material(layer.words("material"))
+    values = _properties(layer, "material", _MATERIAL, _MATERIAL[:6])
+    with _at(layer.place):
+        return Material(**{"source": "stated in the site file", **values})
+
+
+def _line(table: _Table, profile: Profile) -> Line:
+    cover = table.quantity("cover", low=0.0, high=100.0)
+    diameter = table.quantity("outside_diameter", low=1e-3, high=20.0)
+    name = check_name(table.need("name"), table.place) if table.has("name") else "line"
+    if cover + diameter > profile.base:
+        found = f"an invert at {cover + diameter:.6g} m"
+        allowed = f"a line above the base of the ground, {profile.base:g} m"
+        raise InputError(message(table.place, found, allowed, "check the cover, or add ground below"))
+    return Line(name, cover, diameter)
+
+
+def _study(table: _Table, profile: Profile) -> Study:
+    start, end = (read_moment(table.need(key), table.at(key)) for key in ("start", "end"))
+    if not start < end:
+        found = f"start {show_moment(start)} and end {show_moment(end)}"
+        raise InputError(message(table.place, found, "a start before the end", "swap or correct them"))
+    length = float((end - start) / np.timedelta64(1, "s"))
+    every = table.duration("output_every", 60.0, length) if table.has("output_every") else min(86400.0, length)
+    if length / every > MOST_OUTPUTS:
+        found = f"{length / every:.0f} outputs from {show_moment(start)} to {show_moment(end)}"
+        remedy = "take a longer interval, or a shorter study"
+        raise InputError(message(table.at("output_every"), found, f"up to {MOST_OUTPUTS}", remedy))
+    return Study(
+        start=start,
+        end=end,
+        initial=_initial(table, profile, length),
+        base_heat_flux=table.quantity("base_heat_flux", low=-10.0, high=10.0) if table.has("base_heat_flux") else 0.0,
+        output_every=every,
+        depths=_depths(table, profile) if table.has("depths") else None,
+        max_step=table.duration("max_step", 1.0, 366 * 86400.0) if table.has("max_step") else None,
+        tolerance=table.quantity("tolerance", low=1e-6, high=10.0) if table.has("tolerance") else None,
+    )
+
+
+def _depths(table: _Table, profile: Profile) -> tuple[float, ...]:
+    depths = table.need("depths")
+    place = table.at("depths")
+    if not isinstance(depths, list) or not depths:
+        raise InputError(message(place, _found(depths), "depths in brackets", 'write it as ["0.5 m", "1 m"]'))
+    numbered = enumerate(depths, start=1)
+    found = [to_si(d, "length", f"{place}, item {n}", low=0.0, high=profile.base, bare="refuse") for n, d in numbered]
+    if any(below <= above for above, below in pairwise(found)):
+        shown = ", ".join(f"{depth:g}" for depth in found)[:60]
+        raise InputError(message(place, f"{shown} m", "each deeper than the one before", "sort them"))
+    return tuple(found)
+
+
+def _initial(table: _Table, profile: Profile, length: float) -> str | float | tuple[tuple[float, float], ...]:
+    place = table.at("initial")
+    value = table.values.get("initial", "cycle")
+    if isinstance(value, str) and value.strip() == "cycle":
+        if length < 364 * 86400.0:  # as the solver counts: a year less a day is a year of daily values
+            remedy = 'study a whole year, or give initial = "4 degC" or measured temperatures by depth'
+            found = f'"cycle" for a study of {length / 86400.0:.4g} days'
+            raise InputError(message(place, found, "a study of 365 days or more", remedy))
+        return "cycle"
+    if not isinstance(value, list):
+        return to_si(value, "temperature", place, low=-80.0, high=80.0, bare="refuse")
+    pairs = []
+    for number, row in enumerate(value, start=1):
+        inner = _Table.made(row, "study", f"{place}, item {number}, ", ("depth", "temperature"), "")
+        depth = to_si(inner.need("depth"), "length", inner.at("depth"), low=0.0, high=1e4, bare="refuse")
+        celsius = to_si(
+            inner.need("temperature"), "temperature", inner.at("temperature"), low=-80.0, high=80.0, bare="refuse"
+        )
+        pairs.append((depth, celsius))
+    reach = (
+        f"depths from 0 (at most 0.5 m) to the base of the ground, {profile.base:g} m, each deeper than the one before"
+    )
+    rising = all(above[0] < below[0] for above, below in pairwise(pairs))
+    if not pairs or not rising or pairs[0][0] > 0.5 or pairs[-1][0] < profile.base * (1.0 - 1e-9):
+        found = f"depths {', '.join(f'{depth:g}' for depth, _ in pairs)[:60]} m" if pairs else "no depth"
+        raise InputError(message(place, found, reach, "sort the rows, and give one at the base"))
+    return tuple(pairs)

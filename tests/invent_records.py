@@ -1,8 +1,9 @@
 """Invent the weather records of the example sites, always the same to the last byte.
 
-Run it from anywhere with ``python tests/invent_records.py``; it writes into ``example_sites/``. The numbers are no
-measurement: an annual wave, a daily wave where the record is hourly, and weather as a first-order autoregressive noise.
-Only additions and multiplications make the noise, so that every machine invents the same.
+Run it from anywhere with ``python tests/invent_records.py``; it writes into ``example_sites/``. The numbers
+are no measurement: an annual wave, a daily wave where the record is hourly, and weather as a first-order
+autoregressive noise. Only additions and multiplications make the noise, so that every machine invents the
+same.
 """
 
 from __future__ import annotations
@@ -20,7 +21,8 @@ HOUR = datetime.timedelta(hours=1)
 
 
 def _normal(source: random.Random) -> float:
-    """Nearly normal number (sum of twelve uniform ones less six): exact arithmetic, hence the same everywhere."""
+    """Nearly normal number (sum of twelve uniform ones less six): exact arithmetic, hence the same
+    everywhere."""
     return sum(source.random() for _ in range(12)) - 6.0
 
 
@@ -71,7 +73,8 @@ def wether_lane() -> str:
 
 
 def kettle_yard() -> str:
-    """Hourly readings of one year in degF, cold and near the sea: a long winter, cool summer, small daily wave."""
+    """Hourly readings of one year in degF, cold and near the sea: a long winter, cool summer, small daily
+    wave."""
     source = random.Random(20200701)
     noise = _weather(source, memory=0.985, spread=1.0)
     flutter = random.Random(20200702)

@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 import pytest
+from scipy.integrate import quad
 
 from soiltemp.climate import freezing_index, periodic_surface, thawing_index
 from soiltemp.errors import InputError, SoilTempError, UnitError
@@ -15,7 +16,8 @@ DAY = 86400.0
 
 
 def test_extremes_stand_on_their_dates() -> None:
-    """The minimum at 00:00 of the coldest date, the maximum half a year (182.5 d) later, the mean a quarter later."""
+    """The minimum at 00:00 of the coldest date, the maximum half a year (182.5 d) later, the mean a quarter
+    later."""
     surface = periodic_surface(4.0, 17.0, "01-20", "2019-07-01", 1)
     assert str(surface.time.values[0]) == "2019-07-01T00:00:00.000000000"
     assert (
@@ -32,7 +34,8 @@ def test_extremes_stand_on_their_dates() -> None:
 
 
 def test_against_the_formula_value_by_value() -> None:
-    """Written anew from the definition, with time differences from numpy; rounding only (cosine of 8 turns)."""
+    """Written anew from the definition, with time differences from numpy; rounding only (cosine of 8
+    turns)."""
     surface = periodic_surface("40 degF", "30 delta_degF", "02-03", "2018-11-05 07:00", 3, "3h", "5 K")
     time = surface.time.values
     days = (time - np.datetime64("2018-02-03")) / np.timedelta64(1, "s") / DAY
@@ -69,11 +72,14 @@ def test_indices_against_closed_form() -> None:
     surface = periodic_surface(mean, amplitude, "01-20", "2019-01-20", 1)
     angle = np.arccos(mean / amplitude)
     freezing = (amplitude * np.sin(angle) - mean * angle) * year / np.pi
-    assert freezing_index(surface) / DAY == pytest.approx(freezing, abs=1e-3)
-    assert thawing_index(surface) / DAY == pytest.approx(freezing + mean * year, abs=1e-3)
-    assert freezing == pytest.approx(
-        1302.88, abs=0.5
-    )  # not a rounding target: guards the hand integration itself
+    assert freezing_index(surface) / DAY == pytest.approx(freezing, abs=2e-4)
+    assert thawing_index(surface) / DAY == pytest.approx(freezing + mean * year, abs=2e-4)
+    numeric = quad(
+        lambda day: max(amplitude * np.cos(2 * np.pi * day / year) - mean, 0.0),
+        0.0,
+        angle * year / (2 * np.pi),
+    )
+    assert freezing == pytest.approx(2.0 * numeric[0], rel=1e-10)  # scipy.integrate.quad, half by symmetry
 
 
 def test_attributes() -> None:

@@ -1,4 +1,5 @@
-"""The invented records of the example sites, and recorded temperatures of the U.S. Climate Reference Network."""
+"""The invented records of the example sites, and recorded temperatures of the U.S. Climate Reference
+Network."""
 
 from __future__ import annotations
 
@@ -8,9 +9,9 @@ import pathlib
 import numpy as np
 import pytest
 
-from tests import invent_records
 from soiltemp.climate import freezing_index, read_checked, read_record
 from soiltemp.errors import DataFileError
+from tests import invent_records
 
 ROOT = pathlib.Path(__file__).resolve().parent.parent
 STATIONS = ROOT.parent / "shared" / "data" / "uscrn_2020_daily"
@@ -70,8 +71,8 @@ def rows(path: pathlib.Path) -> list[dict[str, str]]:
 def test_recorded_temperatures(station: str, column: str) -> None:
     """Every value of the file, read independently, stands in the result; the rest is flagged.
 
-    Source: NOAA/NCEI, U.S. Climate Reference Network, daily product, 2020 (Diamond et al. 2013, Bull. Amer. Meteor.
-    Soc. 94, 485-498; Bell et al. 2013, J. Hydrometeorology 14, 977-988).
+    Source: NOAA/NCEI, U.S. Climate Reference Network, daily product, 2020 (Diamond et al. 2013, Bull. Amer.
+    Meteor. Soc. 94, 485-498; Bell et al. 2013, J. Hydrometeorology 14, 977-988).
     """
     path = next(STATIONS.glob(f"{station}_*.csv"))
     checked = read_checked(

@@ -585,7 +585,8 @@ def assert_one_sentence(text: str) -> None:
 
 @pytest.mark.parametrize("name", CASES)
 def test_fault_gives_one_sentence(name: str, tmp_path: Any) -> None:
-    """The error is of the right kind, and its sentence names place, finding, what is allowed and the remedy."""
+    """The error is of the right kind, and its sentence names place, finding, what is allowed and the
+    remedy."""
     content, options, error, parts = CASES[name]
     with pytest.raises(SoilTempError) as caught:
         read_text(tmp_path, content, **options)

@@ -104,7 +104,7 @@ def test_forms_of_one_record(content: Any, options: dict[str, Any], tmp_path: An
     """Encodings, line ends, delimiters, units and dates, all of the same four daily means."""
     record = read_record(write(tmp_path, content), **options)
     assert np.array_equal(record.time.values, np.array(DAYS, dtype="datetime64[ns]"))
-    # Four values to one or two decimals, converted: rounding of doubles only, but for degF rounded to 0.01 (0.003 K).
+    # Rounding of doubles only, but for degF, which is rounded to 0.01 (0.003 K).
     assert np.allclose(record.values, VALUES, atol=3e-3, rtol=0.0)
     assert record.attrs["units"] == "degree_Celsius"
     assert record.attrs["cell_methods"] == "time: mean"
@@ -207,7 +207,8 @@ def test_hot_day_in_degf_is_no_sentinel(tmp_path: Any) -> None:
 
 
 def test_sentinels_are_no_temperatures() -> None:
-    """No number of the list is a temperature measured in air: -89.2 degC is the lowest (WMO; value from memory)."""
+    """No number of the list is a temperature measured in air: -89.2 degC is the lowest (WMO; value from
+    memory)."""
     for number in SENTINELS:
         assert number < -89.2 or number > 130.0
         assert not 180.0 < number < 335.0
@@ -223,7 +224,8 @@ def test_own_missing_values(tmp_path: Any) -> None:
 
 
 def test_impossible_single_value(tmp_path: Any) -> None:
-    """One of 85 degC (a usual fault of digital sensors) is taken out; -89 and 57 degC have occurred and stay."""
+    """One of 85 degC (a usual fault of digital sensors) is taken out; -89 and 57 degC have occurred and
+    stay."""
     values = wave()
     values[20], values[30], values[40] = 85.0, -89.0, 57.0
     checked = read_checked(write(tmp_path, table(days(), values)))
@@ -256,7 +258,7 @@ def test_all_long_gaps_are_named(tmp_path: Any) -> None:
     for first in (5, 20, 40):
         values[first : first + 4] = [""] * 4
     with pytest.raises(
-        ValueError, match="3 gaps.*2020-01-06 to 2020-01-09, 2020-01-21 to 2020-01-24, 2020-02-10"
+        ValueError, match=r"3 gaps.*2020-01-06 to 2020-01-09, 2020-01-21 to 2020-01-24, 2020-02-10"
     ):
         read_record(write(tmp_path, table(days(), values)))
 
@@ -283,7 +285,8 @@ def test_point_selection_includes_both_ends(tmp_path: Any) -> None:
 
 
 def test_doubled_and_disordered_lines(tmp_path: Any) -> None:
-    """Equal doubles are merged, a missing value gives way to a good one, the order is mended; all is reported."""
+    """Equal doubles are merged, a missing value gives way to a good one, the order is mended; all is
+    reported."""
     dates, values = days(), list[Any](wave())
     dates += [dates[4], dates[7], dates[9]]
     values += [values[4], round(values[7] + 0.1, 1), values[9]]
@@ -306,7 +309,8 @@ def test_jitter_is_moved_onto_the_axis(tmp_path: Any) -> None:
 
 
 def test_stuck_sensor(tmp_path: Any) -> None:
-    """Five equal days are a stuck sensor, four are not; ground at 0 degC stays, and deep ground is not checked."""
+    """Five equal days are a stuck sensor, four are not; ground at 0 degC stays, and deep ground is not
+    checked."""
     for count, stuck in ((4, False), (5, True)):
         values = wave()
         values[20 : 20 + count] = [3.3] * count
@@ -419,7 +423,8 @@ def test_result_saved_as_netcdf_is_read_back(tmp_path: Any) -> None:
 
 
 def test_netcdf_by_standard_name_and_bounds(tmp_path: Any) -> None:
-    """Kelvin, packed in one place, means stamped at noon with bounds: found, converted, put at the start of the day."""
+    """Kelvin, packed in one place, means stamped at noon with bounds: found, converted, put at the start of
+    the day."""
     midday = np.datetime64("2020-01-01T12", "ns") + np.arange(60) * np.timedelta64(86400 * 10**9, "ns")
     half = np.timedelta64(12 * 3600 * 10**9, "ns")
     kelvin = np.array(wave())[:, None, None] + 273.15

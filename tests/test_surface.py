@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from typing import Any
+from typing import Any, Literal
 
 import numpy as np
 import pytest
@@ -17,7 +17,8 @@ from soiltemp.surface import forcing_knots, n_factor_tables, n_factors, surface_
 
 DAY = 86400.0
 
-# TM 5-852-4/AFM 88-19 Chap. 4 (UFC 3-130-04), Table 4-1: surface, n freezing, n thawing, lowest and highest n thawing.
+# TM 5-852-4/AFM 88-19 Chap. 4 (UFC 3-130-04), Table 4-1:
+# surface, n freezing, n thawing, lowest and highest n thawing.
 TABLE_4_1 = [
     ("snow", 1.0, None, None),
     ("Portland cement concrete", 0.75, 1.5, None),
@@ -29,9 +30,13 @@ TABLE_4_1 = [
 ]
 
 
-def series(values: Any, method: str | None = "time: mean", step: str = "D", **attrs: Any) -> xr.DataArray:
+def series(
+    values: Any, method: str | None = "time: mean", step: Literal["D", "h"] = "D", **attrs: Any
+) -> xr.DataArray:
     """Temperatures from 1 January 2020 on."""
-    times = (np.datetime64("2020-01-01", step) + np.arange(len(values))).astype("datetime64[ns]")
+    times = (np.datetime64("2020-01-01") + np.arange(len(values)) * np.timedelta64(1, step)).astype(
+        "datetime64[ns]"
+    )
     if method is not None:
         attrs["cell_methods"] = method
     return xr.DataArray(np.asarray(values), dims="time", coords={"time": times}, attrs=attrs)
@@ -126,8 +131,8 @@ def test_n_factor_is_the_ratio_of_the_indices(
 ) -> None:
     """Definition of the n-factor (TM 5-852-4): index of the surface over index of the air.
 
-    For means exact to rounding. For points only where no line crosses 0 degC: the bend of the factor at 0 degC lies
-    between two samples there, and the lines are drawn between samples.
+    For means exact to rounding. For points only where no line crosses 0 degC: the bend of the factor at 0
+    degC lies between two samples there, and the lines are drawn between samples.
     """
     if method == "time: point":
         values = [-abs(value) for value in values]
@@ -163,7 +168,8 @@ def test_too_hot_a_surface_is_refused() -> None:
 
 
 def test_knots_of_points_are_the_points() -> None:
-    """Also at uneven times; without cell_methods a temperature is a point value (CF conventions 1.11, section 7.3)."""
+    """Also at uneven times; without cell_methods a temperature is a point value (CF conventions 1.11, section
+    7.3)."""
     for method in ("time: point", None):
         air = series([1.0, -2.0, 3.0, 4.0], method)[[0, 1, 3]]
         seconds, celsius, start = forcing_knots(air)
@@ -173,15 +179,17 @@ def test_knots_of_points_are_the_points() -> None:
 
 
 def mean_of_lines(seconds: Any, celsius: Any, low: float, high: float) -> float:
-    """Mean of the piecewise linear curve from `low` to `high`, by the trapezoidal rule on a fine grid of its own."""
+    """Mean of the piecewise linear curve from `low` to `high`, by the trapezoidal rule on a fine grid of its
+    own."""
     grid = np.linspace(low, high, 9)  # holds edges and middle of a day, where alone the curve bends
     return float(np.trapezoid(np.interp(grid, seconds, celsius), grid) / (high - low))
 
 
 @settings(max_examples=100, deadline=None)
 @given(st.lists(st.floats(-60, 45), min_size=2, max_size=30), st.sampled_from(["D", "h"]))
-def test_knots_keep_the_mean_of_every_interval(values: list[float], step: str) -> None:
-    """The mean over each interval is the value given, to 1e-12 (sums of a few numbers below 300 round to 1e-13)."""
+def test_knots_keep_the_mean_of_every_interval(values: list[float], step: Literal["D", "h"]) -> None:
+    """The mean over each interval is the value given, to 1e-12 (sums of a few numbers below 300 round to
+    1e-13)."""
     length = DAY if step == "D" else 3600.0
     seconds, celsius, _ = forcing_knots(series(values, step=step))
     assert seconds.size == celsius.size == 2 * len(values) + 1
@@ -256,7 +264,8 @@ def test_index_of_means_and_points() -> None:
 @settings(max_examples=100, deadline=None)
 @given(st.lists(st.floats(-50, 50), min_size=2, max_size=40), st.sampled_from(["time: mean", "time: point"]))
 def test_indices_add_up_to_the_integral(values: list[float], method: str) -> None:
-    """Thawing less freezing index is the integral of temperature; neither is negative; each is the other, mirrored."""
+    """Thawing less freezing index is the integral of temperature; neither is negative; each is the other,
+    mirrored."""
     air = series(values, method)
     total = sum(values) * DAY if method == "time: mean" else float(np.trapezoid(values)) * DAY
     assert freezing_index(air) >= 0.0
@@ -272,5 +281,6 @@ def test_points_on_a_fine_grid_converge_to_the_same_index() -> None:
     air = series(values, "time: point")
     middles = (np.arange(5 * 4096) + 0.5) / 4096
     curve = np.interp(middles, np.arange(6), values)
-    # The one piece that holds a crossing errs by less than (slope x piece)^2: 5 crossings x (5.1/4096)^2 < 1e-5 K d.
+    # The one piece that holds a crossing errs by less than (slope x piece)^2:
+    # 5 crossings x (5.1/4096)^2 < 1e-5 K d.
     assert freezing_index(air) / DAY == pytest.approx(np.maximum(-curve, 0).sum() / 4096, abs=1e-5)

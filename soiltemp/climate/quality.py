@@ -180,11 +180,12 @@ def check_unit_plausible(
 
     Notes
     -----
-    As stated degC or degF: a median from 200 to 350 is kelvin. As stated degC: more than 1 % of the values (and
-    more than 3) above the possible range or, over 30 days or more, a 95th percentile above 42 degC, is degF:
-    daily mean air temperatures above 42 degC hardly occur anywhere. As stated degF: at least 300 days of which
-    95 % lie below 5 degC is degC. As stated K: a median below 123 K is degC or degF. The percentile rules hold
-    for air and natural ground, and are not used where the caller states another range of possible values.
+    As stated degC or degF: a median from 200 to 350 is kelvin. As stated degC: more than 1 % of the values
+    (and more than 3) above the possible range or, over 30 days or more, a 95th percentile above 42 degC, is
+    degF: daily mean air temperatures above 42 degC hardly occur anywhere. As stated degF: at least 300 days
+    of which 95 % lie below 5 degC is degC. As stated K: a median below 123 K is degC or degF. The percentile
+    rules hold for air and natural ground, and are not used where the caller states another range of possible
+    values.
     """
     good = np.clip(celsius[np.isfinite(celsius)], -1e6, 1e6)
     if good.size < 2:

@@ -38,6 +38,7 @@ __all__ = [
     "assign",
     "band_of",
     "legend_below",
+    "line_text",
     "nice_limits",
     "packed",
     "style_time_axis",
@@ -169,9 +170,9 @@ def _same_columns(old: Mapping[str, Any], new: Mapping[str, Any]) -> bool:
 def _same(old: Any, new: Any) -> bool:
     if isinstance(new, np.ndarray):
         return isinstance(old, np.ndarray) and np.array_equal(old, new, equal_nan=new.dtype.kind == "f")
-    return len(old) == len(new) and all(
-        _same(one, other) if isinstance(other, np.ndarray) else one == other for one, other in zip(old, new, strict=True)
-    )
+    if isinstance(new, list):
+        return isinstance(old, list) and len(old) == len(new) and all(map(_same, old, new))
+    return bool(old == new)
 
 
 def packed(values: Any) -> NDArray[np.float32]:

@@ -1,0 +1,291 @@
+"""A study's arguments on the solver's terms: read and checked, put on a grid and a schedule, and made coarser.
+
+Between `study`, which speaks in labels, and the solver, which speaks in arrays.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import Any
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from soiltemp.climate.moments import read_duration
+from soiltemp.column import Column, build_column
+from soiltemp.constants import DAY, YEAR
+from soiltemp.errors import InputError, message
+from soiltemp.ground import Profile
+from soiltemp.solver.march import Schedule, make_schedule
+from soiltemp.surface import forcing_knots
+from soiltemp.units import to_si
+
+__all__ = ["Problem", "coarsened", "is_cycle", "read_problem", "whole_years"]
+
+Floats = NDArray[np.float64]
+
+DEFAULT_MAX_STEP = 3600.0
+"""Longest step where none is given [s]: at one hour the time error of a freezing year is about 0.01 K below 0.3 m."""
+
+DEFAULT_TOLERANCE = 0.05
+"""Largest error estimate of one step where none is given [K]; beyond it the step is cut."""
+
+WATCHED_DEPTH = 0.1
+"""Depth from which the error of a step is looked at [m]; above it an hour of weather moves the ground by kelvins."""
+
+
+@dataclass(frozen=True, eq=False)
+class Problem:
+    """A column with its forcing, as arrays.
+
+    Attributes
+    ----------
+    column : Column
+        The ground on its grid.
+    schedule : Schedule
+        Forcing, steps and outputs.
+    cycle : Schedule or None
+        A year to be repeated for the start, or None where `start` is given.
+    start : float64 (node,) or None
+        Temperatures at the start [degC].
+    base_flux : float
+        Heat flux upward into the base [W m-2].
+    base_temperature : float64 (interval bound,) or None
+        Temperature of the base at the bounds of the schedule [degC].
+    watched_depth : float
+        Depth from which the error of a step is looked at [m].
+    tolerance, longest_step : float
+        Largest error of a step [K] and longest step [s].
+    start_time : numpy.datetime64
+        Time of the first output.
+    outputs : float64 (row,)
+        Output times since then [s].
+    depths : float64 (depth,)
+        Depths of the output [m].
+    """
+
+    column: Column
+    schedule: Schedule
+    cycle: Schedule | None
+    start: Floats | None
+    base_flux: float
+    base_temperature: Floats | None
+    watched_depth: float
+    tolerance: float
+    longest_step: float
+    start_time: np.datetime64
+    outputs: Floats
+    depths: Floats
+
+    @property
+    def watch(self) -> int:
+        """First node whose error is looked at."""
+        return max(1, int(np.searchsorted(self.column.depths, self.watched_depth + 1e-9, side="right")) - 1)
+
+
+def read_problem(
+    profile: Profile,
+    surface_temperature: xr.DataArray,
+    *,
+    initial: Any,
+    base_heat_flux: Any,
+    base_temperature: xr.DataArray | None,
+    depths: Any,
+    output_every: Any,
+    max_step: Any,
+    tolerance: Any,
+) -> Problem:
+    """Read and check the arguments of `soiltemp.study.solve`, where they are explained.
+
+    Raises
+    ------
+    InputError, UnitError
+        An argument that cannot be right.
+    """
+    seconds, surface, start_time = forcing_knots(surface_temperature)
+    base_flux = to_si(base_heat_flux, "heat_flux", "base_heat_flux", low=-10.0, high=10.0)
+    length = float(seconds[-1])
+    every = read_duration(output_every, "output_every", low=60.0, high=length)
+    step = DEFAULT_MAX_STEP if max_step is None else read_duration(max_step, "max_step", low=1.0, high=366 * DAY)
+    limit = (
+        DEFAULT_TOLERANCE
+        if tolerance is None
+        else to_si(tolerance, "temperature_difference", "tolerance", low=1e-6, high=10.0)
+    )
+    base = None if base_temperature is None else _base_series(base_temperature, start_time, length)
+    if base is not None and (is_cycle(initial) or base_flux != 0.0):
+        raise InputError(
+            message("base_temperature", 'initial="cycle" or a base_heat_flux beside it', "a base temperature alone",
+                    "give `initial` as a profile or a temperature, and no heat flux")
+        )  # fmt: skip
+    column = build_column(profile, frost_zone=_frost_zone(profile, seconds, surface))
+    wanted = column.depths if depths is None else _depths(depths, profile)
+    outputs = every * np.arange(int(length / every + 1e-9) + 1, dtype=np.float64)
+    below = wanted[wanted > 0.0]
+    watched = min(WATCHED_DEPTH, float(below.min())) if depths is not None and below.size else WATCHED_DEPTH
+    schedule = make_schedule(seconds, surface, outputs, max_step=step, also=None if base is None else base[0])
+    return Problem(
+        column=column,
+        schedule=schedule,
+        cycle=_cycle_schedule(seconds, surface, step) if is_cycle(initial) else None,
+        start=None if is_cycle(initial) else _start(initial, column),
+        base_flux=base_flux,
+        base_temperature=None if base is None else np.interp(schedule.seconds, *base),
+        watched_depth=watched,
+        tolerance=limit,
+        longest_step=step,
+        start_time=start_time,
+        outputs=outputs,
+        depths=wanted,
+    )
+
+
+def is_cycle(initial: Any) -> bool:
+    """Whether a study starts from the periodic steady state."""
+    return isinstance(initial, str) and initial == "cycle"
+
+
+def whole_years(seconds: float) -> int:
+    """Whole years in a span of time; one that lacks less than a day counts."""
+    return int((seconds + DAY) // YEAR)
+
+
+def _frost_zone(profile: Profile, seconds: Floats, surface: Floats) -> float:
+    """Depth that frost (thaw, where the ground is frozen on average) can reach by a Stefan estimate, made generous."""
+    mean = float(np.trapezoid(surface, seconds) / seconds[-1])
+    years = max(1.0, float(seconds[-1]) / YEAR)
+    below = -np.minimum(surface, 0.0) if mean >= 0.0 else np.maximum(surface, 0.0)
+    index = float(np.trapezoid(below, seconds)) / years * 1.6  # a winter far colder than the average of the series
+    depth = 0.0
+    for layer in profile.layers:
+        material = layer.material
+        conductivity = max(material.conductivity_frozen, material.conductivity_thawed)
+        # water-poor layers freeze as fast as their heat capacity lets them: 5 K of it stands in for latent heat
+        latent = max(material.latent_heat, 5.0 * material.heat_capacity_thawed)
+        resistance = layer.thickness / conductivity
+        needed = latent * layer.thickness * (depth / conductivity + 0.5 * resistance)
+        if needed >= index:
+            depth += float(np.sqrt(depth**2 + 2.0 * conductivity * index / latent) - depth)
+            break
+        index -= needed
+        depth += layer.thickness
+    return min(max(depth, 0.3), 8.0)
+
+
+def _depths(depths: Any, profile: Profile) -> Floats:
+    """Depths of the output [m], checked."""
+    items = [depths] if isinstance(depths, (int, float, str)) else list(np.asarray(depths, dtype=object).ravel())
+    values = np.array(
+        [to_si(item, "length", f"depths, item {n}", low=0.0, high=profile.base) for n, item in enumerate(items, 1)]
+    )
+    if values.size == 0 or np.any(np.diff(values) <= 0.0):
+        raise InputError(
+            message(
+                "depths",
+                f"{values.tolist()}",
+                "one depth or more, each deeper than the one before",
+                "sort them",
+            )
+        )
+    return values
+
+
+def _base_series(base_temperature: xr.DataArray, start: np.datetime64, length: float) -> tuple[Floats, Floats]:
+    """Knots of the base temperature in seconds since the start of the surface temperature."""
+    seconds, celsius, first = forcing_knots(base_temperature)
+    seconds = seconds + float((first - start) / np.timedelta64(1, "ns")) / 1e9
+    if seconds[0] > 0.0 or seconds[-1] < length:
+        raise InputError(
+            message("base_temperature", f"{first} and {seconds[-1] - seconds[0]:g} s from there",
+                    f"all of {start} and {length:g} s from there", "give a series that spans the surface temperature")
+        )  # fmt: skip
+    return seconds, celsius
+
+
+def _start(initial: Any, column: Column) -> Floats:
+    """Start temperatures at the nodes, from one temperature or a profile."""
+    if not isinstance(initial, xr.DataArray):
+        return np.full(column.depths.size, to_si(initial, "temperature", 'initial (or "cycle")', low=-80.0, high=80.0))
+    if initial.dims != ("depth",) or "depth" not in initial.coords:
+        raise InputError(
+            message(
+                "initial",
+                f"dimensions {initial.dims}",
+                "one dimension, depth, with its coordinate [m]",
+                "rename it",
+            )
+        )
+    depth, values = np.asarray(initial["depth"], dtype=np.float64), np.asarray(initial, dtype=np.float64)
+    base = column.profile.base
+    if not (np.isfinite(values).all() and np.isfinite(depth).all()) or np.any(np.diff(depth) <= 0.0):
+        raise InputError(
+            message("initial", "missing values or depths that do not increase", "finite values, depths increasing",
+                    "fill or drop the missing ones and sort by depth")
+        )  # fmt: skip
+    if np.abs(values).max() > 80.0:
+        raise InputError(
+            message("initial", f"{values[np.argmax(np.abs(values))]:g} degC", "-80 to 80 degC", "check the unit")
+        )
+    if depth[-1] < base * (1.0 - 1e-9) or depth[0] > 0.5:
+        raise InputError(
+            message(
+                "initial", f"depths {depth[0]:g} to {depth[-1]:g} m", f"0 to {base:g} m, the base of the profile",
+                "extend it to the base, or shorten the column",
+            )
+        )  # fmt: skip
+    return np.asarray(np.interp(column.depths, depth, values))
+
+
+def _cycle_schedule(seconds: Floats, surface: Floats, step: float) -> Schedule:
+    """One year to be repeated: the series itself if it is a year long, else its average year from its first day on."""
+    years = whole_years(float(seconds[-1]))
+    if years < 1:
+        raise InputError(
+            message(
+                "initial", f'"cycle" with {seconds[-1] / DAY:.1f} days of surface temperature', "a year or more",
+                "give a longer series, or `initial` as a temperature or a profile",
+            )
+        )  # fmt: skip
+    if years == 1:
+        inside = seconds <= min(YEAR, seconds[-1])
+        bounds, values = seconds[inside], surface[inside]
+    else:
+        count = int(np.sum(seconds < YEAR))
+        bounds = np.append(seconds[:count], YEAR)
+        total = np.zeros(bounds.size)
+        for index in range(years):
+            total += np.interp(bounds + index * YEAR, seconds, surface)
+        values = total / years
+    # the end of the year leads back to its beginning
+    values = np.append(values[:-1], values[0])
+    outputs = np.linspace(0.0, bounds[-1], 25)
+    return make_schedule(bounds, values, outputs, max_step=step)
+
+
+def _coarse_schedule(schedule: Schedule) -> Schedule:
+    """The schedule with steps twice as long; where an interval is one step already, on every second knot."""
+    if schedule.parts.max() > 1:
+        return replace(schedule, parts=(schedule.parts + 1) // 2)
+    seconds, surface = schedule.seconds, schedule.surface
+    # hat averages keep the mean of the forcing on half the knots
+    inner = 0.25 * surface[1:-2:2] + 0.5 * surface[2:-1:2] + 0.25 * surface[3::2]
+    last = [] if seconds.size % 2 else [seconds[-1]]
+    bounds = np.concatenate([seconds[::2], last])
+    values = np.interp(bounds, seconds, surface)
+    values[1 : 1 + inner.size] = inner
+    return make_schedule(bounds, values, seconds[schedule.row >= 0], max_step=np.inf)
+
+
+def coarsened(problem: Problem) -> Problem:
+    """The same problem on a grid and a step twice as coarse."""
+    schedule = _coarse_schedule(problem.schedule)
+    base = problem.base_temperature
+    return replace(
+        problem,
+        column=problem.column.coarsened(),
+        schedule=schedule,
+        cycle=None if problem.cycle is None else _coarse_schedule(problem.cycle),
+        start=None if problem.start is None else problem.start[::2].copy(),
+        base_temperature=None if base is None else np.interp(schedule.seconds, problem.schedule.seconds, base),
+    )
