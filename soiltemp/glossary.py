@@ -127,7 +127,4 @@ def _terms() -> dict[str, Term]:
         raise DataFileError(
             message(f"{_FILE}", f"{error}", "the table as installed", "install soiltemp again")
         ) from error
-    return {
-        name: Term(name, **(row | {"extra": tuple(row.get("extra", {}).items())}))
-        for name, row in table.items()
-    }
+    return {name: Term(name, **(row | {"extra": tuple(row.get("extra", {}).items())})) for name, row in table.items()}

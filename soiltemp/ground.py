@@ -274,11 +274,7 @@ class Profile:
         return Profile((*self.layers[:i], layer, *self.layers[i:]))
 
     def _checked_index(self, index: Any, greatest: int) -> int:
-        if (
-            isinstance(index, bool)
-            or not hasattr(index, "__index__")
-            or not 0 <= index.__index__() <= greatest
-        ):
+        if isinstance(index, bool) or not hasattr(index, "__index__") or not 0 <= index.__index__() <= greatest:
             remedy = "count the layers from 0 at the top"
             raise InputError(message("layer index", f"{index!r}"[:60], f"0 to {greatest}", remedy))
         return int(index.__index__())
@@ -291,22 +287,14 @@ def _checked_layers(layers: Any) -> tuple[Layer, ...]:
     found_layers: list[Layer] = []
     for number, layer in enumerate(layers, start=1):
         if not isinstance(layer, Layer):
-            where = (
-                f'layer {number} "{getattr(layer, "name", "")}"'
-                if hasattr(layer, "name")
-                else f"layer {number}"
-            )
+            where = f'layer {number} "{getattr(layer, "name", "")}"' if hasattr(layer, "name") else f"layer {number}"
             found = f"{type(layer).__name__} {str(layer)[:40]!r}"
             raise InputError(message(where, found, "a Layer", "write Layer(material, thickness)"))
         if number > _MOST_LAYERS:
             remedy = "join thin layers of the same material"
             where = f'layer {number} "{layer.name}"'
-            raise InputError(
-                message(where, f"more than {_MOST_LAYERS} layers", f"1 to {_MOST_LAYERS}", remedy)
-            )
+            raise InputError(message(where, f"more than {_MOST_LAYERS} layers", f"1 to {_MOST_LAYERS}", remedy))
         found_layers.append(layer)
     if not found_layers:
-        raise InputError(
-            message("profile, layers", "none", f"1 to {_MOST_LAYERS} layers", "give at least one layer")
-        )
+        raise InputError(message("profile, layers", "none", f"1 to {_MOST_LAYERS} layers", "give at least one layer"))
     return tuple(found_layers)

@@ -233,9 +233,9 @@ def _with_errors(
         ground_temperature_error=(
             "depth", np.abs(difference).max(axis=0), attributes("ground_temperature_error"),
         ),
-        frost_depth_error=((), float(np.abs(fine.frost - coarse.frost).max()), attributes("frost_depth_error")),
+        frost_depth_error=((), abs(float(fine.frost.max() - coarse.frost.max())), attributes("frost_depth_error")),
         frozen_ground_depth_error=(
-            (), float(np.abs(fine.frozen - coarse.frozen).max()), attributes("frozen_ground_depth_error"),
+            (), abs(float(fine.frozen.max() - coarse.frozen.max())), attributes("frozen_ground_depth_error"),
         ),
     )  # fmt: skip
 

@@ -62,7 +62,8 @@ def test_kersten_against_the_example_of_ufc_3_130_06() -> None:
 
 
 def test_kersten_against_chart_values_of_a_pavement_guide() -> None:
-    # WSDOT Pavement Guide, frost chapter, from Kersten's charts: base 135 lb/ft3, 5 %: 1.65 thawed; silt 100
+    # WSDOT Pavement Guide, frost chapter (attribution from memory),
+    # from Kersten's charts: base 135 lb/ft3, 5 %: 1.65 thawed; silt 100
     # lb/ft3, 15 %: 0.8 frozen. The frozen base, 1.8 from the chart, is 11 % above the equation: left out as
     # within his scatter of 25 %, and stated here.
     base, silt = ("135 lb/ft^3", "5 %"), ("100 lb/ft^3", "15 %")
@@ -123,9 +124,7 @@ def water_at(saturation: float, dry_density: float, grain_density: float = 2700.
 
 
 @pytest.mark.parametrize(("model", "grain", "state", "expected"), REGRESSION)
-def test_models_against_computed_regression(
-    model: str, grain: str, state: str, expected: tuple[float, ...]
-) -> None:
+def test_models_against_computed_regression(model: str, grain: str, state: str, expected: tuple[float, ...]) -> None:
     for saturation, k in zip((0.2, 0.5, 0.8, 1.0), expected, strict=True):
         water = water_at(saturation, 1600.0)
         found = MODELS[model](1600.0, water, grain=grain, state=state, quartz_fraction=0.5)
@@ -142,9 +141,7 @@ def test_models_against_computed_regression(
         (2000.0, 0.4153, 0.3664),
     ],
 )
-def test_dry_conductivity_against_computed_regression(
-    dry_density: float, johansen: float, cote_konrad: float
-) -> None:
+def test_dry_conductivity_against_computed_regression(dry_density: float, johansen: float, cote_konrad: float) -> None:
     for model, expected in (("johansen", johansen), ("cote_konrad", cote_konrad)):
         for state in ("thawed", "frozen"):
             k = MODELS[model](dry_density, 0.0, grain="fine", state=state, quartz_fraction=0.5)
@@ -154,9 +151,7 @@ def test_dry_conductivity_against_computed_regression(
 @pytest.mark.parametrize(
     ("quartz", "thawed", "frozen"), [(0.1, 1.6126, 2.7958), (0.5, 1.7881, 3.1000), (0.9, 2.4614, 4.2672)]
 )
-def test_saturated_conductivity_against_computed_regression(
-    quartz: float, thawed: float, frozen: float
-) -> None:
+def test_saturated_conductivity_against_computed_regression(quartz: float, thawed: float, frozen: float) -> None:
     water = water_at(1.0, 1600.0)
     for model in MODELS.values():
         for state, expected in (("thawed", thawed), ("frozen", frozen)):
@@ -275,9 +270,7 @@ def test_more_water_conducts_more_and_limits_hold(
 def test_dry_end_of_johansen_is_continuous() -> None:
     for grain, least in (("fine", 0.1), ("coarse", 0.05)):
         below, above = (
-            conductivity_johansen_1975(
-                1600.0, water_at(s, 1600.0), grain=grain, state="thawed", quartz_fraction=0.5
-            )
+            conductivity_johansen_1975(1600.0, water_at(s, 1600.0), grain=grain, state="thawed", quartz_fraction=0.5)
             for s in (least - 1e-9, least + 1e-9)
         )
         assert below == pytest.approx(above, abs=1e-7)
@@ -323,9 +316,7 @@ def test_refused(model: Any, changes: dict[str, Any], words: str) -> None:
 
 
 def test_refused_by_one_model_only() -> None:
-    with pytest.raises(
-        InputError, match=r"found crushed rock of porosity 0\.185; allowed: porosity 0\.2 and more"
-    ):
+    with pytest.raises(InputError, match=r"found crushed rock of porosity 0\.185; allowed: porosity 0\.2 and more"):
         conductivity_johansen_1975(
             2200.0, 0.02, grain="coarse", state="thawed", quartz_fraction=0.3, dry_conductivity="crushed"
         )

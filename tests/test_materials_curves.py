@@ -14,9 +14,7 @@ from soiltemp.errors import InputError
 from soiltemp.materials import Curves, Material
 
 SILT = Curves((-1.0, 0.0), (2.0e6, 82.0e6, 3.0e6), (2.5, 2.0, 1.5), (1.0, 0.0))
-SALTY = Curves(
-    (-6.0, -2.0, -0.7, -0.2), (2e6, 6e6, 2e7, 1.5e8, 3e6), (2.4, 2.3, 2.1, 1.8, 1.4), (1.0, 0.9, 0.6, 0.0)
-)
+SALTY = Curves((-6.0, -2.0, -0.7, -0.2), (2e6, 6e6, 2e7, 1.5e8, 3e6), (2.4, 2.3, 2.1, 1.8, 1.4), (1.0, 0.9, 0.6, 0.0))
 
 
 @st.composite

@@ -23,9 +23,7 @@ def test_latent_heat_of_the_example_of_ufc_3_130_06() -> None:
 def test_heat_capacity_of_the_example_of_ufc_3_130_06() -> None:
     # ibid.: C = gamma (0.17 + 0.75 w) = 28.3 Btu/(ft3 F), the mean of thawed and frozen; value from memory
     thawed, frozen = (
-        heat_capacity_by_composition(
-            "100 lb/ft^3", "15 %", state=state, specific_heat_grains="0.17 BTU/(lb degF)"
-        )
+        heat_capacity_by_composition("100 lb/ft^3", "15 %", state=state, specific_heat_grains="0.17 BTU/(lb degF)")
         for state in ("thawed", "frozen")
     )
     mean = from_si(0.5 * (thawed + frozen), "heat_capacity", "BTU/(ft^3 delta_degF)")
@@ -60,9 +58,7 @@ def test_unfrozen_water_keeps_its_latent_heat_and_holds_more() -> None:
         333.55e3 * 1500.0 * 0.15
     )
     frozen, some = (
-        heat_capacity_by_composition(
-            1500.0, 0.2, state="frozen", specific_heat_grains=712.0, unfrozen_water_content=w
-        )
+        heat_capacity_by_composition(1500.0, 0.2, state="frozen", specific_heat_grains=712.0, unfrozen_water_content=w)
         for w in (0.0, 0.05)
     )
     assert some - frozen == pytest.approx(1500.0 * 0.05 * (4200.0 - 2090.0))
@@ -110,7 +106,5 @@ def test_refused(changes: dict[str, Any], error: type[SoilTempError], words: str
 
 
 def test_latent_heat_refuses_too() -> None:
-    with pytest.raises(
-        InputError, match=r"^latent heat, water content: found 15 kg/kg, that is 22500 kg of water"
-    ):
+    with pytest.raises(InputError, match=r"^latent heat, water content: found 15 kg/kg, that is 22500 kg of water"):
         latent_heat_by_composition(1500.0, 15)

@@ -62,7 +62,8 @@ def test_rock_of_iso_13370() -> None:
 
 
 def test_gravel_base_course_of_the_charts() -> None:
-    # WSDOT Pavement Guide, frost chapter, from Kersten's charts: 135 lb/ft3, 5 %: 1.65 thawed, 1.8 frozen
+    # WSDOT Pavement Guide, frost chapter (attribution from memory),
+    # from Kersten's charts: 135 lb/ft3, 5 %: 1.65 thawed, 1.8 frozen
     # Btu/(h ft F); latent heat 144 * 135 * 0.05 = 972 Btu/ft3, 0.4 % above ours (UFC 3-130-06; value from
     # memory)
     base = material("gravel base course")
@@ -197,7 +198,5 @@ def test_things_that_are_no_names_are_refused(name: object) -> None:
 
 
 def test_a_missing_table_is_reported_as_a_broken_installation() -> None:
-    with pytest.raises(
-        DataFileError, match=r"no_such\.toml: found .*; allowed: the table as installed; install"
-    ):
+    with pytest.raises(DataFileError, match=r"no_such\.toml: found .*; allowed: the table as installed; install"):
         read_table("no_such.toml")

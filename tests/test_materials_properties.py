@@ -119,9 +119,7 @@ def test_copies() -> None:
     changed = material.with_values(latent_heat="0 J/m^3", name="dry silt")
     assert (changed.latent_heat, changed.name, changed.source) == (0.0, "dry silt", "tested")
     assert material.latent_heat == 80e6
-    with pytest.raises(
-        InputError, match=r'material "silt": found "conductivity"; allowed: name, conductivity_thawed'
-    ):
+    with pytest.raises(InputError, match=r'material "silt": found "conductivity"; allowed: name, conductivity_thawed'):
         material.with_values(conductivity=1.0)
     with pytest.raises(FrozenInstanceError):
         material.latent_heat = 1.0  # type: ignore[misc]  # the point of the test

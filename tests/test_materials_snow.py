@@ -34,7 +34,8 @@ def test_models_against_computed_regression(model: Any, expected: tuple[float, .
 
 
 def test_models_against_a_pavement_guide() -> None:
-    # WSDOT Pavement Guide, frost chapter: loose snow 0.06, compact 0.20 Btu/(h ft F) = 0.10 and 0.35 W/(m K);
+    # WSDOT Pavement Guide, frost chapter (attribution from memory):
+    # loose snow 0.06, compact 0.20 Btu/(h ft F) = 0.10 and 0.35 W/(m K);
     # Yen gives them at densities that are loose and compact indeed (195 and 373 kg/m3)
     assert conductivity_yen_1981(195.0) == pytest.approx(0.06 * 1.730735, rel=0.02)
     assert conductivity_yen_1981(373.0) == pytest.approx(0.20 * 1.730735, rel=0.02)
@@ -73,9 +74,7 @@ def test_density_out_of_range_is_refused(model: Any, density: float, words: str)
 
 
 def test_snow_needs_a_named_model() -> None:
-    with pytest.raises(
-        InputError, match=r'conductivity model: found "sturm"; allowed: "calonne_2011", "sturm_1997"'
-    ):
+    with pytest.raises(InputError, match=r'conductivity model: found "sturm"; allowed: "calonne_2011", "sturm_1997"'):
         snow(300.0, "sturm")
     with pytest.raises(InputError, match=r"snow, density: found 950 kg/m\^3; allowed: 1 to 917"):
         snow(950.0, "yen_1981")

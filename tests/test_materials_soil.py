@@ -72,9 +72,7 @@ def test_models_side_by_side_say_why_one_does_not_apply() -> None:
     peat = {e.model: e for e in Soil(150.0, 3.0, "organic").conductivities()}
     assert '"organic"' in peat["kersten_1949"].reason
     assert peat["cote_konrad_2005"].frozen > peat["cote_konrad_2005"].thawed > 0.0
-    with pytest.raises(
-        InputError, match=r'^soil "organic soil, .*", Kersten 1949, grain: found "organic"; allowed: '
-    ):
+    with pytest.raises(InputError, match=r'^soil "organic soil, .*", Kersten 1949, grain: found "organic"; allowed: '):
         Soil(150.0, 3.0, "organic").material("kersten_1949")
 
 
@@ -172,9 +170,7 @@ def test_every_possible_soil_makes_a_material(
         ),
     ],
 )
-def test_refused(
-    arguments: tuple[Any, ...], changes: dict[str, Any], error: type[SoilTempError], words: str
-) -> None:
+def test_refused(arguments: tuple[Any, ...], changes: dict[str, Any], error: type[SoilTempError], words: str) -> None:
     with pytest.raises(error) as caught:
         Soil(*arguments, **changes, name="layer seven")
     assert str(caught.value).startswith('soil "layer seven", ')
@@ -193,9 +189,7 @@ def test_the_greatest_water_content_named_is_itself_accepted(dry_density: float)
 
 
 def test_unknown_model_is_refused() -> None:
-    with pytest.raises(
-        InputError, match=r'conductivity model: found "kersten"; allowed: "cote_konrad_2005", '
-    ):
+    with pytest.raises(InputError, match=r'conductivity model: found "kersten"; allowed: "cote_konrad_2005", '):
         Soil(1500.0, 0.1, "fine").material("kersten")
 
 

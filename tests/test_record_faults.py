@@ -106,6 +106,13 @@ CASES: dict[str, tuple[str | bytes, dict[str, Any], type[SoilTempError], tuple[s
         DataFileError,
         ("line 3", "several lines", "pairs"),
     ),
+    "quote in a number": (
+        with_line(5, '2020-01-04,"1"5'),
+        {},
+        DataFileError,
+        ("line 5", "cannot be read", "pairs"),
+    ),
+    "cut in a quoted cell": (GOOD[:-5] + '"-3.3', {}, DataFileError, ("line 11", "cannot be read", "pairs")),
     # cut short
     "cut in the date": (
         GOOD[: GOOD.rindex("01-10") + 3],

@@ -255,6 +255,7 @@ def test_index_of_means_and_points() -> None:
     """Means: degree-days. Points: straight lines, with the triangle on each side of 0 degC counted."""
     assert freezing_index(series([-3.0, 2.0, -1.0])) == 4.0 * DAY
     assert thawing_index(series([-3.0, 2.0, -1.0])) == 2.0 * DAY
+    assert freezing_index(series([-3.0, 2.0, -1.0], step="h")) == 4.0 * 3600.0
     # From -3 to 2: below for 3/5 d, area 0.9 K d; from 2 to -1: below for 1/3 d, area 1/6 K d.
     points = series([-3.0, 2.0, -1.0], "time: point")
     assert freezing_index(points) == pytest.approx((0.9 + 1 / 6) * DAY, rel=1e-14)

@@ -172,9 +172,7 @@ def test_huge_text_is_cut_in_the_message() -> None:
 
 
 def test_bare_numbers_refused_where_units_are_always_written() -> None:
-    with pytest.raises(
-        UnitError, match=r'^cover: found the bare number 4; .*write it as "1.2 m" or "4 ft"\.$'
-    ):
+    with pytest.raises(UnitError, match=r'^cover: found the bare number 4; .*write it as "1.2 m" or "4 ft"\.$'):
         to_si(4, "length", "cover", bare="refuse")
     assert to_si(0.24, "fraction", "water content", bare="refuse") == 0.24
 

@@ -4,9 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, Protocol
 
 import numpy as np
+import xarray as xr
 from bokeh.models import (
     ColumnDataSource,
     DatetimeTickFormatter,
@@ -25,19 +26,22 @@ from soiltemp.figures.reading import BuriedLine
 __all__ = [
     "AIR",
     "COLD",
+    "FONT",
     "FROZEN",
     "INK",
     "LINE",
     "PAPER",
     "QUIET",
+    "SMALL",
     "SOIL",
+    "SPREAD",
     "THAW",
     "WARM",
     "Picture",
     "Sheet",
+    "Update",
     "assign",
     "band_of",
-    "legend_below",
     "line_text",
     "nice_limits",
     "packed",
@@ -58,8 +62,15 @@ WARM = "#a8491a"
 FROZEN = "#cfe2ef"
 THAW = "#3d7a3a"
 SOIL = "#6b4f2a"
+SPREAD = "#d9e0e4"
 LINE = "#6d2c91"
 AIR = "#7b8790"
+
+
+class Update(Protocol):
+    """Renews a picture. What is not given is as it was when the picture was made: given then, or read from the result."""
+
+    def __call__(self, result: xr.Dataset, *, line: Any = None, layers: Any = None) -> None: ...
 
 
 @dataclass(frozen=True)
@@ -105,13 +116,15 @@ class Sheet:
         self.subtitle = Title(
             text=picture.subtitle, text_font=FONT, text_font_size=MEDIUM, text_font_style="normal", text_color=QUIET
         )
+        self._items: list[tuple[LegendItem, str]] = []
         self.figure.add_layout(self.subtitle, "above")
         self.figure.add_layout(
             Title(text=title, text_font=FONT, text_font_size=LARGE, text_font_style="bold", text_color=INK), "above"
         )
-        self._dress()
+        self.dress()
 
-    def _dress(self) -> None:
+    def dress(self) -> None:
+        """Give all axes the look of the house."""
         drawn = self.figure
         drawn.background_fill_color = PAPER
         drawn.border_fill_color = PAPER
@@ -154,6 +167,39 @@ class Sheet:
         assign(self.figure.x_range, reset_start=picture.x[0], reset_end=picture.x[1])
         assign(self.figure.y_range, reset_start=picture.y[0], reset_end=picture.y[1])
         assign(self.subtitle, text=picture.subtitle)
+        self._show_items()
+
+    def legend(self, items: Iterable[tuple[str, str, list[Any]]], *, columns: int | str = "auto") -> None:
+        """Put the legend under the plot, where it hides nothing; each item has a label, its source and its renderers.
+
+        An item is left out as long as its source is empty.
+        """
+        self._items = [(LegendItem(label=label, renderers=drawn), source) for label, source, drawn in items]
+        self._show_items()
+        self.figure.add_layout(
+            Legend(
+                items=[item for item, _ in self._items],
+                orientation="horizontal",
+                ncols=columns,
+                location="left",
+                click_policy="hide",
+                border_line_color=None,
+                background_fill_color=None,
+                label_text_font=FONT,
+                label_text_font_size=SMALL,
+                label_text_color=INK,
+                glyph_width=34,
+                spacing=18,
+                margin=4,
+                padding=2,
+            ),
+            "below",
+        )
+
+    def _show_items(self) -> None:
+        for item, source in self._items:
+            columns = self.sources[source].data.values()
+            assign(item, visible=any(len(column) > 0 for column in columns))
 
 
 def assign(model: Any, **values: Any) -> None:
@@ -180,35 +226,15 @@ def packed(values: Any) -> NDArray[np.float32]:
     return np.asarray(values, dtype=np.float32)
 
 
-def legend_below(drawn: Any, items: Iterable[tuple[str, list[Any]]], *, columns: int | str = "auto") -> None:
-    """Put the legend under the plot, where it hides nothing."""
-    drawn.add_layout(
-        Legend(
-            items=[LegendItem(label=label, renderers=renderers) for label, renderers in items],
-            orientation="horizontal",
-            ncols=columns,
-            location="left",
-            click_policy="hide",
-            border_line_color=None,
-            background_fill_color=None,
-            label_text_font=FONT,
-            label_text_font_size=SMALL,
-            label_text_color=INK,
-            glyph_width=34,
-            spacing=18,
-            margin=4,
-            padding=2,
-        ),
-        "below",
-    )
-
-
 def style_time_axis(drawn: Any) -> None:
     """Dates that can be read: the month with its year, or the day with its month."""
     drawn.xaxis.formatter = DatetimeTickFormatter(
         hours="%H:%M\n%d %b", days="%d %b\n%Y", months="%b\n%Y", years="%Y", hourmin="%H:%M\n%d %b"
     )
     drawn.xaxis.axis_label = None
+    # all pictures over time end at the same places: what stands above each other happens at the same time
+    drawn.min_border_left = 66
+    drawn.min_border_right = 104
 
 
 def nice_limits(low: float, high: float, step: float, origin: float = 0.0) -> tuple[float, float]:
@@ -234,4 +260,4 @@ def band_of(line: BuriedLine | None, display: Display, x: tuple[float, float]) -
 def line_text(line: BuriedLine, display: Display) -> str:
     """How a buried line is called in a picture: "line, 1.80 to 2.10 m"."""
     first = display.depth_text(line.crown).removesuffix(f" {display.depth_unit}")
-    return f"buried line, {first} to {display.depth_text(line.bottom)}"
+    return f"line, {first} to {display.depth_text(line.bottom)}"

@@ -13,7 +13,7 @@ from contourpy import LineType, contour_generator
 from numpy.typing import NDArray
 
 from soiltemp.errors import InputError, message
-from soiltemp.frost import envelope, frost_depth, zones
+from soiltemp.frost import envelope, frost_depth, temperature_at, zones
 from soiltemp.units import to_si
 
 __all__ = [
@@ -26,7 +26,9 @@ __all__ = [
     "line_of",
     "milliseconds",
     "picture_depth",
+    "reaches_base",
     "surface_of",
+    "temperature_there",
     "thawed_depth",
 ]
 
@@ -171,6 +173,20 @@ def frost_curves(result: xr.Dataset) -> tuple[Floats, Floats | None]:
             )  # fmt: skip
     values = [np.asarray(curve, dtype=np.float64) for curve in curves]
     return values[0], values[1] if len(values) > 1 else None
+
+
+def reaches_base(result: xr.Dataset, depth: float) -> bool:
+    """Whether a frost depth [m] is the base of the column: then the true one is deeper."""
+    bases = [float(result["depth"][-1]), *(layer.bottom for layer in layers_of(result)[-1:])]
+    return any(abs(depth - base) < 1e-6 for base in bases)
+
+
+def temperature_there(result: xr.Dataset, depth: float) -> Floats:
+    """Temperature at a depth [m] through time [degC]: of the result's own depths as it stands, else by straight lines."""
+    own = np.flatnonzero(np.abs(np.asarray(result["depth"], dtype=np.float64) - depth) < 1e-9)
+    if own.size:
+        return np.asarray(result["ground_temperature"].transpose("time", "depth")[:, int(own[0])], dtype=np.float64)
+    return np.asarray(temperature_at(result, depth), dtype=np.float64)
 
 
 def thawed_depth(result: xr.Dataset) -> Floats:

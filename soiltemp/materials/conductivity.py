@@ -96,15 +96,11 @@ def conductivity_kersten_1949(
     low, high = table["density_limits"]["value"]
     if not low <= soil.dry_density <= high:
         found, allowed = f"{soil.dry_density:g} kg/m^3", f"{low:g} to {high:g} kg/m^3"
-        raise InputError(
-            message("Kersten 1949, dry density", found, allowed, "use another conductivity model")
-        )
+        raise InputError(message("Kersten 1949, dry density", found, allowed, "use another conductivity model"))
     c = table[grain]
     if soil.water_content < c["least_water_content"]:
         found, allowed = f"{soil.water_content:g}", f"{c['least_water_content']:g} and more for {grain} soils"
-        raise InputError(
-            message("Kersten 1949, water content", found, allowed, "use another conductivity model")
-        )
+        raise InputError(message("Kersten 1949, water content", found, allowed, "use another conductivity model"))
     gamma = soil.dry_density / number(table["unit_density"])
     w = 100.0 * soil.water_content
     if state == "thawed":
@@ -272,9 +268,7 @@ def conductivity_cote_konrad_2005(
     check_choice(dry_conductivity, DRY_CONDUCTIVITIES, "Cote-Konrad 2005, dry conductivity")
     if moisture_class is None:
         is_crushed = grain == "coarse" and dry_conductivity == "crushed"
-        moisture_class = (
-            "gravel_coarse_sand" if is_crushed else coefficients("grains")[grain]["moisture_class"]
-        )
+        moisture_class = "gravel_coarse_sand" if is_crushed else coefficients("grains")[grain]["moisture_class"]
     check_choice(moisture_class, MOISTURE_CLASSES, "Cote-Konrad 2005, moisture class")
     c = coefficients("conductivity_cote_konrad_2005")
     kappa = c["kappa"][moisture_class][state]
@@ -306,9 +300,7 @@ def _dry_johansen(soil: Composition, grain: str, dry_conductivity: str, c: dict[
     if dry_conductivity == "natural":
         natural = c["dry_natural"]
         rho = soil.dry_density
-        return float(
-            (natural["slope"] * rho + natural["constant"]) / (natural["solid"] - natural["factor"] * rho)
-        )
+        return float((natural["slope"] * rho + natural["constant"]) / (natural["solid"] - natural["factor"] * rho))
     crushed = c["dry_crushed"]
     if soil.porosity < crushed["least_porosity"]:
         found = f"crushed rock of porosity {soil.porosity:.3f}"
@@ -334,9 +326,7 @@ def _saturated(
     if state == "thawed":
         if unfrozen:
             found = f"{unfrozen:g} for a thawed soil"
-            raise InputError(
-                message(f"{where}, unfrozen water", found, "0", 'leave it out, or set state="frozen"')
-            )
+            raise InputError(message(f"{where}, unfrozen water", found, "0", 'leave it out, or set state="frozen"'))
         return float(solids ** (1.0 - n) * water**n)
     if unfrozen > soil.water_content_volumetric * (1.0 + 1e-9):
         raise InputError(
@@ -360,9 +350,7 @@ def _solids(grain: str, quartz_fraction: QuantityLike | None, where: str) -> flo
             raise InputError(message(name, f"{quartz_fraction} for an organic soil", "none", remedy))
         return number(c["organic_solids"])
     if quartz_fraction is None:
-        remedy = (
-            "state it (clean sand about 0.9, silt 0.1 to 0.4), or let soiltemp.Soil assume and note a value"
-        )
+        remedy = "state it (clean sand about 0.9, silt 0.1 to 0.4), or let soiltemp.Soil assume and note a value"
         raise InputError(message(name, "nothing", "0 to 1", remedy))
     q = check_fraction(quartz_fraction, name)
     is_low = q <= number(c["low_quartz_limit"])

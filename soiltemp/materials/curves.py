@@ -75,9 +75,7 @@ class Curves:
             try:
                 members = tuple(values)
             except TypeError as error:
-                raise _refusal(
-                    f"curves, {name}", f"{values!r}", "a sequence of numbers", "give a tuple"
-                ) from error
+                raise _refusal(f"curves, {name}", f"{values!r}", "a sequence of numbers", "give a tuple") from error
             label = name.replace("_", " ")
             numbers = tuple(to_si(v, kind, f"curves, {label} {i}") for i, v in enumerate(members))
             object.__setattr__(self, name, numbers)
@@ -87,9 +85,7 @@ class Curves:
     def _check_shape(self) -> None:
         count = len(self.knots)
         if count == 1:
-            raise _refusal(
-                "curves, knots", "1 knot", "none, or 2 and more", "give both ends of the freezing range"
-            )
+            raise _refusal("curves, knots", "1 knot", "none, or 2 and more", "give both ends of the freezing range")
         for name, allowed in (
             ("frozen_share", count),
             ("heat_capacity", count + 1),
@@ -109,9 +105,7 @@ class Curves:
         for i, (low, high) in enumerate(pairwise(self.knots)):
             if not low < high:
                 found = f"{high:g} degC after {low:g} degC"
-                raise _refusal(
-                    f"curves, knot {i + 1}", found, "rising knots", "sort them and drop double ones"
-                )
+                raise _refusal(f"curves, knot {i + 1}", found, "rising knots", "sort them and drop double ones")
         for name in ("heat_capacity", "conductivity"):
             for i, slope in enumerate(getattr(self, name)):
                 if not slope > 0.0:
@@ -129,9 +123,7 @@ class Curves:
         for i, (low, high) in enumerate(pairwise(share)):
             if high > low:
                 found = f"{high:g} after {low:g}"
-                raise _refusal(
-                    f"curves, frozen share {i + 1}", found, "shares that never rise", "sort the table"
-                )
+                raise _refusal(f"curves, frozen share {i + 1}", found, "shares that never rise", "sort the table")
 
     @cached_property
     def _knots(self) -> Array:

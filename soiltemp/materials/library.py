@@ -70,9 +70,7 @@ def material(name: str) -> Material:
     """
     if not isinstance(name, str):
         found = f"{type(name).__name__} {name!r}"[:60]
-        raise InputError(
-            message("library material", found, "a name", 'give a name such as "sand, saturated"')
-        )
+        raise InputError(message("library material", found, "a name", 'give a name such as "sand, saturated"'))
     official = _official_names().get(_key(name))
     if official is None:
         shown = name if len(name) <= 60 else f"{name[:57]}..."
@@ -155,9 +153,7 @@ def _entry(name: str) -> LibraryEntry:
 
 
 def _from_soil(name: str, row: dict[str, Any]) -> Material:
-    arguments: dict[str, Any] = {
-        key: number(v) if isinstance(v, dict) else v for key, v in row["soil"].items()
-    }
+    arguments: dict[str, Any] = {key: number(v) if isinstance(v, dict) else v for key, v in row["soil"].items()}
     made = Soil(**arguments, name=name).material(row["conductivity_model"])
     return made.with_values(source=f"typical {made.source}")
 

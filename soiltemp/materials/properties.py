@@ -126,9 +126,7 @@ class Material:
         name = check_name(name, "material")
         if not isinstance(source, str):
             found = f"{source!r}"[:60]
-            raise InputError(
-                message(f'material "{name}", source', found, "a text", "give the source in quotes")
-            )
+            raise InputError(message(f'material "{name}", source', found, "a text", "give the source in quotes"))
         given: tuple[tuple[str, QuantityLike, str, tuple[float, float]], ...] = (
             ("conductivity_thawed", conductivity_thawed, "conductivity", CONDUCTIVITY_LIMITS),
             ("conductivity_frozen", conductivity_frozen, "conductivity", CONDUCTIVITY_LIMITS),
@@ -171,9 +169,7 @@ class Material:
         for key in changes:
             if key not in values:
                 where = f'material "{self.name}"'
-                raise InputError(
-                    message(where, f'"{key}"', ", ".join(values), "correct the name of the argument")
-                )
+                raise InputError(message(where, f'"{key}"', ", ".join(values), "correct the name of the argument"))
         return Material(**(values | changes))
 
     @property

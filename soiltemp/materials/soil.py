@@ -168,9 +168,7 @@ class Soil:
             number(usual["density"]) if grain_density is None else grain_density,
             where=where,
         )
-        quartz = (
-            None if quartz_fraction is None else check_fraction(quartz_fraction, f"{where}, quartz fraction")
-        )
+        quartz = None if quartz_fraction is None else check_fraction(quartz_fraction, f"{where}, quartz fraction")
         if quartz is not None and grain == "organic":
             found = f"{quartz:g} for an organic soil"
             raise InputError(message(f"{where}, quartz fraction", found, "none", "leave it out"))
@@ -185,9 +183,7 @@ class Soil:
         low, high = FREEZING_POINT_LIMITS
         point = to_si(freezing_point, "temperature", f"{where}, freezing point", low=low, high=high)
         low, high = FREEZING_RANGE_LIMITS
-        width = to_si(
-            freezing_range, "temperature_difference", f"{where}, freezing range", low=low, high=high
-        )
+        width = to_si(freezing_range, "temperature_difference", f"{where}, freezing range", low=low, high=high)
         for key, value in (
             ("dry_density", soil.dry_density),
             ("water_content", soil.water_content),
@@ -229,9 +225,7 @@ class Soil:
         for key in changes:
             if key not in values:
                 where = f'soil "{self.name}"'
-                raise InputError(
-                    message(where, f'"{key}"', ", ".join(values), "correct the name of the argument")
-                )
+                raise InputError(message(where, f'"{key}"', ", ".join(values), "correct the name of the argument"))
         if self.name == _described(self._composition, self.grain):
             values["name"] = None
         return Soil(**(values | changes))

@@ -2,8 +2,9 @@
 
 A node of a block is one record: `FIELDS` rows of `WIDTH` lanes, one lane a column, so that the inner loops run over
 lanes with constant distances and turn into vector instructions. The order of operations in a lane is that of
-`march_one`; results are equal to the last bit, whatever the company a column is marched in. A column that needs
-sub-steps or Katzenelson's path is taken out of the block for that step, worked by `careful`, and put back.
+`march_one`; results are equal to the last bit, whatever the company a column is marched in. A lane in which a node has
+to be held at a knot is solved again by itself, by `stage.settle`; one that needs sub-steps or Katzenelson's path is
+taken out for that step and worked by `careful`.
 
 Record 0 stands for the surface and is empty, record n stands below the base and carries the base flux as its
 potential: so neither end needs a case of its own.
@@ -28,16 +29,17 @@ from soiltemp.solver.stage import (
     FINGERPRINT,
     GAMMA,
     KNOT_SLACK,
-    MAX_HOLDS,
     OPTIONS,
     SOLVES,
     STEPS,
     W_FLUX,
+    factor,
     flux_difference,
     health,
     middle_of,
     place,
     potential,
+    settle,
 )
 
 __all__ = ["WIDTH", "march_columns", "march_columns_parallel"]
@@ -162,59 +164,67 @@ def _start(x, c):
 
 
 @njit(**OPTIONS)
-def _settle(x, tables, table_of, segment, c, which_stage, boundary, watch, factored, lost, count):
-    """Solve one stage by layer 1 in all lanes; mark in `lost` the lanes that did not settle."""
+def _stage_of_all(x, first_stage, boundary, watch):
+    """Solve one stage in the present segments of all lanes."""
     n = x.shape[0] - 1
     m = middle_of(n)
-    top, base = 1, n - 1
-    for hold in range(MAX_HOLDS):
-        if factored[0] != c:
-            _factor(x, c, top, base)
-            factored[0] = c
-            count[FACTORS] += 1
-        _meet(x, boundary)
-        # The middle node is worked like the others: its Z holds its temperature, and the record before it is the
-        # empty one, number n, reached by a step of m - n.
-        middle = x[m]
-        coupling = middle[E : E + WIDTH].copy()
-        middle[E : E + WIDTH] = 0.0
-        if which_stage == 1:
-            _outward_1(x, m, m - 1, m - n)
-            _outward_1(x, m - 1, 0, -1)
-            _outward_1(x, m + 1, n, 1)
-        else:
-            _outward_2(x, m, m - 1, m - n, watch)
-            _outward_2(x, m - 1, 0, -1, watch)
-            _outward_2(x, m + 1, n, 1, watch)
-        middle[E : E + WIDTH] = coupling
-        count[SOLVES] += 1
-        moved = False
-        top, base = m, m
-        for j in range(WIDTH):
-            worst = max(x[1, OUTSIDE + j], x[n - 1, OUTSIDE + j])
-            if worst <= KNOT_SLACK or lost[j]:
-                continue
-            if hold == MAX_HOLDS - 1:
-                lost[j] = True
-                continue
-            moved = True
-            for i in range(1, n):
-                own = x[i]
-                if own[T_NEW + j] > own[HI + j] + KNOT_SLACK:
-                    segment[i, j] += 1
-                elif own[T_NEW + j] < own[LO + j] - KNOT_SLACK:
-                    segment[i, j] -= 1
-                else:
-                    continue
-                for field in range(8):
-                    own[field * WIDTH + j] = tables[table_of[j], i, segment[i, j], field]
-                top = min(top, max(1, i - 1))
-                base = max(base, min(n - 1, i + 1))
-        if not moved:
-            return
-        factored[0] = 0.0
-        if which_stage == 1:  # its right side was overwritten by that of stage 2
-            _start(x, c)
+    _meet(x, boundary)
+    # The middle node is worked like the others: its Z holds its temperature, so its coupling E is put aside, and the
+    # record before it is the empty one, number n, reached by a step of m - n.
+    middle = x[m]
+    coupling = middle[E : E + WIDTH].copy()
+    middle[E : E + WIDTH] = 0.0
+    if first_stage:
+        _outward_1(x, m, m - 1, m - n)
+        _outward_1(x, m - 1, 0, -1)
+        _outward_1(x, m + 1, n, 1)
+    else:
+        _outward_2(x, m, m - 1, m - n, watch)
+        _outward_2(x, m - 1, 0, -1, watch)
+        _outward_2(x, m + 1, n, 1, watch)
+    middle[E : E + WIDTH] = coupling
+
+
+@njit(**OPTIONS)
+def _is_outside(x, j):
+    """Whether a node of lane `j` left its segment in the last solve."""
+    return max(x[1, OUTSIDE + j], x[x.shape[0] - 2, OUTSIDE + j]) > KNOT_SLACK
+
+
+@njit(**OPTIONS)
+def _put_factors(x, j, piece, work, top, base):
+    """Write the pieces and factors of nodes `top` to `base` of one column into lane `j`."""
+    for i in range(top, base + 1):
+        own = x[i]
+        for field in range(8):
+            own[field * WIDTH + j] = piece[field, i]
+        own[P + j], own[F + j], own[E + j], own[K + j] = work[0, i], work[1, i], work[2, i], work[3, i]
+
+
+@njit(**OPTIONS)
+def _stage_of_lane(
+    x, j, table, piece, segment, c, first_stage, boundary, below, watch, work, t, s, r, factored, count
+):  # fmt: skip
+    """Solve one stage of lane `j` by itself, where nodes have to be held at knots; False when they do not settle."""
+    n = t.size
+    for i in range(1, n):
+        own = x[i]
+        # in stage 1 the right side has been overwritten by that of stage 2
+        r[i] = own[S + j] + c * own[FLUX + j] if first_stage else own[R + j]
+    good = settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, count)
+    _put_factors(x, j, piece, work, int(factored[1]), int(factored[2]))
+    worst = 0.0
+    for i in range(1, n):
+        own = x[i]
+        own[T_NEW + j], own[S_NEW + j] = t[i], s[i]
+        if first_stage:
+            own[GAP + j] = E1 * (r[i] - own[S + j]) + E2 * (s[i] - r[i])
+            own[R + j] = B1 * s[i] - B2 * own[S + j]
+        elif i >= watch:
+            estimate = abs(own[GAP + j] + E3 * (s[i] - r[i])) * own[P + j]
+            worst = estimate if estimate > worst else worst
+    x[1, MISS + j], x[n - 1, MISS + j] = worst, worst
+    return good
 
 
 @njit(**OPTIONS)
@@ -241,16 +251,12 @@ def _potential(tops, j, temperature):
 
 
 @njit(**OPTIONS)
-def _put_lane(x, j, segment, piece, lane_segment, t, s, flux, c):
-    """Write the state of one column into lane `j`."""
-    n = t.size
-    for i in range(1, n):
+def _put_state(x, j, t, s, flux, c):
+    """Write the state of one column into lane `j`, ready for a stage 1."""
+    for i in range(1, t.size):
         own = x[i]
         own[T + j], own[S + j], own[FLUX + j] = t[i], s[i], flux[i]
         own[R + j] = s[i] + c * flux[i]
-        segment[i, j] = lane_segment[i]
-        for field in range(8):
-            own[field * WIDTH + j] = piece[field, i]
 
 
 @njit(**OPTIONS)
@@ -261,38 +267,38 @@ def _march_block(
     """March columns `first` to `first + lanes` through all intervals; see `march_columns`."""
     n = temperature.shape[1]
     x = np.zeros((n + 1, FIELDS * WIDTH))
-    segment = np.zeros((n, WIDTH), dtype=np.int64)
-    # one column alone, for `careful`; one set for each lane would cost more memory than it saves time
-    work, piece, lane_segment = np.zeros((14, n + 1)), np.zeros((8, n + 1)), np.zeros(n, dtype=np.int64)
-    t, s, flux = np.zeros(n), np.zeros(n), np.zeros(n)
-    factored, alone = np.zeros(1), np.zeros(1)
+    # What `settle` and `careful` need of each lane by itself; a lane's factors stand here and in `x`, the same in both.
+    segment, factored = np.zeros((WIDTH, n), dtype=np.int64), np.zeros((WIDTH, 3))
+    piece, work = np.zeros((WIDTH, 8, n + 1)), np.zeros((WIDTH, 14, n + 1))
+    t, s, r, flux, kept = np.zeros(n), np.zeros(n), np.zeros(n), np.zeros(n), np.zeros((3, WIDTH, n))
     heat, begin, change = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
     phi_1, phi_2, b_1, b_2 = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
-    q_0, q_1, q_2, kept = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros((3, WIDTH, n))
+    q_0, q_1, q_2, below = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
     lost, dead = np.zeros(WIDTH, dtype=np.bool_), np.zeros(WIDTH, dtype=np.bool_)
     table_of, force_of = np.zeros(WIDTH, dtype=np.int64), np.zeros(WIDTH, dtype=np.int64)
     tops = np.zeros((WIDTH, tables.shape[2], 3))
     bottom = np.zeros((1, 3))
     bottom[0, 1], bottom[0, 2] = 1.0, np.inf  # the base value is a heat flux
-    node = x[1]
+    node, last = x[1], x[n - 1]
     for j in range(WIDTH):
         column = first + min(j, lanes - 1)  # spare lanes repeat the last column and are not looked at
-        table_of[j], force_of[j] = which[column], forced_by[column]
+        table_of[j], force_of[j], below[j] = which[column], forced_by[column], base_flux[column]
         table = tables[table_of[j]]
         for k in range(tables.shape[2]):
             tops[j, k, 0] = table[0, k, stage.VA]
             tops[j, k, 1] = table[0, k, stage.V]
             tops[j, k, 2] = table[0, k, stage.HI]
-        piece[stage.UA, n] = base_flux[column]
-        x[n, UA + j] = base_flux[column]
+        x[n, UA + j] = below[j]
+        piece[j, stage.UA, n] = below[j]
         t[:] = temperature[column]
         t[0] = surfaces[force_of[j], 0]
-        place(table, piece, lane_segment, t)
+        place(table, piece[j], segment[j], t)
         for i in range(1, n):
-            s[i] = piece[stage.A, i] + piece[stage.B, i] * t[i]
+            s[i] = piece[j, stage.A, i] + piece[j, stage.B, i] * t[i]
         phi_2[j] = potential(tops[j], t[0])
-        flux_difference(piece, phi_2[j], t, flux)
-        _put_lane(x, j, segment, piece, lane_segment, t, s, flux, 0.0)
+        flux_difference(piece[j], phi_2[j], t, flux)
+        _put_state(x, j, t, s, flux, 0.0)
+        _put_factors(x, j, piece[j], work[j], 1, n - 1)
         q_2[j] = phi_2[j] - (node[UA + j] + node[U + j] * t[1])
         if row[0] >= 0 and j < lanes:
             out_temperature[column, row[0], :] = t
@@ -315,26 +321,37 @@ def _march_block(
                 lost[j] = dead[j] or j >= lanes
             if prepared != c:
                 _start(x, c)
+                _factor(x, c, 1, n - 1)
+                count[first, FACTORS] += 1
                 prepared = c
-            _settle(x, tables, table_of, segment, c, 1, b_1, watch, factored, lost, count[first])
+            _stage_of_all(x, True, b_1, watch)
+            for j in range(lanes):
+                if not lost[j] and _is_outside(x, j):
+                    lost[j] = not _stage_of_lane(
+                        x, j, tables[table_of[j]], piece[j], segment[j], c, True, b_1[j], below[j], watch,
+                        work[j], t, s, r, factored[j], count[first + j],
+                    )  # fmt: skip
             for j in range(WIDTH):
                 q_1[j] = phi_1[j] - (node[UA + j] + node[U + j] * node[T_NEW + j])
-            _settle(x, tables, table_of, segment, c, 2, b_2, watch, factored, lost, count[first])
-            last = x[n - 1]
+            _stage_of_all(x, False, b_2, watch)
+            for j in range(lanes):
+                if not lost[j] and _is_outside(x, j):
+                    lost[j] = not _stage_of_lane(
+                        x, j, tables[table_of[j]], piece[j], segment[j], c, False, b_2[j], below[j], watch,
+                        work[j], t, s, r, factored[j], count[first + j],
+                    )  # fmt: skip
             for j in range(lanes):
                 if dead[j]:
                     continue
-                miss = max(node[MISS + j], last[MISS + j])
-                if not lost[j] and miss <= tolerance:
+                if not lost[j] and max(node[MISS + j], last[MISS + j]) <= tolerance:
                     q_2[j] = phi_2[j] - (node[UA + j] + node[U + j] * node[T_NEW + j])
                     heat[j] += h * (W_FLUX * q_0[j] + W_FLUX * q_1[j] + C_STAGE * q_2[j])
                     count[first + j, STEPS] += 1
+                    count[first + j, SOLVES] += 2
                     continue
                 lost[j] = True
-            for j in range(lanes):
-                if lost[j] and not dead[j]:
-                    for i in range(1, n):
-                        kept[0, j, i], kept[1, j, i], kept[2, j, i] = x[i, T + j], x[i, S + j], x[i, FLUX + j]
+                for i in range(1, n):
+                    kept[0, j, i], kept[1, j, i], kept[2, j, i] = x[i, T + j], x[i, S + j], x[i, FLUX + j]
             _accept(x, c, inverse)
             for j in range(lanes):
                 if not lost[j] or dead[j]:
@@ -342,12 +359,13 @@ def _march_block(
                 t[:], s[:], flux[:] = kept[0, j], kept[1, j], kept[2, j]
                 t[0] = begin[j]
                 code, gained, _ = careful(
-                    tables[table_of[j]], tops[j], bottom, piece, lane_segment, h, begin[j], begin[j] + change[j],
-                    base_flux[first + j], base_flux[first + j], watch, tolerance,
-                    t, s, flux, work, alone, count[first + j],
+                    tables[table_of[j]], tops[j], bottom, piece[j], segment[j], h, begin[j], begin[j] + change[j],
+                    below[j], below[j], watch, tolerance, t, s, flux, work[j], factored[j], count[first + j],
                 )  # fmt: skip
-                _put_lane(x, j, segment, piece, lane_segment, t, s, flux, c)
-                factored[0] = 0.0
+                factor(c, piece[j], work[j, 0], work[j, 1], work[j, 2], work[j, 3], 1, n - 1)
+                factored[j, 0] = c
+                _put_factors(x, j, piece[j], work[j], 1, n - 1)
+                _put_state(x, j, t, s, flux, c)
                 heat[j] += gained
                 q_2[j] = phi_2[j] - (node[UA + j] + node[U + j] * t[1])
                 if code != CONVERGED:
@@ -413,7 +431,7 @@ def _make(fingerprint, mode):
         status, stopped : int64 (column,)
             Filled, see `kernel.march_one`.
         count : int64 (column, 7)
-            Added to; solves and factorisations of a block are counted once, at its first column.
+            Added to; the factorisations of whole blocks are counted once, at the first column.
         """
         _ = fingerprint, mode
         columns = temperature.shape[0]

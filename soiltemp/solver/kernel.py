@@ -89,7 +89,7 @@ def _make(fingerprint):
         work = np.zeros((14, n + 1))
         piece = np.zeros((8, n + 1))
         segment = np.zeros(n, dtype=np.int64)
-        factored = np.zeros(1)
+        factored = np.zeros(3)
         s, flux, r1, s1, r2, s2 = np.zeros(n), np.zeros(n), np.zeros(n), np.zeros(n), np.zeros(n), np.zeros(n)
         t, t1, t2 = temperature.copy(), np.zeros(n), np.zeros(n)
         t[0] = surface[0]

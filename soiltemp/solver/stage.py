@@ -214,18 +214,21 @@ def flux_difference(piece, surface_potential, t, flux):
 
 @njit(**OPTIONS)
 def settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, count):
-    """Solve one stage by layer 1; True when every node ended in its segment. `factored[0]` is c of the factors.
+    """Solve one stage by layer 1; True when every node ended in its segment.
 
-    `boundary` is c times the potential at the surface, `below` the potential below the base.
+    `boundary` is c times the potential at the surface, `below` the potential below the base. `factored` is c of the
+    factors at hand (0: none) and the first and last node whose factors or piece this call made anew.
     """
     p, f, e, k, z = work[0], work[1], work[2], work[3], work[4]
     n = t.size
     piece[UA, n] = below
     top, base = 1, n - 1
+    factored[1], factored[2] = n, 0
     for _ in range(MAX_HOLDS):
         if factored[0] != c:
             factor(c, piece, p, f, e, k, top, base)
             factored[0] = c
+            factored[1], factored[2] = min(factored[1], top), max(factored[2], base)
             count[FACTORS] += 1
         b = n - 1  # the potential below may have changed since the factors were made
         k[b] = c * (piece[VA, b - 1] - piece[UA, b] - piece[VA, b] + piece[UA, n]) - piece[A, b]
