@@ -484,8 +484,9 @@ def _summary(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
     times = result["time"].values
     span = f"{show_moment(times[0])} to {show_moment(times[-1])}"
     lines = [f"{site.name}, {span}", f"  start of the run: {result.attrs['initial_state']}", ""]
+    zero = units.show(0.0, "temperature", 0)
     rows = [["", "greatest depth", "on", "numerical error"]]
-    for name, text in (("frost_depth", "frost (0 degC)"), ("frozen_ground_depth", "frozen ground")):
+    for name, text in (("frost_depth", f"frost ({zero})"), ("frozen_ground_depth", "frozen ground")):
         depth = result[name].values
         deepest = int(np.argmax(depth))
         on = show_moment(times[deepest]) if depth[deepest] > 0.0 else "never"
@@ -509,13 +510,13 @@ def _summary(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
 
 def _coldest(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
     """Coldest ground at the line and at the depths asked for."""
-    places = {} if site.line is None else dict(site.line.depths)
-    places |= {f"depth {number}": depth for number, depth in enumerate(site.study.depths or (), start=1)}
+    places = [] if site.line is None else list(site.line.depths.items())
+    places += [("", depth) for depth in site.study.depths or ()]
     if not places:
         return []
-    rows = [["", "depth", "coldest", "on", "days below 0 degC", "numerical error"]]
+    rows = [["", "depth", "coldest", "on", f"days below {units.show(0.0, 'temperature', 0)}", "numerical error"]]
     error = result["ground_temperature_error"]
-    for place, depth in places.items():
+    for place, depth in places:
         there = extremes(result, depth)
         off = float(np.interp(depth, result["depth"].values, error.values))
         rows.append(
@@ -523,7 +524,7 @@ def _coldest(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
                 place,
                 units.show(depth, "length"),
                 units.show(float(there["minimum_temperature"]), "temperature"),
-                show_moment(there["time_of_minimum"].values[()]),
+                show_moment(np.datetime64(there["time_of_minimum"].values, "s")),
                 f"{days_below(result, 0.0, depth):.1f}",
                 units.show(off, "temperature_difference", 3),
             ]
@@ -532,7 +533,7 @@ def _coldest(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
     if site.line is not None:
         margin = float(result["frost_margin"])
         where = "below the deepest frost" if margin >= 0.0 else "inside the frost"
-        lines.append(f"  The crown of the {site.line.name} lies {units.show(abs(margin), 'length')} {where}.")
+        lines.append(f"  The crown of the line lies {units.show(abs(margin), 'length')} {where}.")
     return lines
 
 

@@ -39,6 +39,7 @@ from soiltemp.figures.reading import (
     Floats,
     block_means,
     frost_curves,
+    has_fine_depths,
     line_of,
     milliseconds,
     picture_depth,
@@ -124,7 +125,8 @@ def _picture(
     result: xr.Dataset, line: BuriedLine | None, shown: Display, deepest: Any, is_sky: bool
 ) -> tuple[Picture, tuple[float, float]]:
     frost, frozen = frost_curves(result)
-    thawed = thawed_depth(result)
+    is_fine = has_fine_depths(result)
+    thawed = thawed_depth(result) if is_fine else np.full(frost.size, np.nan)
     surface = surface_of(result) if is_sky else None
     times = milliseconds(result["time"])
     ends = (float(times[0]), float(times[-1]) if times.size > 1 else float(times[0]) + 86400e3)
@@ -140,30 +142,40 @@ def _picture(
             "curves": {
                 "time": times,
                 "frost_depth": packed(shown.depth(frost)),
-                "frozen_ground_depth": packed(shown.depth(frost if frozen is None else frozen)),
+                "frozen_ground_depth": packed(np.full(times.size, np.nan) if frozen is None else shown.depth(frozen)),
                 "thawed_depth": packed(shown.depth(thawed)),
                 "surface_temperature": packed(temperatures if temperatures.size else np.full(times.size, np.nan)),
             },
-            "ground": _frozen_ground(result, times, to_depth, shown),
+            "ice": _curve(times, shown.depth(frozen)) if frozen is not None and np.any(frozen > 0.0) else _NO_CURVE,
+            "thaw": _curve(times, shown.depth(thawed)) if np.isfinite(thawed).any() else _NO_CURVE,
+            "ground": _frozen_ground(result, times, to_depth, shown) if is_fine else {"x": [], "y": []},
             "greatest": _greatest(times, frost, result, shown, ends),
             "level": {"x": np.asarray(ends), "depth": packed([0.0, 0.0]), "freezing": packed([shown.freezing] * 2)},
             "line": band_of(line, shown, ends),
         },
         x=ends,
         y=(bottom, -SKY * bottom if is_sky else 0.0),
-        subtitle=_subtitle(result, shown),
+        subtitle=_subtitle(result, shown, is_fine),
     )
     return picture, air
 
 
-def _subtitle(result: xr.Dataset, shown: Display) -> str:
+def _curve(times: Floats, depths: Any) -> Columns:
+    return {"time": times, "depth": packed(depths)}
+
+
+_NO_CURVE: Columns = {"time": np.empty(0), "depth": packed([])}
+
+
+def _subtitle(result: xr.Dataset, shown: Display, is_fine: bool) -> str:
+    lacking = "" if is_fine else ". Thaw from above not drawn: the depths of the result lie too far apart"
     if "frost_depth_error" not in result:
-        return "Numerical error not stated in this result"
+        return f"Numerical error not stated in this result{lacking}"
     texts = [f"frost depth {shown.error_text(float(result['frost_depth_error']), 'length')}"]
     if "frozen_ground_depth_error" in result:
         ground = shown.error_text(float(result["frozen_ground_depth_error"]), "length")
         texts.append(f"depth of frozen ground {ground}")
-    return "Numerical error: " + ", ".join(texts)
+    return "Numerical error: " + ", ".join(texts) + lacking
 
 
 def _frozen_ground(result: xr.Dataset, times: Floats, to_depth: float, shown: Display) -> Columns:
@@ -237,17 +249,14 @@ def _draw(sheet: Sheet, shown: Display, is_sky: bool) -> None:
         fill_color=LINE, fill_alpha=0.12, line_color=LINE, line_width=1.4, line_dash="dashed",
         hatch_pattern="right_diagonal_line", hatch_color=LINE, hatch_alpha=0.25, hatch_scale=8, hatch_weight=0.8,
     )  # fmt: skip
-    drawn.line("x", "depth", source=sheet.sources["level"], line_color=SOIL, line_width=2.5)
     frost = drawn.line("time", "frost_depth", source=curves, line_color=INK, line_width=2.2)
     items = [(f"frost depth ({shown.freezing:.0f} {shown.temperature_unit})", "curves", [frost])]
-    frozen = drawn.line(
-        "time", "frozen_ground_depth", source=curves, line_color=COLD, line_width=1.8, line_dash="dashed"
-    )
-    thaw = drawn.line(
-        "time", "thawed_depth", source=curves, line_color=THAW, line_width=2.2, line_dash="dotdash"
-    )
+    ice, thaw = sheet.sources["ice"], sheet.sources["thaw"]
+    frozen = drawn.line("time", "depth", source=ice, line_color=COLD, line_width=1.8, line_dash="dashed")
+    thawed = drawn.line("time", "depth", source=thaw, line_color=THAW, line_width=2.2, line_dash="dotdash")
+    drawn.line("x", "depth", source=sheet.sources["level"], line_color=SOIL, line_width=2.5)
     items.append(("depth of frozen ground (ice)", "ice", [frozen]))
-    items.append(("thawed from above down to here", "thaw", [thaw]))
+    items.append(("thawed from above down to here", "thaw", [thawed]))
     if is_sky:
         surface = drawn.line(
             "time", "surface_temperature", source=curves, y_range_name="surface", line_color=AIR, line_width=1.2

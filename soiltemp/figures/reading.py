@@ -22,6 +22,7 @@ __all__ = [
     "block_means",
     "freezing_lines",
     "frost_curves",
+    "has_fine_depths",
     "layers_of",
     "line_of",
     "milliseconds",
@@ -35,6 +36,9 @@ __all__ = [
 Floats = NDArray[np.float64]
 
 _JUST_BELOW_FREEZING = -1e-9  # ground at exactly 0 degC is not frozen, here as in `frost_depth`
+COARSEST = 0.2
+"""Distance of depths [m] up to which straight lines between them place an edge of frozen ground within centimetres."""
+
 _DEEPEST_LINE = 100.0
 _LARGEST_LINE = 20.0
 
@@ -173,6 +177,14 @@ def frost_curves(result: xr.Dataset) -> tuple[Floats, Floats | None]:
             )  # fmt: skip
     values = [np.asarray(curve, dtype=np.float64) for curve in curves]
     return values[0], values[1] if len(values) > 1 else None
+
+
+def has_fine_depths(result: xr.Dataset) -> bool:
+    """Whether straight lines between the depths of a result follow the edges of the frozen ground that it had."""
+    depths = np.asarray(result["depth"], dtype=np.float64)
+    reached = float(frost_curves(result)[0].max())
+    last = min(int(np.searchsorted(depths, reached)) + 1, depths.size)
+    return depths.size > 1 and bool(np.all(np.diff(depths[:last], prepend=0.0) <= COARSEST))
 
 
 def reaches_base(result: xr.Dataset, depth: float) -> bool:

@@ -35,6 +35,7 @@ from soiltemp.figures.reading import (
     block_means,
     freezing_lines,
     frost_curves,
+    has_fine_depths,
     line_of,
     milliseconds,
     picture_depth,
@@ -170,7 +171,7 @@ def _picture(
         },
         x=ends,
         y=(float(shown.depth(to_depth)), 0.0),
-        subtitle=_subtitle(every_time, count, shown),
+        subtitle=_subtitle(every_time, count, shown, has_fine_depths(result)),
     )
     return picture, scale
 
@@ -182,8 +183,10 @@ def _frozen_line(times: Floats, frozen: Floats | None, shown: Display) -> Column
     return {"time": times, "depth": packed(np.where(frozen > 0.0, shown.depth(frozen), np.nan))}
 
 
-def _subtitle(times: Floats, count: int, shown: Display) -> str:
+def _subtitle(times: Floats, count: int, shown: Display, is_fine: bool) -> str:
     reading = f"Pale is below {shown.freezing:.0f} {shown.temperature_unit}, dark is warm"
+    if not is_fine:
+        reading += "; straight lines between the depths of the result, which lie far apart"
     if count == 1:
         return reading
     hours = count * float(times[1] - times[0]) / 3600e3
