@@ -26,6 +26,7 @@ from soiltemp.climate import freezing_index, thawing_index
 from soiltemp.climate.moments import interval_text, show_moment, show_name, show_value
 from soiltemp.climate.series import temperature_series
 from soiltemp.constants import DAY, HOUR
+from soiltemp.cross_check import closed_form_lines
 from soiltemp.errors import InputError, SoilTempError, SolverError, message
 from soiltemp.frost import days_below, extremes, heat_balance
 from soiltemp.ground import Layer, Profile
@@ -149,6 +150,7 @@ def _parser() -> argparse.ArgumentParser:
     )
     common.add_argument("--debug", action="store_true", help="show the traceback of an error")
     parser = _Parser(
+        allow_abbrev=False,
         prog="soiltemp",
         description="Ground temperature and frost depth in layered, freezing ground.",
         epilog=f"{_STATUS_HELP}. {CAUTION_SHORT}",
@@ -156,6 +158,7 @@ def _parser() -> argparse.ArgumentParser:
     commands = parser.add_subparsers(metavar="COMMAND", required=True, parser_class=_Parser)
     check = commands.add_parser(
         "check",
+        allow_abbrev=False,
         parents=[common],
         help="read a site file and its record, and say what was understood",
         description="Read a site file and its record, check both, and say what was understood. Nothing is solved.",
@@ -165,6 +168,7 @@ def _parser() -> argparse.ArgumentParser:
     check.set_defaults(command=_check)
     start = commands.add_parser(
         "run",
+        allow_abbrev=False,
         parents=[common],
         help="solve a site, show what matters and save the result",
         description=_RUN_HELP,
@@ -207,23 +211,23 @@ def _run(options: argparse.Namespace, ending: _Ending) -> None:
     for target, writer in zip(targets, (_save, _draw), strict=True):
         if target is not None:
             replaced = target.exists()
-            writer(result, target)
+            writer(result, target, options.units)
             ending.written.append(str(target))
             files.append(f"{'Replaced' if replaced else 'Written'}: {target}")
-    lines = _summary(site, result, _Units(_UNITS[options.units]))
+    lines = _summary(site, result, options.units)
     print("\n".join([*lines, *(files or ["Not saved; -o RESULT.nc keeps the result."])]))
 
 
-def _save(result: xr.Dataset, path: Path) -> None:
+def _save(result: xr.Dataset, path: Path, _units: str) -> None:
     from soiltemp.netcdf import save
 
     save(result, path)
 
 
-def _draw(result: xr.Dataset, path: Path) -> None:
+def _draw(result: xr.Dataset, path: Path, units: str) -> None:
     from soiltemp.figures import save_page
 
-    save_page(result, path)
+    save_page(result, path, units=units)
 
 
 def _load(path: str) -> tuple[Site, xr.DataArray | None]:
@@ -479,8 +483,9 @@ def _line_text(site: Site, units: _Units) -> list[str]:
     return [*lines, ""]
 
 
-def _summary(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
+def _summary(site: Site, result: xr.Dataset, system: str) -> list[str]:
     """What `run` says."""
+    units = _Units(_UNITS[system])
     times = result["time"].values
     span = f"{show_moment(times[0])} to {show_moment(times[-1])}"
     lines = [f"{site.name}, {span}", f"  start of the run: {result.attrs['initial_state']}", ""]
@@ -498,7 +503,7 @@ def _summary(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
     lines += [
         *_coldest(site, result, units),
         "",
-        *_closed_forms(result, units),
+        *_closed_forms(result, system),
         *_balance(result, units),
         "",
         "Cautions",
@@ -524,7 +529,7 @@ def _coldest(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
                 place,
                 units.show(depth, "length"),
                 units.show(float(there["minimum_temperature"]), "temperature"),
-                show_moment(np.datetime64(there["time_of_minimum"].values, "s")),
+                show_moment(there["time_of_minimum"].values.reshape(1)[0]),
                 f"{days_below(result, 0.0, depth):.1f}",
                 units.show(off, "temperature_difference", 3),
             ]
@@ -532,8 +537,12 @@ def _coldest(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
     lines = ["", "Coldest ground", *_table(rows, 0)]
     if site.line is not None:
         margin = float(result["frost_margin"])
-        where = "below the deepest frost" if margin >= 0.0 else "inside the frost"
-        lines.append(f"  The crown of the line lies {units.show(abs(margin), 'length')} {where}.")
+        where = (
+            f"{units.show(abs(margin), 'length')} {'below the deepest frost' if margin >= 0.0 else 'inside the frost'}."
+        )
+        if float(result["frost_depth"].max()) == 0.0:
+            where = f"at {units.show(site.line.cover, 'length')}; no frost in the time studied."
+        lines.append(f"  The crown of the line lies {where}")
     return lines
 
 
@@ -551,5 +560,11 @@ def _balance(result: xr.Dataset, units: _Units) -> list[str]:
     return ["Heat since the start", f"  {', '.join(parts)}; largest error {error:.2g} J/m^2"]
 
 
-def _closed_forms(result: xr.Dataset, units: _Units) -> list[str]:
-    return []
+def _closed_forms(result: xr.Dataset, units: str) -> list[str]:
+    """Closed forms beside the solution, and why each differs; long reasons wrapped, tables as they are."""
+    lines: list[str] = []
+    for line in closed_form_lines(result, units=units):
+        indent = line[: len(line) - len(line.lstrip())]
+        is_text = "   " not in line.strip()
+        lines += _wrapped(line.strip(), f"  {indent}", f"    {indent}") if is_text else [f"  {line}"]
+    return ["Closed forms beside it", *lines, ""] if lines else []

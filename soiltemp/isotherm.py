@@ -66,9 +66,10 @@ def frozen_zones(depths: Floats, temperature: Floats, isotherm: float = 0.0) -> 
 def ice_depth(depths: Floats, share: Floats) -> Floats:
     """Lower edge of the deepest frozen ground, read from how much of each node's volume is frozen.
 
-    The volumes of the deepest zone that holds ice are added up, each with its frozen share, from the zone's first
-    wholly frozen node (or its first node at all) downward. A sharp front is placed within its element this way, where a
-    straight line between node temperatures errs by up to the element.
+    Found from the deepest node of which at least half is frozen; from its upper end down, the frozen shares of the
+    volumes are added up. A sharp front is placed within its element this way, where a straight line between node
+    temperatures errs by up to the element. Where water freezes over a range of temperatures, ground counts as frozen
+    that holds half of its water as ice, and the ice below adds its share.
 
     Parameters
     ----------
@@ -94,12 +95,12 @@ def ice_depth(depths: Floats, share: Floats) -> Floats:
     deepest = last - np.argmax(icy[..., ::-1], axis=-1)
     node = np.arange(depths.size)
     upto = node <= deepest[..., None]
-    # Upper end of the count: the lowest wholly frozen node above, or the top of the zone where none is wholly frozen.
-    whole = (share >= 1.0) & upto
+    frozen = (share >= 0.5) & upto
     gap = ~icy & upto
-    start_whole = np.where(whole.any(axis=-1), last - np.argmax(whole[..., ::-1], axis=-1), -1)
-    start_gap = np.where(gap.any(axis=-1), last - np.argmax(gap[..., ::-1], axis=-1) + 1, 0)
-    start = np.maximum(start_whole, start_gap)
+    # Upper end of the count; where a zone is nowhere half frozen, its first node.
+    start_frozen = np.where(frozen.any(axis=-1), last - np.argmax(frozen[..., ::-1], axis=-1), -1)
+    start_zone = np.where(gap.any(axis=-1), last - np.argmax(gap[..., ::-1], axis=-1) + 1, 0)
+    start = np.maximum(start_frozen, start_zone)
     counted = (node >= start[..., None]) & upto
     below = np.sum(share * volume, axis=-1, where=counted)
     return np.asarray(np.where(icy.any(axis=-1), bounds[start] + below, 0.0))

@@ -45,6 +45,8 @@ _SINGLE = ("ground_temperature",)
 _ROOM = 4_000_000
 """Room that a file takes beyond its numbers [bytes], generously."""
 
+_SEAL = b"\nsoiltemp sha256 "
+
 _ONE_AT_A_TIME = threading.Lock()
 
 # What the readers below raise on damaged files; named one by one so that our own faults stay visible.
@@ -52,6 +54,8 @@ _DAMAGE = (
     *(OSError, ValueError, RuntimeError, KeyError, IndexError, AttributeError, TypeError),
     *(OverflowError, MemoryError),
 )
+
+_DAMAGED = ("a file cut short or damaged", "a whole file", "run the study again, or take another copy")
 
 Attributes = dict[str, Any]
 
@@ -129,7 +133,7 @@ def open_result(path: str | os.PathLike[str]) -> xr.Dataset:
     """
     place = Path(os.fsdecode(path))
     where = f'result "{place.name}"'
-    _check_kind(place, where)
+    _check_content(place, where)
     with _ONE_AT_A_TIME:
         try:
             told, groups = _global_attributes(place)
@@ -139,8 +143,7 @@ def open_result(path: str | os.PathLike[str]) -> xr.Dataset:
         except DataFileError:
             raise
         except _DAMAGE as error:
-            remedy = "run the study again, or take another copy"
-            raise DataFileError(message(where, "a file cut short or damaged", "a whole file", remedy)) from error
+            raise DataFileError(message(where, *_DAMAGED)) from error
     if _study_hash(inputs) != told.get("study_sha256", ""):
         found, allowed = "inputs that are not those of its results", "the inputs as saved"
         raise DataFileError(message(f"{where}, group inputs", found, allowed, "run the study again from its site file"))
@@ -323,16 +326,26 @@ def _image(root: xr.Dataset, inputs: xr.Dataset) -> bytes:
     told = _file_attributes(root, inputs)
     try:
         with tempfile.TemporaryDirectory(prefix="soiltemp-") as folder, _ONE_AT_A_TIME:
-            needed, free = root.nbytes + inputs.nbytes + _ROOM, shutil.disk_usage(folder).free
-            if free < needed:
-                raise OSError(errno.ENOSPC, f"{free / 1e6:.0f} MB are free, {needed / 1e6:.0f} MB may be needed")
+            _check_room(folder, root.nbytes + inputs.nbytes + _ROOM)
             place = Path(folder, "result.nc")
             _write_file(place, root, inputs, told)
-            return place.read_bytes()
+            content = place.read_bytes()
+            return content + _seal(content)
     except (OSError, RuntimeError) as error:
         where, found = "folder for temporary files", f"that it takes no file ({error.args[-1]})"
         remedy = "make room, or set TMPDIR to another folder"
         raise DataFileError(message(where, found, "a folder with room for the result", remedy)) from error
+
+
+def _seal(content: bytes) -> bytes:
+    """What follows the end of the file proper: a checksum of all of it. HDF5 readers look no further than that end."""
+    return _SEAL + hashlib.sha256(content).hexdigest().encode() + b"\n"
+
+
+def _check_room(folder: str, needed: int) -> None:
+    free = shutil.disk_usage(folder).free
+    if free < needed:
+        raise OSError(errno.ENOSPC, f"{free / 1e6:.0f} MB are free, {needed / 1e6:.0f} MB may be needed")
 
 
 def _write_file(place: Path, root: xr.Dataset, inputs: xr.Dataset, told: Attributes) -> None:
@@ -409,17 +422,22 @@ def _write_site(file: Any, root: xr.Dataset) -> None:
 # ---- reading back --------------------------------------------------------------------------------------------
 
 
-def _check_kind(place: Path, where: str) -> None:
+def _check_content(place: Path, where: str) -> None:
+    """Look at the bytes before the library does: a damaged file can end the process in there."""
+    allowed = "a NetCDF file that save() wrote"
     try:
-        with open(place, "rb") as file:
-            head = file.read(8)
+        content = place.read_bytes()
     except (OSError, ValueError) as error:
         reason = str(getattr(error, "strerror", None) or error).lower()
-        found, allowed = f'no readable file at "{place}" ({reason})', "a file that save() wrote"
+        found = f'no readable file at "{place}" ({reason})'
         raise DataFileError(message(where, found, allowed, "check the path")) from error
-    if head != b"\x89HDF\r\n\x1a\n":
-        found = "a file of another kind" if head else "an empty file"
-        raise DataFileError(message(where, found, "a NetCDF file that save() wrote", "choose a result file"))
+    if not content.startswith(b"\x89HDF\r\n\x1a\n"):
+        found = "a file of another kind" if content else "an empty file"
+        raise DataFileError(message(where, found, allowed, "choose a result file"))
+    # another program that changed the file took the seal off: then it is the library that notices a cut
+    end = content.rfind(_SEAL)
+    if end >= 0 and content[end:] != _seal(content[:end]):
+        raise DataFileError(message(where, *_DAMAGED))
 
 
 def _global_attributes(place: Path) -> tuple[Attributes, list[str]]:

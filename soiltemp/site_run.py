@@ -16,6 +16,7 @@ from soiltemp.climate.periodic import periodic_surface
 from soiltemp.climate.record import read_checked
 from soiltemp.climate.series import temperature_series
 from soiltemp.constants import YEAR
+from soiltemp.cross_check import closed_forms_beside
 from soiltemp.errors import InputError, message
 from soiltemp.frost import days_below, extremes
 from soiltemp.glossary import attributes
@@ -115,7 +116,7 @@ def run(site: Site, *, progress: Progress | None = None, air_temperature: xr.Dat
     result = result.merge(_at_outputs(site, climate, surface, result["time"].values))
     if site.line is not None:
         result = result.merge(_line_answers(site.line, result))
-    result = result.merge(_beside(site.profile, surface, result))
+    result = result.merge(closed_forms_beside(site.profile, surface, result))
     result = result.merge(_inputs(site, climate)).assign_coords(_place(site))
     factors = site.surface.n_factors
     result.attrs.update(
@@ -286,12 +287,6 @@ def _line_answers(line: Line, result: xr.Dataset) -> xr.Dataset:
     labels = {"long_name": "depth of the crown less the greatest frost depth, negative where frost passes the crown"}
     answers["frost_margin"] = ((), margin, {**labels, "units": "m"})
     return xr.Dataset(answers)
-
-
-def _beside(profile: Profile, surface: xr.DataArray, result: xr.Dataset) -> xr.Dataset:
-    from soiltemp.cross_check import closed_forms_beside
-
-    return closed_forms_beside(profile, surface, result)
 
 
 def _place(site: Site) -> dict[str, Any]:

@@ -54,7 +54,14 @@ def answers(result: xr.Dataset, shown: Display, line: BuriedLine | None) -> tupl
     """
     frost, frozen = frost_curves(result)
     times = result["time"].values
-    found = [Answer("maximum_frost_depth", "Greatest frost depth (0 °C line)", _greatest(result, shown, frost, "frost_depth"))]
+    freezing = f"{shown.freezing:.0f} {shown.temperature_unit}"
+    found = [
+        Answer(
+            "maximum_frost_depth",
+            f"Greatest frost depth ({freezing} line)",
+            _greatest(result, shown, frost, "frost_depth"),
+        )
+    ]
     if frozen is not None:
         text = _greatest(result, shown, frozen, "frozen_ground_depth")
         found.append(Answer("maximum_frozen_ground_depth", "Greatest depth of frozen ground (ice)", text))
@@ -108,10 +115,12 @@ def _line_answers(result: xr.Dataset, shown: Display, line: BuriedLine, frost: F
     elif deepest >= line.crown:
         text = f"FROST REACHES THE LINE: it goes {gap} below the crown at {shown.depth_text(line.crown)}"
     else:
-        text = f"the crown at {shown.depth_text(line.crown)} lies {gap} below the greatest frost depth of the time studied"
+        text = (
+            f"the crown at {shown.depth_text(line.crown)} lies {gap} below the greatest frost depth of the time studied"
+        )
     found = [Answer("line_margin", "Buried line and frost", text)]
     depths = np.asarray(result["depth"], dtype=np.float64)
-    for key, name, depth in (("line_crown", "crown", line.crown), ("line_bottom", "lowest point", line.bottom)):
+    for key, name, depth in (("line_crown", "crown", line.crown), ("line_invert", "invert", line.bottom)):
         question = f"Coldest at the {name} of the line"
         if not depths[0] <= depth <= depths[-1]:
             text = f"the result holds no temperature at {shown.depth_text(depth)}; ask for depths around it"
@@ -126,10 +135,11 @@ def _line_answers(result: xr.Dataset, shown: Display, line: BuriedLine, frost: F
 
 
 def winter_rows(result: xr.Dataset, shown: Display) -> list[tuple[str, ...]]:
-    """Each winter: its name, greatest frost depth, its date, first and last day with frost.
+    """Each winter: its name, greatest frost depth, the date of it, first and last day with frost.
 
-    A year is cut at the month with the least frost (of several, the warmest at the top), so that frost that lasts into
-    summer belongs to the winter that made it. A winter is named by the year in which it ends.
+    A winter is named by the year in which it ends. A year is cut at the month with the least frost (of several, the
+    warmest at the top), so that frost that lasts into summer belongs to the winter that made it. Scraps of winters at
+    the ends of the record are left out.
     """
     frost, _ = frost_curves(result)
     times = result["time"].values.astype("datetime64[D]")
@@ -140,13 +150,15 @@ def winter_rows(result: xr.Dataset, shown: Display) -> list[tuple[str, ...]]:
     months = times.astype("datetime64[M]").astype(np.int64)
     # the months from the cut to December belong to the winter that ends in the next year
     winter = 1970 + (months - int(cut)) // 12 + (1 if cut > 0 else 0)
-    rows = []
+    rows: list[tuple[str, ...]] = []
     for year in np.unique(winter):
         inside = np.flatnonzero(winter == year)
         frosty = inside[frost[inside] > 0.0]
+        days = (times[inside[-1]] - times[inside[0]]) / np.timedelta64(1, "D")
+        if days < (30 if frosty.size else 90) and int(np.argmax(frost)) not in inside:
+            continue  # the scrap of a winter at an end of the record
         if frosty.size == 0:
-            if (times[inside[-1]] - times[inside[0]]) / np.timedelta64(1, "D") > 90:
-                rows.append((f"{year}", "no frost", "", "", ""))
+            rows.append((f"{year}", "no frost", "", "", ""))
             continue
         at = inside[int(np.argmax(frost[inside]))]
         rows.append(
@@ -162,7 +174,7 @@ def depth_rows(result: xr.Dataset, shown: Display) -> list[tuple[str, ...]]:
     places = [depth for depth in wanted if known[0] - 1e-9 <= depth <= known[-1] + 1e-9]
     if len(places) < 2:
         places = known.tolist()[:13]
-    rows = []
+    rows: list[tuple[str, ...]] = []
     times = result["time"].values
     for place in places:
         series = temperature_there(result, min(max(place, known[0]), known[-1]))
@@ -206,7 +218,10 @@ def trust(result: xr.Dataset, shown: Display) -> list[tuple[str, str, str]]:
     found += [
         (str(value.attrs.get("long_name", name)), _value_text(value, shown), str(value.attrs["comment"]))
         for name, value in result.data_vars.items()
-        if value.ndim == 0 and "comment" in value.attrs and not str(name).startswith("input_") and value.dtype.kind in "fiu"
+        if value.ndim == 0
+        and "comment" in value.attrs
+        and not str(name).startswith("input_")
+        and value.dtype.kind in "fiu"
     ]
     for name, text in (
         ("initial_state", "Start of the run"),
@@ -219,7 +234,8 @@ def trust(result: xr.Dataset, shown: Display) -> list[tuple[str, str, str]]:
     times = milliseconds(result["time"])
     if times.size > 1:
         days = float(times[1] - times[0]) / DAY
-        every = f"{days:.3g} days" if days > 1.0 else "1 day" if days == 1.0 else f"{24.0 * days:.3g} hours"
+        number, unit = (days, "day") if days >= 1.0 else (24.0 * days, "hour")
+        every = f"{number:.3g} {unit}{'' if number == 1.0 else 's'}"
         found.append(("Output every", every, "extremes between output times are not seen"))
     return found
 
@@ -227,9 +243,15 @@ def trust(result: xr.Dataset, shown: Display) -> list[tuple[str, str, str]]:
 def _value_text(value: xr.DataArray, shown: Display) -> str:
     number, unit = float(value), str(value.attrs.get("units", ""))
     if not np.isfinite(number):
-        return "not available"
-    if unit == "m":
-        return shown.depth_text(number)
-    if unit in ("degree_Celsius", "degC"):
-        return shown.temperature_text(number)
-    return f"{number:.4g} {unit if unit != '1' else ''}".strip()
+        return "left out"
+    difference = f"{float(shown.difference(number)):.3g} {shown.difference_unit}"
+    index = f"{float(shown.difference(number / 86400.0)):.0f} {shown.difference_unit} days"
+    texts = {
+        "m": shown.depth_text(number),
+        "degree_Celsius": shown.temperature_text(number),
+        "K": difference,
+        "K s": index,
+        "s": f"{number / 86400.0:.3g} days",
+        "1": f"{number:.3g}",
+    }
+    return texts.get(unit, f"{number:.4g} {unit}".strip())

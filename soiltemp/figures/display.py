@@ -1,4 +1,4 @@
-"""Numbers as a reader wants them: SI or US customary, with their unit, their sign and as many digits as they are worth."""
+"""Numbers as a reader wants them: SI or US customary, with unit and sign, and no more digits than they are worth."""
 
 from __future__ import annotations
 
@@ -58,8 +58,10 @@ class Display:
         return np.asarray(kelvin, dtype=np.float64) * self.temperature_factor
 
     def depth_text(self, metres: float) -> str:
-        """A depth with its unit: "1.84 m"."""
-        return f"{float(self.depth(metres)):.{self.depth_digits}f} {self.depth_unit}"
+        """A depth with its unit: "1.84 m"; below one foot with one digit more, for thin layers."""
+        value = float(self.depth(metres))
+        digits = max(self.depth_digits, 2) if abs(value) < 1.0 else self.depth_digits
+        return f"{value:.{digits}f} {self.depth_unit}"
 
     def temperature_text(self, celsius: float) -> str:
         """A temperature with its unit; within 1 K of freezing with one digit more, for there it matters."""

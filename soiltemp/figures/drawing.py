@@ -4,19 +4,11 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
-from typing import Any, Protocol
+from typing import Any, Literal, Protocol
 
 import numpy as np
 import xarray as xr
-from bokeh.models import (
-    ColumnDataSource,
-    DatetimeTickFormatter,
-    HoverTool,
-    Legend,
-    LegendItem,
-    Range1d,
-    Title,
-)
+from bokeh import models
 from bokeh.plotting import figure as new_figure
 from numpy.typing import NDArray
 
@@ -42,6 +34,7 @@ __all__ = [
     "Update",
     "assign",
     "band_of",
+    "bm",
     "line_text",
     "nice_limits",
     "packed",
@@ -49,6 +42,9 @@ __all__ = [
 ]
 
 Columns = dict[str, Any]
+
+bm: Any = models
+"""bokeh's models; its stubs lack some of them and do not know how others are made."""
 
 FONT = "Arial, 'Liberation Sans', Helvetica, sans-serif"
 SMALL, MEDIUM, LARGE = "12px", "13px", "16px"
@@ -68,14 +64,19 @@ AIR = "#7b8790"
 
 
 class Update(Protocol):
-    """Renews a picture. What is not given is as it was when the picture was made: given then, or read from the result."""
+    """Renews a picture with another result.
 
-    def __call__(self, result: xr.Dataset, *, line: Any = None, layers: Any = None) -> None: ...
+    `line` and `layers` stay what they were when the picture was made, unless they are given; None stands for those
+    that the result carries.
+    """
+
+    def __call__(self, result: xr.Dataset, *, line: Any = ..., layers: Any = ...) -> None:
+        """Show another result."""
 
 
 @dataclass(frozen=True)
 class Picture:
-    """What a picture shows: the columns of its sources, the ends of its axes (first, last), the line under its title."""
+    """What a picture shows: columns of its sources, ends of its axes (first, last), the line under its title."""
 
     sources: Mapping[str, Columns]
     x: tuple[float, float]
@@ -98,28 +99,38 @@ class Sheet:
         Kind of the horizontal axis.
     """
 
-    def __init__(self, picture: Picture, *, title: str, width: int, height: int, x_axis_type: str = "auto") -> None:
-        self.sources = {name: ColumnDataSource(data=dict(columns)) for name, columns in picture.sources.items()}
-        self.figure = new_figure(
+    def __init__(
+        self,
+        picture: Picture,
+        *,
+        title: str,
+        width: int,
+        height: int,
+        x_axis_type: Literal["auto", "datetime"] = "auto",
+    ) -> None:
+        self.sources = {name: bm.ColumnDataSource(data=dict(columns)) for name, columns in picture.sources.items()}
+        # bokeh's stubs know only part of what its figures can do
+        self.figure: Any = new_figure(
             width=width,
             height=height,
-            x_range=Range1d(*picture.x),
-            y_range=Range1d(*picture.y),
+            x_range=bm.Range1d(*picture.x),
+            y_range=bm.Range1d(*picture.y),
             x_axis_type=x_axis_type,
             tools="pan,box_zoom,wheel_zoom,reset,save",
             active_drag=None,
             active_scroll=None,
             toolbar_location="right",
         )
+        self.figure.min_border_right = 12
         self.figure.toolbar.logo = None
         self.figure.toolbar.autohide = True
-        self.subtitle = Title(
+        self.subtitle = bm.Title(
             text=picture.subtitle, text_font=FONT, text_font_size=MEDIUM, text_font_style="normal", text_color=QUIET
         )
-        self._items: list[tuple[LegendItem, str]] = []
+        self._items: list[tuple[Any, str]] = []
         self.figure.add_layout(self.subtitle, "above")
         self.figure.add_layout(
-            Title(text=title, text_font=FONT, text_font_size=LARGE, text_font_style="bold", text_color=INK), "above"
+            bm.Title(text=title, text_font=FONT, text_font_size=LARGE, text_font_style="bold", text_color=INK), "above"
         )
         self.dress()
 
@@ -129,7 +140,6 @@ class Sheet:
         drawn.background_fill_color = PAPER
         drawn.border_fill_color = PAPER
         drawn.outline_line_color = None
-        drawn.min_border_right = 12
         drawn.axis.axis_label_text_font = FONT
         drawn.axis.axis_label_text_font_size = MEDIUM
         drawn.axis.axis_label_text_font_style = "normal"
@@ -146,7 +156,7 @@ class Sheet:
     def hover(self, renderer: Any, tooltips: list[tuple[str, str]], mode: str, **formatters: str) -> None:
         """Show the numbers of one source beside the pointer."""
         self.figure.add_tools(
-            HoverTool(
+            bm.HoverTool(
                 renderers=[renderer],
                 tooltips=tooltips,
                 mode=mode,
@@ -174,10 +184,10 @@ class Sheet:
 
         An item is left out as long as its source is empty.
         """
-        self._items = [(LegendItem(label=label, renderers=drawn), source) for label, source, drawn in items]
+        self._items = [(bm.LegendItem(label=label, renderers=drawn), source) for label, source, drawn in items]
         self._show_items()
         self.figure.add_layout(
-            Legend(
+            bm.Legend(
                 items=[item for item, _ in self._items],
                 orientation="horizontal",
                 ncols=columns,
@@ -215,7 +225,11 @@ def _same_columns(old: Mapping[str, Any], new: Mapping[str, Any]) -> bool:
 
 def _same(old: Any, new: Any) -> bool:
     if isinstance(new, np.ndarray):
-        return isinstance(old, np.ndarray) and np.array_equal(old, new, equal_nan=new.dtype.kind == "f")
+        return (
+            isinstance(old, np.ndarray)
+            and old.dtype == new.dtype
+            and np.array_equal(old, new, equal_nan=new.dtype.kind == "f")
+        )
     if isinstance(new, list):
         return isinstance(old, list) and len(old) == len(new) and all(map(_same, old, new))
     return bool(old == new)
@@ -228,13 +242,13 @@ def packed(values: Any) -> NDArray[np.float32]:
 
 def style_time_axis(drawn: Any) -> None:
     """Dates that can be read: the month with its year, or the day with its month."""
-    drawn.xaxis.formatter = DatetimeTickFormatter(
+    drawn.xaxis.formatter = bm.DatetimeTickFormatter(
         hours="%H:%M\n%d %b", days="%d %b\n%Y", months="%b\n%Y", years="%Y", hourmin="%H:%M\n%d %b"
     )
     drawn.xaxis.axis_label = None
     # all pictures over time end at the same places: what stands above each other happens at the same time
     drawn.min_border_left = 66
-    drawn.min_border_right = 104
+    drawn.min_border_right = 136
 
 
 def nice_limits(low: float, high: float, step: float, origin: float = 0.0) -> tuple[float, float]:

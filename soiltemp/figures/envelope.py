@@ -7,7 +7,6 @@ from typing import Any
 import numpy as np
 import xarray as xr
 from bokeh.core.properties import value
-from bokeh.models import FixedTicker, Range1d, Span
 from bokeh.plotting import figure
 
 from soiltemp import frost
@@ -28,6 +27,7 @@ from soiltemp.figures.drawing import (
     Sheet,
     Update,
     assign,
+    bm,
     line_text,
     nice_limits,
     packed,
@@ -66,7 +66,7 @@ def make_envelope(
     units : {"si", "us"}
         Metres and degC, or feet and degF.
     line : (depth of the crown, outside diameter), optional
-        A buried line [m or strings]; else the one of the site file in the result, if any.
+        A buried line [m or strings]; else the one that the result has, if any.
     layers : iterable of (name, top, bottom), optional
         Layers [m or strings]; else those that the result carries, if any.
     deepest : float or str, optional
@@ -92,16 +92,16 @@ def make_envelope(
 
     sheet = Sheet(read(result, line, layers), title="Temperature by depth", width=width, height=height)
     drawn = sheet.figure
-    drawn.extra_x_ranges = {"section": Range1d(0.0, 1.0)}
+    drawn.extra_x_ranges = {"section": bm.Range1d(0.0, 1.0)}
     drawn.xaxis.axis_label = f"Ground temperature [{shown.temperature_unit}]"
     drawn.yaxis.axis_label = f"Depth below ground surface [{shown.depth_unit}]"
-    drawn.xaxis.ticker = FixedTicker()
+    drawn.xaxis.ticker = bm.FixedTicker()
     _fit_axes(sheet)
     _draw_section(sheet)
     _draw_curves(sheet, shown)
 
-    def update(new: xr.Dataset, *, line: Any = line, layers: Any = layers) -> None:
-        sheet.show(read(new, line, layers))
+    def update(result: xr.Dataset, *, line: Any = line, layers: Any = layers) -> None:
+        sheet.show(read(result, line, layers))
         _fit_axes(sheet)
 
     return drawn, update
@@ -139,7 +139,10 @@ def _picture(
 
 
 def _line_columns(line: BuriedLine | None, shown: Display, share: float) -> Columns:
-    """The line as a band and as a circle in the section; `share` of the width of the plot is as long as one unit of depth."""
+    """The line as a band and as a circle in the section.
+
+    One unit of depth is as long as `share` of the width of the plot.
+    """
     names = ("top", "bottom", "middle", "radius", "x")
     if line is None:
         return {name: packed([]) for name in names}
@@ -214,7 +217,7 @@ def _fit_axes(sheet: Sheet) -> None:
 
 def _draw_section(sheet: Sheet) -> None:
     drawn, sources = sheet.figure, sheet.sources
-    there = {"x_range_name": "section"}
+    there: dict[str, Any] = {"x_range_name": "section"}
     drawn.segment(
         0.0, "bottom", STRIP[0], "bottom", source=sources["section"], line_color=SOIL, line_dash="dotted", **there
     )
@@ -246,7 +249,7 @@ def _draw_curves(sheet: Sheet, shown: Display) -> None:
     area = drawn.harea(
         x1="minimum_temperature", x2="maximum_temperature", y="depth", source=curves, fill_color=SPREAD, fill_alpha=0.5
     )
-    drawn.add_layout(Span(location=shown.freezing, dimension="height", line_color=INK, line_width=1.2))
+    drawn.vspan(x=[shown.freezing], line_color=INK, line_width=1.2)
     items = []
     for name, text, color, dash, marker in (
         ("minimum_temperature", "coldest", COLD, "dashed", "triangle"),

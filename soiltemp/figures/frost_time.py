@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
 import xarray as xr
 from bokeh.core.properties import value
-from bokeh.models import LinearAxis, PrintfTickFormatter, Range1d
 from bokeh.plotting import figure
 from contourpy import FillType, contour_generator
 
@@ -30,6 +31,7 @@ from soiltemp.figures.drawing import (
     Update,
     assign,
     band_of,
+    bm,
     nice_limits,
     packed,
     style_time_axis,
@@ -75,7 +77,7 @@ def make_frost(
     units : {"si", "us"}
         Metres and degC, or feet and degF.
     line : (depth of the crown, outside diameter), optional
-        A buried line [m or strings]; else the one of the site file in the result, if any.
+        A buried line [m or strings]; else the one that the result has, if any.
     surface : {"shown", "left out"}
         Whether the surface temperature is drawn above the ground, where the result holds it when the picture is made.
     deepest : float or str, optional
@@ -105,18 +107,17 @@ def make_frost(
     style_time_axis(drawn)
     drawn.yaxis.axis_label = f"Depth below ground surface [{shown.depth_unit}]"
     if is_sky:
-        drawn.extra_y_ranges = {"surface": Range1d(*_surface_range(air))}
-        form = PrintfTickFormatter(format=f"%d {shown.temperature_unit}")  # an axis title would run into the ground
-        axis = LinearAxis(y_range_name="surface", formatter=form)
+        drawn.extra_y_ranges = {"surface": bm.Range1d(*_surface_range(air))}
+        axis = bm.LinearAxis(y_range_name="surface", ticker=bm.FixedTicker())
         drawn.add_layout(axis, "right")
         sheet.dress()
-    _fit_axes(sheet, air, is_sky)
+    _fit_axes(sheet, air, is_sky, shown)
     _draw(sheet, shown, is_sky)
 
-    def update(new: xr.Dataset, *, line: Any = line, layers: Any = None) -> None:  # noqa: ARG001 (one form for all pictures)
-        renewed, new_air = read(new, line)
+    def update(result: xr.Dataset, *, line: Any = line, layers: Any = None) -> None:  # noqa: ARG001 (one form for all pictures)
+        renewed, new_air = read(result, line)
         sheet.show(renewed)
-        _fit_axes(sheet, new_air, is_sky)
+        _fit_axes(sheet, new_air, is_sky, shown)
 
     return drawn, update
 
@@ -125,8 +126,8 @@ def _picture(
     result: xr.Dataset, line: BuriedLine | None, shown: Display, deepest: Any, is_sky: bool
 ) -> tuple[Picture, tuple[float, float]]:
     frost, frozen = frost_curves(result)
-    is_fine = has_fine_depths(result)
-    thawed = thawed_depth(result) if is_fine else np.full(frost.size, np.nan)
+    known_thaw = thawed_depth(result)
+    thawed = np.full(frost.size, np.nan) if known_thaw is None else known_thaw
     surface = surface_of(result) if is_sky else None
     times = milliseconds(result["time"])
     ends = (float(times[0]), float(times[-1]) if times.size > 1 else float(times[0]) + 86400e3)
@@ -148,14 +149,14 @@ def _picture(
             },
             "ice": _curve(times, shown.depth(frozen)) if frozen is not None and np.any(frozen > 0.0) else _NO_CURVE,
             "thaw": _curve(times, shown.depth(thawed)) if np.isfinite(thawed).any() else _NO_CURVE,
-            "ground": _frozen_ground(result, times, to_depth, shown) if is_fine else {"x": [], "y": []},
+            "ground": _frozen_ground(result, times, frost, known_thaw, to_depth, shown),
             "greatest": _greatest(times, frost, result, shown, ends),
             "level": {"x": np.asarray(ends), "depth": packed([0.0, 0.0]), "freezing": packed([shown.freezing] * 2)},
             "line": band_of(line, shown, ends),
         },
         x=ends,
         y=(bottom, -SKY * bottom if is_sky else 0.0),
-        subtitle=_subtitle(result, shown, is_fine),
+        subtitle=_subtitle(result, shown, is_thaw_known=known_thaw is not None),
     )
     return picture, air
 
@@ -167,8 +168,8 @@ def _curve(times: Floats, depths: Any) -> Columns:
 _NO_CURVE: Columns = {"time": np.empty(0), "depth": packed([])}
 
 
-def _subtitle(result: xr.Dataset, shown: Display, is_fine: bool) -> str:
-    lacking = "" if is_fine else ". Thaw from above not drawn: the depths of the result lie too far apart"
+def _subtitle(result: xr.Dataset, shown: Display, *, is_thaw_known: bool) -> str:
+    lacking = "" if is_thaw_known else ". Thaw from above not drawn: the depths of the result lie too far apart"
     if "frost_depth_error" not in result:
         return f"Numerical error not stated in this result{lacking}"
     texts = [f"frost depth {shown.error_text(float(result['frost_depth_error']), 'length')}"]
@@ -178,30 +179,46 @@ def _subtitle(result: xr.Dataset, shown: Display, is_fine: bool) -> str:
     return "Numerical error: " + ", ".join(texts) + lacking
 
 
-def _frozen_ground(result: xr.Dataset, times: Floats, to_depth: float, shown: Display) -> Columns:
-    """The part of the time-depth plane below 0 degC, as polygons with holes."""
-    depths = np.asarray(result["depth"], dtype=np.float64)
+def _frozen_ground(
+    result: xr.Dataset, times: Floats, frost: Floats, thawed: Floats | None, to_depth: float, shown: Display
+) -> Columns:
+    """Frozen ground as polygons in time and depth, with holes where they have some; none where it cannot be told."""
     columns: Columns = {"x": [], "y": []}
-    if depths.size < 2 or times.size < 2:
+    if thawed is None or times.size < 2:
         return columns
-    field = np.asarray(result["ground_temperature"].transpose("time", "depth"), dtype=np.float64)
-    kept = depths <= depths[min(int(np.searchsorted(depths, to_depth)), depths.size - 1)]
-    times, field, _ = block_means(times, field[:, kept], MOST_COLUMNS)
-    if times.size < 2 or int(kept.sum()) < 2 or field.min() >= 0.0:
-        return columns
-    # times from the first on, for contourpy's sake and without loss
-    generator = contour_generator(times - times[0], depths[kept], field.T, fill_type=FillType.OuterOffset)
-    points, offsets = generator.filled(float(field.min()) - 1.0, -1e-9)
-    for outline, breaks in zip(points, offsets, strict=True):
-        rings = [np.asarray(outline[a:b], dtype=np.float64) for a, b in zip(breaks[:-1], breaks[1:], strict=True)]
-        columns["x"].append([[ring[:, 0] + times[0] for ring in rings]])
+    for rings in _frozen_rings(result, times, to_depth) if has_fine_depths(result) else _bands(times, frost, thawed):
+        columns["x"].append([[ring[:, 0] for ring in rings]])
         columns["y"].append([[packed(shown.depth(ring[:, 1])) for ring in rings]])
     return columns
 
 
-def _greatest(
-    times: Floats, frost: Floats, result: xr.Dataset, shown: Display, ends: tuple[float, float]
-) -> Columns:
+def _frozen_rings(result: xr.Dataset, times: Floats, to_depth: float) -> Iterator[list[Floats]]:
+    """The parts of the time-depth plane below 0 degC: of each the outer ring, and those of its holes."""
+    depths = np.asarray(result["depth"], dtype=np.float64)
+    field = np.asarray(result["ground_temperature"].transpose("time", "depth"), dtype=np.float64)
+    kept = depths <= depths[min(int(np.searchsorted(depths, to_depth)), depths.size - 1)]
+    times, field, _ = block_means(times, field[:, kept], MOST_COLUMNS)
+    if times.size < 2 or int(kept.sum()) < 2 or field.min() >= 0.0:
+        return
+    generator = contour_generator(times - times[0], depths[kept], field.T, fill_type=FillType.OuterOffset)
+    areas: Any = generator.filled(float(field.min()) - 1.0, -1e-9)  # points and offsets of rings, by the fill type
+    for outline, breaks in zip(*areas, strict=True):
+        points = np.asarray(outline, dtype=np.float64) + np.array([times[0], 0.0])
+        yield [points[a:b] for a, b in pairwise(breaks)]
+
+
+def _bands(times: Floats, frost: Floats, thawed: Floats) -> Iterator[list[Floats]]:
+    """Between frost depth and thawed depth, one ring for each time of unbroken frost."""
+    edges = np.flatnonzero(np.diff(np.concatenate([[0], (frost > 0.0).astype(int), [0]])))
+    top = np.nan_to_num(thawed)
+    for first, last in zip(edges[::2], edges[1::2], strict=True):
+        at = slice(first, last)
+        down = np.stack([times[at], frost[at]], axis=1)
+        up = np.stack([times[at], top[at]], axis=1)[::-1]
+        yield [np.concatenate([down, up])]
+
+
+def _greatest(times: Floats, frost: Floats, result: xr.Dataset, shown: Display, ends: tuple[float, float]) -> Columns:
     """The greatest frost depth with its date, or that there was none."""
     at = int(np.argmax(frost))
     middle = 0.5 * (ends[0] + ends[1])
@@ -229,7 +246,7 @@ def _surface_range(air: tuple[float, float]) -> tuple[float, float]:
     return air[1] - (air[1] - air[0]) / share, air[1]
 
 
-def _fit_axes(sheet: Sheet, air: tuple[float, float], is_sky: bool) -> None:
+def _fit_axes(sheet: Sheet, air: tuple[float, float], is_sky: bool, shown: Display) -> None:
     """Let the depth axis begin at the ground and the temperature axis end above it."""
     drawn = sheet.figure
     bottom = float(drawn.y_range.start)
@@ -238,7 +255,12 @@ def _fit_axes(sheet: Sheet, air: tuple[float, float], is_sky: bool) -> None:
     if is_sky:
         first, last = _surface_range(air)
         assign(drawn.extra_y_ranges["surface"], start=first, end=last)
-        assign(drawn.yaxis[1], bounds=air)
+        step = next(s for s in (5.0, 10.0, 20.0, 50.0, 100.0) if (air[1] - air[0]) / s <= 5.0)
+        ticks = [step * n for n in range(int(np.ceil(air[0] / step)), int(np.floor(air[1] / step)) + 1)]
+        # the unit stands at each number: a title of the axis would run down into the ground
+        words = {tick: f"{tick:.0f} {shown.temperature_unit}".replace("-", "−") for tick in ticks}
+        assign(drawn.yaxis[1], bounds=air, major_label_overrides=words)
+        assign(drawn.yaxis[1].ticker, ticks=ticks)
 
 
 def _draw(sheet: Sheet, shown: Display, is_sky: bool) -> None:
@@ -268,7 +290,12 @@ def _draw(sheet: Sheet, shown: Display, is_sky: bool) -> None:
     drawn.scatter(
         "time", "depth", source=sheet.sources["greatest"], marker="diamond", size=11, fill_color=PAPER, line_color=INK
     )
-    words = {"text_font": value(FONT), "text_font_size": SMALL, "background_fill_color": PAPER, "background_fill_alpha": 0.8}
+    words = {
+        "text_font": value(FONT),
+        "text_font_size": SMALL,
+        "background_fill_color": PAPER,
+        "background_fill_alpha": 0.8,
+    }
     drawn.text(
         "time", "label_depth", text="text", source=sheet.sources["greatest"], text_align="align", text_baseline="top",
         y_offset=9, text_color=INK, text_font_style="bold", padding=2, **words,

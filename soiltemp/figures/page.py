@@ -1,11 +1,9 @@
-"""One page that holds it all: answers, pictures, how far to trust them, cautions. Works from disk, without a network."""
+"""One page that holds it all: answers, pictures, how far to trust them, cautions. It opens from disk, offline."""
 
 from __future__ import annotations
 
 import os
-import secrets
 from functools import cache
-from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -15,7 +13,8 @@ from bokeh.resources import Resources
 from jinja2 import Environment, Template
 
 from soiltemp.cautions import CAUTION_SHORT, CAUTIONS
-from soiltemp.errors import DataFileError, InputError, message
+from soiltemp.cross_check import closed_form_lines
+from soiltemp.errors import InputError, message
 from soiltemp.figures.answers import answers, depth_rows, trust, winter_rows
 from soiltemp.figures.display import Display, date, display
 from soiltemp.figures.envelope import make_envelope
@@ -24,13 +23,19 @@ from soiltemp.figures.page_text import STYLE, TEMPLATE
 from soiltemp.figures.reading import BuriedLine, layers_of, line_of
 from soiltemp.figures.temperatures import make_temperatures
 from soiltemp.figures.time_depth import make_time_depth
+from soiltemp.whole_file import file_place, write_whole
 
 __all__ = ["save_page"]
 
-PICTURE_WIDTH = 940
+PICTURE_WIDTH = 900
 """Width of the pictures [px]: fits a window of 1024, and a printed page by a fixed reduction."""
 
 LONGEST_TITLE = 200
+
+FROST_CAPTION = (
+    "Dashed: how deep the pore water is ice. Dash-dot: how far the ground has thawed from above while frozen ground "
+    "lies below."
+)
 
 PICTURE_DEPTHS = {"m": (0.5, 1.0, 1.5, 2.0, 3.0), "ft": (1.0, 3.0, 5.0, 7.0, 10.0)}
 
@@ -46,8 +51,8 @@ def save_page(
 ) -> None:
     """Write a result as one self-contained HTML page.
 
-    The page opens from disk and asks no network for anything. It is written beside its place and renamed into it: the path
-    holds the old page or the new one, whole.
+    The page opens from disk and asks no network for anything. It is written beside its place and renamed into it:
+    the path holds the old page or the new one, whole.
 
     Parameters
     ----------
@@ -60,7 +65,7 @@ def save_page(
     title : str, optional
         Heading, up to 200 characters; else the result's `site_name` or `title`.
     line : (depth of the crown, outside diameter), optional
-        A buried line [m or strings]; else the one of the site file in the result, if any.
+        A buried line [m or strings]; else the one that the result has, if any.
     layers : iterable of (name, top, bottom), optional
         Layers [m or strings]; else those that the result carries, if any.
 
@@ -71,10 +76,9 @@ def save_page(
     DataFileError
         The file cannot be written; the old one is untouched.
     """
-    target = Path(path)
-    if target.suffix.lower() not in (".html", ".htm"):
-        raise InputError(message("page", f'the path "{target}"', 'a name that ends in ".html"', "add the ending"))
-    _write_whole(target, _page(result, display(units), units, _title(result, title), line, layers))
+    place = file_place(path, ".html")
+    text = _page(result, display(units), units, _title(result, title), line, layers)
+    write_whole(text.encode(), place)
 
 
 def _title(result: xr.Dataset, given: Any) -> str:
@@ -93,13 +97,15 @@ def _page(result: xr.Dataset, shown: Display, units: str, title: str, line: Any,
     times = result["time"].values
     texts = {
         "style": STYLE,
+        "picture_width": PICTURE_WIDTH,
         "period": f"{date(times[0])} to {date(times[-1])}",
         "answers": key_answers,
         "winters": winter_rows(result, shown),
         "depths": depth_rows(result, shown),
         "trust": trust(result, shown),
+        "closed_forms": "\n".join(closed_form_lines(result, units=units)),
         "layers": [
-            (layer.name, shown.depth_text(layer.top), shown.depth_text(layer.bottom), shown.depth_text(layer.bottom - layer.top))
+            (layer.name, *map(shown.depth_text, (layer.top, layer.bottom, layer.bottom - layer.top)))
             for layer in strata
         ],
         "captions": {name: caption for name, _, caption in pictures},
@@ -127,18 +133,17 @@ def _pictures(
     result: xr.Dataset, shown: Display, units: str, line: BuriedLine | None, strata: Any
 ) -> list[tuple[str, Any, str]]:
     """Name, figure and caption of each picture."""
-    size = {"units": units, "width": PICTURE_WIDTH}
+    size: dict[str, Any] = {"units": units, "width": PICTURE_WIDTH}
     freezing = f"{shown.freezing:.0f} {shown.temperature_unit}"
     found = [
         (
             "frost",
-            make_frost(result, line=line, **size)[0],
-            f"Frost through time. Solid: the {freezing} line, the cautious one of the two depths. Dashed: how deep the pore "
-            "water is ice. Dash-dot: how far the ground has thawed from above while frozen ground lies below.",
+            make_frost(result, line=line, height=470, **size)[0],
+            f"Frost through time. Solid: the {freezing} line, the cautious one of the two depths. {FROST_CAPTION}",
         ),
         (
             "envelope",
-            make_envelope(result, line=line, layers=strata, **size)[0],
+            make_envelope(result, line=line, layers=strata, height=430, **size)[0],
             "Coldest, mean and warmest temperature at each depth, of the output times; to the right the layers.",
         ),
     ]
@@ -146,21 +151,20 @@ def _pictures(
         found.append(
             (
                 "time_depth",
-                make_time_depth(result, line=line, **size)[0],
-                f"Temperature through time and depth. The heavy line is {freezing}; thin lines carry their temperature.",
+                make_time_depth(result, line=line, height=420, **size)[0],
+                f"Temperature through time and depth. Heavy line: {freezing}; thin lines carry their temperature.",
             )
         )
     places = _picture_depths(result, shown, line)
     found.append(
         (
             "temperatures",
-            make_temperatures(result, places, **size)[0],
-            "Temperature at chosen depths" + (", crown and lowest point of the line among them." if line else "."),
+            make_temperatures(result, places, height=370, **size)[0],
+            "Temperature at chosen depths" + (", crown and invert of the line among them." if line else "."),
         )
     )
     for name, drawn, _ in found:
         drawn.name = name
-        drawn.output_backend = "svg"  # prints sharp at any size
     return found
 
 
@@ -172,20 +176,3 @@ def _picture_depths(result: xr.Dataset, shown: Display, line: BuriedLine | None)
         wanted += [line.crown, line.bottom]
     inside = sorted({depth for depth in wanted if known[0] <= depth <= known[-1]})
     return inside or known[:4].tolist()
-
-
-def _write_whole(target: Path, text: str) -> None:
-    part = target.with_name(f".{target.name}.{secrets.token_hex(6)}.part")
-    try:
-        try:
-            with part.open("x", encoding="utf-8") as file:
-                file.write(text)
-                file.flush()
-                os.fsync(file.fileno())
-            part.replace(target)
-        finally:
-            part.unlink(missing_ok=True)
-    except OSError as error:
-        raise DataFileError(
-            message(f"page {target}", f"{error.strerror or error}", "a folder that can be written to", "choose another place")
-        ) from error

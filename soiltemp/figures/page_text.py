@@ -25,12 +25,12 @@ th, td { text-align: left; padding: 6px 10px 6px 0; border-bottom: 1px solid var
   overflow-wrap: anywhere; font-variant-numeric: tabular-nums; }
 th { color: var(--quiet); font-weight: normal; border-bottom: 2px solid var(--soil); }
 figure { margin: 0 0 30px; }
-figcaption { font-size: 14px; color: var(--quiet); padding: 2px 0 0 66px; }
-.picture { width: 940px; }
-pre { font-size: 12.5px; line-height: 1.4; background: var(--pale); padding: 12px; white-space: pre-wrap; overflow-wrap: anywhere; }
+figcaption { font-size: 14px; color: var(--quiet); padding: 8px 0 0 66px; }
+pre { font-size: 12.5px; line-height: 1.4; background: var(--pale); padding: 12px;
+  white-space: pre-wrap; overflow-wrap: anywhere; }
 summary { cursor: pointer; }
 @media (min-width: 1560px) {
-  main { max-width: 1540px; display: grid; grid-template-columns: 530px 940px; column-gap: 38px; align-items: start; }
+  main { max-width: 1540px; display: grid; grid-template-columns: 560px 900px; column-gap: 48px; align-items: start; }
   header, .wide { grid-column: 1 / -1; }
   .words { grid-column: 1; grid-row: 3; }
   .pictures { grid-column: 2; grid-row: 3; }
@@ -44,9 +44,10 @@ summary { cursor: pointer; }
   h2 { break-after: avoid; margin-top: 20px; }
   figure, tr, dl > *, .caution, li { break-inside: avoid; }
   figure { margin-bottom: 14px; }
-  .picture { zoom: 0.72; }
+  .picture { zoom: 0.77; }
   figcaption { padding-left: 48px; font-size: 9.5pt; }
-  table { font-size: 9.5pt; }
+  table, li { font-size: 9.5pt; }
+  th, td, dt, dd { padding-top: 3px; padding-bottom: 3px; }
   details:not([open]) { display: none; }
 }
 """
@@ -58,7 +59,12 @@ TEMPLATE = """<!DOCTYPE html>
 <meta name="viewport" content="width=device-width, initial-scale=1">
 <title>{{ title }}</title>
 {{ bokeh_css | safe }}
-<style>{{ style | safe }}</style>
+<style>{{ style | safe }}
+.picture { width: {{ picture_width }}px; }</style>
+<script>
+// pictures are drawn with two pixels or more for each of the screen's, so that they print sharp
+Object.defineProperty(window, "devicePixelRatio", { value: Math.max(2, window.devicePixelRatio) });
+</script>
 </head>
 <body>
 <main>
@@ -93,16 +99,6 @@ TEMPLATE = """<!DOCTYPE html>
 <tr>{% for cell in row %}<td>{{ cell }}</td>{% endfor %}</tr>
 {% endfor %}
 </tbody></table></div>
-{% if layers %}
-<div class="scroll"><table>
-<caption>Layers of the ground</caption>
-<thead><tr><th>layer</th><th>from</th><th>to</th><th>thickness</th></tr></thead>
-<tbody>
-{% for row in layers %}
-<tr>{% for cell in row %}<td>{{ cell }}</td>{% endfor %}</tr>
-{% endfor %}
-</tbody></table></div>
-{% endif %}
 </section>
 </div>
 <section class="pictures">
@@ -117,6 +113,18 @@ TEMPLATE = """<!DOCTYPE html>
 <p>The result holds one depth only: there is no map through time and depth.</p>
 {% endif %}
 </section>
+{% if layers %}
+<section class="wide">
+<h2>Layers of the ground</h2>
+<div class="scroll"><table>
+<thead><tr><th>layer</th><th>from</th><th>to</th><th>thickness</th></tr></thead>
+<tbody>
+{% for row in layers %}
+<tr>{% for cell in row %}<td>{{ cell }}</td>{% endfor %}</tr>
+{% endfor %}
+</tbody></table></div>
+</section>
+{% endif %}
 <section class="wide">
 <h2>How far to trust these numbers</h2>
 <p>The figures below tell how well the equations were solved, and how simpler formulas compare. How well the layers, the
@@ -128,6 +136,10 @@ weather and the surface are known is another matter and mostly the larger doubt:
 <tr>{% for cell in row %}<td>{{ cell }}</td>{% endfor %}</tr>
 {% endfor %}
 </tbody></table></div>
+{% if closed_forms %}
+<details><summary>The annual wave by depth, and the closed forms beside it</summary>
+<pre>{{ closed_forms }}</pre></details>
+{% endif %}
 </section>
 <section class="wide">
 <h2>Cautions</h2>

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import tomllib
 from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Any, Literal
@@ -71,12 +70,12 @@ def milliseconds(times: Any) -> Floats:
 
 
 def line_of(result: xr.Dataset, given: Any = None) -> BuriedLine | None:
-    """The buried line, as given or as the site file in the result has it.
+    """The buried line, as given or as the result has it.
 
     Parameters
     ----------
     result : xr.Dataset
-        A result; `input_site_file` is looked into where nothing is given.
+        A result; its `crown_depth` and `invert_depth` [m] are taken where nothing is given.
     given : (depth of the crown, outside diameter), optional
         Floats [m] or strings with units; the crown 0 to 100 m, the diameter up to 20 m.
 
@@ -88,10 +87,10 @@ def line_of(result: xr.Dataset, given: Any = None) -> BuriedLine | None:
     if isinstance(given, BuriedLine):
         return given
     if given is None:
-        table = _site_table(result).get("line", {})
-        if not isinstance(table, dict) or not {"cover", "outside_diameter"} <= set(table):
+        if not {"crown_depth", "invert_depth"} <= set(result.data_vars):
             return None
-        given = (table["cover"], table["outside_diameter"])
+        crown = float(result["crown_depth"])
+        given = (crown, float(result["invert_depth"]) - crown)
     if isinstance(given, str) or not isinstance(given, Iterable) or len(pair := tuple(given)) != 2:
         raise InputError(
             message("line", f"{given!r}"[:60], "two lengths: depth of the crown and outside diameter",
@@ -101,17 +100,6 @@ def line_of(result: xr.Dataset, given: Any = None) -> BuriedLine | None:
         to_si(pair[0], "length", "line, depth of the crown", low=0.0, high=_DEEPEST_LINE),
         to_si(pair[1], "length", "line, outside diameter", low=1e-3, high=_LARGEST_LINE),
     )
-
-
-def _site_table(result: xr.Dataset) -> dict[str, Any]:
-    if "input_site_file" not in result:
-        return {}
-    try:
-        return tomllib.loads(str(result["input_site_file"].item()))
-    except (ValueError, tomllib.TOMLDecodeError) as error:
-        raise InputError(
-            message("result, input_site_file", f"{error}", "the text of one site file", "run the site again")
-        ) from error
 
 
 def layers_of(result: xr.Dataset, given: Any = None) -> tuple[Stratum, ...]:
@@ -142,9 +130,7 @@ def layers_of(result: xr.Dataset, given: Any = None) -> tuple[Stratum, ...]:
             continue
         where = f"layers, item {number}"
         if isinstance(layer, str) or not isinstance(layer, Iterable) or len(parts := tuple(layer)) != 3:
-            raise InputError(
-                message(where, f"{layer!r}"[:60], "name, top and bottom", 'write ("silt", 0.0, 1.5)')
-            )
+            raise InputError(message(where, f"{layer!r}"[:60], "name, top and bottom", 'write ("silt", 0.0, 1.5)'))
         top = to_si(parts[1], "length", f"{where}, top", low=strata[-1].bottom - 1e-9 if strata else 0.0)
         strata.append(Stratum(_text(parts[0]), top, to_si(parts[2], "length", f"{where}, bottom", low=top + 1e-6)))
     return tuple(strata)
@@ -194,19 +180,25 @@ def reaches_base(result: xr.Dataset, depth: float) -> bool:
 
 
 def temperature_there(result: xr.Dataset, depth: float) -> Floats:
-    """Temperature at a depth [m] through time [degC]: of the result's own depths as it stands, else by straight lines."""
+    """Temperature at a depth [m] through time [degC]: the result's own if it has the depth, else by straight lines."""
     own = np.flatnonzero(np.abs(np.asarray(result["depth"], dtype=np.float64) - depth) < 1e-9)
     if own.size:
         return np.asarray(result["ground_temperature"].transpose("time", "depth")[:, int(own[0])], dtype=np.float64)
     return np.asarray(temperature_at(result, depth), dtype=np.float64)
 
 
-def thawed_depth(result: xr.Dataset) -> Floats:
+def thawed_depth(result: xr.Dataset) -> Floats | None:
     """Upper edge of the deepest frozen zone [m] where the ground above it has thawed; NaN at other times.
 
-    Found by straight lines between the depths of the result, as `soiltemp.frost.zones` does.
+    Taken from the result's `thaw_depth`, where it has one; else found by straight lines between its depths, as
+    `soiltemp.frost.zones` does, unless they lie too far apart for that: then None.
     """
     frost, _ = frost_curves(result)
+    if "thaw_depth" in result:
+        given = np.asarray(result["thaw_depth"], dtype=np.float64)
+        return np.where((given > 0.0) & (given < frost), given, np.nan)
+    if not has_fine_depths(result):
+        return None
     tops = np.asarray(zones(result)["zone_top"], dtype=np.float64)
     last = np.maximum(np.sum(np.isfinite(tops), axis=1) - 1, 0)
     top = np.take_along_axis(tops, last[:, None], axis=1)[:, 0]

@@ -7,7 +7,6 @@ from typing import Any
 
 import numpy as np
 import xarray as xr
-from bokeh.models import Span
 from bokeh.plotting import figure
 
 from soiltemp.errors import InputError, message
@@ -34,12 +33,12 @@ STYLES = (
     ("#1c5d96", "dashed"),
     ("#3d7a3a", "dotdash"),
     ("#6d2c91", "dotted"),
-    ("#8f2f3f", "dashdot"),
-    ("#1d2730", "solid"),
-    ("#0f7278", "dashed"),
-    ("#5b5b16", "dotted"),
+    ("#8f2f3f", [14, 4]),
+    ("#1d2730", [2, 2, 8, 2]),
+    ("#0f7278", [10, 3, 2, 3, 2, 3]),
+    ("#5b5b16", [4, 8]),
 )
-"""Colour and dashes, shallowest depth first; no two lines share their dashes with a neighbour."""
+"""Colour and dashes, shallowest depth first; no two have the same dashes."""
 
 
 def make_temperatures(
@@ -86,23 +85,21 @@ def make_temperatures(
     drawn, source = sheet.figure, sheet.sources["series"]
     style_time_axis(drawn)
     drawn.yaxis.axis_label = f"Temperature [{shown.temperature_unit}]"
-    drawn.add_layout(Span(location=shown.freezing, dimension="width", line_color=INK, line_width=1.2))
+    drawn.hspan(y=[shown.freezing], line_color=INK, line_width=1.2)
     items, tooltips = [], [("date", "@time{%F %H:%M}")]
     if is_surface:
         curve = drawn.line("time", "surface", source=source, line_color=SURFACE, line_width=1)
         items.append(("surface", "series", [curve]))
         tooltips.append(("surface", f"@surface{{0.0}} {shown.temperature_unit}"))
     for number, (place, (color, dash)) in enumerate(zip(places, STYLES, strict=False)):
-        curve = drawn.line(
-            "time", f"depth_{number}", source=source, line_color=color, line_dash=dash, line_width=2.2
-        )
+        curve = drawn.line("time", f"depth_{number}", source=source, line_color=color, line_dash=dash, line_width=2.2)
         items.append((shown.depth_text(place), "series", [curve]))
         tooltips.append((shown.depth_text(place), f"@depth_{number}{{0.0}} {shown.temperature_unit}"))
     sheet.hover(curve, tooltips, "vline", time="datetime")
     sheet.legend(items)
 
-    def update(new: xr.Dataset, *, line: Any = None, layers: Any = None) -> None:  # noqa: ARG001 (one form for all pictures)
-        sheet.show(_picture(new, places, shown, is_surface))
+    def update(result: xr.Dataset, *, line: Any = None, layers: Any = None) -> None:  # noqa: ARG001 (one form for all pictures)
+        sheet.show(_picture(result, places, shown, is_surface))
 
     return drawn, update
 

@@ -7,7 +7,6 @@ from typing import Any
 import numpy as np
 import xarray as xr
 from bokeh.core.properties import value
-from bokeh.models import ColorBar, CrosshairTool, FixedTicker, HoverTool, LinearColorMapper
 from bokeh.plotting import figure
 
 from soiltemp.errors import InputError, message
@@ -25,6 +24,7 @@ from soiltemp.figures.drawing import (
     Update,
     assign,
     band_of,
+    bm,
     nice_limits,
     packed,
     style_time_axis,
@@ -47,8 +47,8 @@ MOST_COLUMNS = 1500
 ROWS = 240
 
 FROZEN_COLORS = ("#eef7fd", "#cfe6f6", "#9fcbea")
-"""Coldest to just below 0 degC. Lightness falls all the way from the coldest to the warmest colour, with a step at 0 degC:
-the map is read without its hues too, in grey print and by the colour-blind."""
+"""Coldest to just below 0 degC. Lightness falls all the way from the coldest to the warmest colour, with a step at
+0 degC: the map is read without its hues too, in grey print and by the colour-blind."""
 
 THAWED_COLORS = ("#d9a44a", "#b5702f", "#85441f", "#4f2215")
 ISOTHERM_FROZEN = "#3f6d92"
@@ -68,12 +68,12 @@ def make_time_depth(
     Parameters
     ----------
     result : xr.Dataset
-        With `ground_temperature` (time, depth) [degC] at two depths or more. Of more than 1500 output times the map shows
-        means over two, three, ... of them, and says so.
+        With `ground_temperature` (time, depth) [degC] at two depths or more. Of more than 1500 output times the map
+        shows means over two, three, ... of them, and says so.
     units : {"si", "us"}
         Metres and degC, or feet and degF.
     line : (depth of the crown, outside diameter), optional
-        A buried line [m or strings]; else the one of the site file in the result, if any.
+        A buried line [m or strings]; else the one that the result has, if any.
     deepest : float or str, optional
         Depth down to which the map goes [m]; else to where the seasons have nearly died out.
     width, height : int
@@ -95,15 +95,13 @@ def make_time_depth(
         return _picture(new, line_of(new, new_line), shown, deepest)
 
     picture, scale = read(result, line)
-    sheet = Sheet(
-        picture, title="Ground temperature through time", width=width, height=height, x_axis_type="datetime"
-    )
-    mapper = LinearColorMapper(palette=scale["palette"], low=scale["low"], high=scale["high"])
-    ticker = FixedTicker(ticks=scale["ticks"])
+    sheet = Sheet(picture, title="Ground temperature through time", width=width, height=height, x_axis_type="datetime")
+    mapper = bm.LinearColorMapper(palette=scale["palette"], low=scale["low"], high=scale["high"])
+    ticker = bm.FixedTicker(ticks=scale["ticks"])
     _draw(sheet, mapper, ticker, shown)
 
-    def update(new: xr.Dataset, *, line: Any = line, layers: Any = None) -> None:  # noqa: ARG001 (one form for all pictures)
-        renewed, fresh = read(new, line)
+    def update(result: xr.Dataset, *, line: Any = line, layers: Any = None) -> None:  # noqa: ARG001 (one form for all pictures)
+        renewed, fresh = read(result, line)
         assign(mapper, palette=fresh["palette"], low=fresh["low"], high=fresh["high"])
         assign(ticker, ticks=fresh["ticks"])
         sheet.show(renewed)
@@ -196,7 +194,9 @@ def _subtitle(times: Floats, count: int, shown: Display, is_fine: bool) -> str:
 
 def _scale(low: float, high: float, shown: Display) -> dict[str, Any]:
     """Bands of equal width on both sides of 0 degC, their ends and the ticks."""
-    band = next(width for width in (1.0, 2.0, 5.0, 10.0, 20.0) if (high - low) / (width * shown.band) <= 45.0) * shown.band
+    band = (
+        next(width for width in (1.0, 2.0, 5.0, 10.0, 20.0) if (high - low) / (width * shown.band) <= 45.0) * shown.band
+    )
     first, last = nice_limits(min(low, shown.freezing), max(high, shown.freezing), band, shown.freezing)
     frozen, thawed = round((shown.freezing - first) / band), round((last - shown.freezing) / band)
     every = next(step for step in (1, 2, 4, 5, 10, 20) if (frozen + thawed) / step <= 9)
@@ -260,7 +260,7 @@ def _isotherms(
     }
 
 
-def _draw(sheet: Sheet, mapper: LinearColorMapper, ticker: FixedTicker, shown: Display) -> None:
+def _draw(sheet: Sheet, mapper: Any, ticker: Any, shown: Display) -> None:
     drawn, sources = sheet.figure, sheet.sources
     style_time_axis(drawn)
     drawn.grid.visible = False
@@ -270,31 +270,30 @@ def _draw(sheet: Sheet, mapper: LinearColorMapper, ticker: FixedTicker, shown: D
     )
     drawn.multi_line("x", "y", source=sources["isotherms"], line_color="color", line_width=1, line_alpha=0.8)
     zero = drawn.multi_line("x", "y", source=sources["zero"], line_color=INK, line_width=2.4)
-    frozen = drawn.line(
-        "time", "depth", source=sources["frozen"], line_color=INK, line_width=1.4, line_dash="dotted"
-    )
+    frozen = drawn.line("time", "depth", source=sources["frozen"], line_color=INK, line_width=1.4, line_dash="dotted")
     band = drawn.quad(
         left="left", right="right", top="top", bottom="bottom", source=sources["line"],
         fill_color=PAPER, fill_alpha=0.35, line_color=LINE, line_width=1.6, line_dash="dashed",
     )  # fmt: skip
-    plate = {
-        "text_font": value(FONT), "text_font_size": SMALL, "background_fill_color": PAPER, "background_fill_alpha": 0.85,
-        "padding": 2, "text_baseline": "middle",
+    plate: dict[str, Any] = {
+        "text_font": value(FONT), "text_font_size": SMALL, "text_baseline": "middle", "padding": 2,
+        "background_fill_color": PAPER, "background_fill_alpha": 0.85,
     }  # fmt: skip
     drawn.text("x", "y", text="text", source=sources["labels"], text_color=INK, text_align="center", **plate)
     drawn.text("left", "top", text="text", source=sources["line"], text_color=LINE, x_offset=8, **plate)
     drawn.add_layout(
-        ColorBar(
-            color_mapper=mapper, ticker=ticker, title=f"Ground temperature [{shown.temperature_unit}]", width=16, padding=6,
-            title_standoff=8, title_text_font=FONT, title_text_font_size=SMALL, title_text_font_style="normal", title_text_color=INK,
+        bm.ColorBar(
+            color_mapper=mapper, ticker=ticker, width=16, padding=6, title_standoff=8,
+            title=f"Ground temperature [{shown.temperature_unit}]", title_text_color=INK,
+            title_text_font=FONT, title_text_font_size=SMALL, title_text_font_style="normal",
             major_label_text_font=FONT, major_label_text_font_size=SMALL, major_label_text_color=INK,
             major_tick_line_color=QUIET, bar_line_color=QUIET, border_line_color=None,
         ),
         "right",
     )  # fmt: skip
     drawn.add_tools(
-        CrosshairTool(line_color=INK, line_alpha=0.4),
-        HoverTool(
+        bm.CrosshairTool(line_color=INK, line_alpha=0.4),
+        bm.HoverTool(
             renderers=[image],
             tooltips=[
                 ("date", "$x{%F %H:%M}"),

@@ -1,10 +1,9 @@
 """The kernel for many columns: the same steps as `kernel.march_one`, `WIDTH` columns abreast.
 
-A node of a block is one record: `FIELDS` rows of `WIDTH` lanes, one lane a column, so that the inner loops run over
-lanes with constant distances and turn into vector instructions. The order of operations in a lane is that of
-`march_one`; results are equal to the last bit, whatever the company a column is marched in. A lane in which a node has
-to be held at a knot is solved again by itself, by `stage.settle`; one that needs sub-steps or Katzenelson's path is
-taken out for that step and worked by `careful`.
+A node of a block is a record: `FIELDS` rows of `WIDTH` lanes, one lane a column. All records stand in one flat array,
+so that the inner loops run over lanes at constant distances and turn into vector instructions. The order of operations
+in a lane is that of `march_one`; results are equal to the last bit, whatever the company a column is marched in. A
+column that needs sub-steps or Katzenelson's path is taken out for that step and worked by `careful`.
 
 Record 0 stands for the surface and is empty, record n stands below the base and carries the base flux as its
 potential: so neither end needs a case of its own.
@@ -13,7 +12,7 @@ potential: so neither end needs a case of its own.
 from __future__ import annotations
 
 import numpy as np
-from numba import njit, prange
+from numba import njit, prange, uintp
 
 from soiltemp.solver import stage
 from soiltemp.solver.careful import careful
@@ -29,216 +28,224 @@ from soiltemp.solver.stage import (
     FINGERPRINT,
     GAMMA,
     KNOT_SLACK,
+    MAX_HOLDS,
     OPTIONS,
     SOLVES,
     STEPS,
     W_FLUX,
-    factor,
     flux_difference,
     health,
     middle_of,
     place,
     potential,
-    settle,
 )
 
 __all__ = ["WIDTH", "march_columns", "march_columns_parallel"]
 
-WIDTH = 32
-"""Columns abreast. Narrower blocks are unrolled before they can be vectorised, wider ones outgrow the second cache."""
+WIDTH = 16
+"""Columns abreast: two vectors of eight doubles. Wider blocks gain little a node and solve more lanes again for one."""
 
-# Rows of a record. The first eight are the piece in force, in the order of `stage.PIECE_FIELDS`.
-A, B, UA, U, VA, V, LO, HI = (field * WIDTH for field in range(8))
-P, F, E, K, Z = (field * WIDTH for field in range(8, 13))  # factors, constant part, substitution
-S, T, FLUX = (field * WIDTH for field in range(13, 16))  # state at the start of the step
-R, S_NEW, T_NEW = (field * WIDTH for field in range(16, 19))  # right side and results of a stage
-GAP, OUTSIDE, MISS = (field * WIDTH for field in range(19, 22))  # error so far; worst of this node and those before
-FIELDS = 22
+# Distances within a record, unsigned: a signed index may be negative, and code that looks for it does not vectorise.
+# The first eight rows are the piece in force, in the order of `stage.PIECE_FIELDS`.
+A, B, UA, U, VA, V, LO, HI = (np.uintp(field * WIDTH) for field in range(8))
+P, F, E, K, Z = (np.uintp(field * WIDTH) for field in range(8, 13))  # factors, constant part, substitution
+S, R1, R2 = (np.uintp(field * WIDTH) for field in range(13, 16))  # heat at the start, right sides of the stages
+S_NEW, T = (np.uintp(field * WIDTH) for field in range(16, 18))  # results of a stage
+GAP, OUTSIDE, MISS = (np.uintp(field * WIDTH) for field in range(18, 21))  # error so far; worst up to this node
+FIELDS = 21
+NEXT = np.uintp(FIELDS * WIDTH)
 
 
 @njit(**OPTIONS)
-def _factor(x, c, top, base):
+def _factor(x, n, c, top, base, width):
     """`stage.factor` in every lane."""
-    m = middle_of(x.shape[0] - 1)
+    m = middle_of(n)
     for i in range(top, m):
-        own, up, down = x[i], x[i - 1], x[i + 1]
-        for j in range(WIDTH):
-            above = c * up[V + j]
-            pivot = 1.0 / (own[B + j] + c * (own[U + j] + own[V + j]) - above * (c * own[U + j]) * up[P + j])
-            own[P + j] = pivot
-            own[F + j] = pivot * above
-            own[E + j] = pivot * (c * down[U + j])
-            own[K + j] = c * (up[VA + j] - own[UA + j] - own[VA + j] + down[UA + j]) - own[A + j]
+        o = uintp(i) * NEXT
+        for j in range(width):
+            q = o + uintp(j)
+            above = c * x[q + V - NEXT]
+            pivot = 1.0 / (x[q + B] + c * (x[q + U] + x[q + V]) - above * (c * x[q + U]) * x[q + P - NEXT])
+            x[q + P] = pivot
+            x[q + F] = pivot * above
+            x[q + E] = pivot * (c * x[q + U + NEXT])
+            x[q + K] = c * (x[q + VA - NEXT] - x[q + UA] - x[q + VA] + x[q + UA + NEXT]) - x[q + A]
     for i in range(base, m, -1):
-        own, up, down = x[i], x[i - 1], x[i + 1]
-        for j in range(WIDTH):
-            below = c * down[U + j]
-            pivot = 1.0 / (own[B + j] + c * (own[U + j] + own[V + j]) - below * (c * own[V + j]) * down[P + j])
-            own[P + j] = pivot
-            own[F + j] = pivot * below
-            own[E + j] = pivot * (c * up[V + j])
-            own[K + j] = c * (up[VA + j] - own[UA + j] - own[VA + j] + down[UA + j]) - own[A + j]
-    own, up, down = x[m], x[m - 1], x[m + 1]
-    for j in range(WIDTH):
-        above = c * up[V + j]
-        below = c * down[U + j]
+        o = uintp(i) * NEXT
+        for j in range(width):
+            q = o + uintp(j)
+            below = c * x[q + U + NEXT]
+            pivot = 1.0 / (x[q + B] + c * (x[q + U] + x[q + V]) - below * (c * x[q + V]) * x[q + P + NEXT])
+            x[q + P] = pivot
+            x[q + F] = pivot * below
+            x[q + E] = pivot * (c * x[q + V - NEXT])
+            x[q + K] = c * (x[q + VA - NEXT] - x[q + UA] - x[q + VA] + x[q + UA + NEXT]) - x[q + A]
+    o = uintp(m) * NEXT
+    for j in range(width):
+        q = o + uintp(j)
+        above = c * x[q + V - NEXT]
+        below = c * x[q + U + NEXT]
         pivot = 1.0 / (
-            own[B + j]
-            + c * (own[U + j] + own[V + j])
-            - above * (c * own[U + j]) * up[P + j]
-            - below * (c * own[V + j]) * down[P + j]
+            x[q + B]
+            + c * (x[q + U] + x[q + V])
+            - above * (c * x[q + U]) * x[q + P - NEXT]
+            - below * (c * x[q + V]) * x[q + P + NEXT]
         )
-        own[P + j] = pivot
-        own[F + j] = pivot * above
-        own[E + j] = pivot * below
-        own[K + j] = c * (up[VA + j] - own[UA + j] - own[VA + j] + down[UA + j]) - own[A + j]
+        x[q + P] = pivot
+        x[q + F] = pivot * above
+        x[q + E] = pivot * below
+        x[q + K] = c * (x[q + VA - NEXT] - x[q + UA] - x[q + VA] + x[q + UA + NEXT]) - x[q + A]
 
 
 @njit(**OPTIONS)
-def _inward(x, first, last, step):
-    """Substitute from one end towards the middle."""
-    for i in range(first, last, step):
-        own, before = x[i], x[i - step]
-        for j in range(WIDTH):
-            own[Z + j] = own[P + j] * (own[R + j] + own[K + j]) + own[F + j] * before[Z + j]
-
-
-@njit(**OPTIONS)
-def _meet(x, boundary):
-    """First half of a solve: from both ends to the middle, whose temperature is left in its row Z."""
-    n = x.shape[0] - 1
+def _inward(x, n, right, boundary, width):
+    """Substitute from both ends; the middle node is left with its temperature in Z. `right` is R1 or R2."""
     m = middle_of(n)
-    own = x[1]
-    for j in range(WIDTH):
-        own[Z + j] = own[P + j] * (own[R + j] + own[K + j]) + own[P + j] * boundary[j]
-    _inward(x, 2, m, 1)
-    _inward(x, n - 1, m, -1)
-    own, up, down = x[m], x[m - 1], x[m + 1]
-    for j in range(WIDTH):
-        own[Z + j] = own[P + j] * (own[R + j] + own[K + j]) + own[F + j] * up[Z + j] + own[E + j] * down[Z + j]
+    for j in range(width):
+        q = NEXT + uintp(j)
+        x[q + Z] = x[q + P] * (x[q + right] + x[q + K]) + x[q + P] * boundary[j]
+    for i in range(2, m):
+        o = uintp(i) * NEXT
+        for j in range(width):
+            q = o + uintp(j)
+            x[q + Z] = x[q + P] * (x[q + right] + x[q + K]) + x[q + F] * x[q + Z - NEXT]
+    for i in range(n - 1, m, -1):
+        o = uintp(i) * NEXT
+        for j in range(width):
+            q = o + uintp(j)
+            x[q + Z] = x[q + P] * (x[q + right] + x[q + K]) + x[q + F] * x[q + Z + NEXT]
+    o = uintp(m) * NEXT
+    for j in range(width):
+        q = o + uintp(j)
+        x[q + Z] = x[q + P] * (x[q + right] + x[q + K]) + x[q + F] * x[q + Z - NEXT] + x[q + E] * x[q + Z + NEXT]
+
+
+def _make_outward(stage_number, step):
+    """Compile the way back from the middle: upward (`step` -1), downward (1), or the middle node itself (0).
+
+    Fills temperatures and stored heat of the stage, how far nodes are outside their segments, and in stage 1 the right
+    side of stage 2 and the first part of the error estimate, in stage 2 the whole of it.
+    """
+    stage_1 = stage_number == 1
+    middle = step == 0
+    stride = 1 if middle else step
+    back = np.uintp((-step * int(NEXT)) % 2**64)  # the record before: unsigned numbers wrap, so this goes either way
+
+    @njit(**OPTIONS)
+    def outward(x, first, last, watch, width):
+        for i in range(first, last, stride):
+            o = uintp(i) * NEXT
+            weight = 1.0 if i >= watch else 0.0
+            for j in range(width):
+                q = o + uintp(j)
+                if middle:
+                    value, outside_before, miss_before = x[q + Z], 0.0, 0.0
+                else:
+                    value = x[q + Z] + x[q + E] * x[q + T + back]
+                    outside_before, miss_before = x[q + OUTSIDE + back], x[q + MISS + back]
+                heat = x[q + A] + x[q + B] * value
+                under = x[q + LO] - value
+                over = value - x[q + HI]
+                worst = under if under > over else over
+                x[q + T] = value
+                x[q + OUTSIDE] = worst if worst > outside_before else outside_before
+                if stage_1:
+                    right, old = x[q + R1], x[q + S]
+                    x[q + GAP] = E1 * (right - old) + E2 * (heat - right)
+                    x[q + R2] = B1 * heat - B2 * old
+                else:
+                    x[q + S_NEW] = heat
+                    estimate = abs(x[q + GAP] + E3 * (heat - x[q + R2])) * x[q + P] * weight
+                    x[q + MISS] = estimate if estimate > miss_before else miss_before
+
+    return outward
+
+
+_up_1, _middle_1, _down_1 = _make_outward(1, -1), _make_outward(1, 0), _make_outward(1, 1)
+_up_2, _middle_2, _down_2 = _make_outward(2, -1), _make_outward(2, 0), _make_outward(2, 1)
 
 
 @njit(**OPTIONS)
-def _outward_1(x, first, last, step):
-    """Second half of a solve of stage 1, with the right side of stage 2 and the first part of the error."""
-    for i in range(first, last, step):
-        own, before = x[i], x[i - step]
-        for j in range(WIDTH):
-            value = own[Z + j] + own[E + j] * before[T_NEW + j]
-            heat = own[A + j] + own[B + j] * value
-            own[T_NEW + j] = value
-            own[GAP + j] = E1 * (own[R + j] - own[S + j]) + E2 * (heat - own[R + j])
-            own[R + j] = B1 * heat - B2 * own[S + j]
-            under = own[LO + j] - value
-            over = value - own[HI + j]
-            worst = under if under > over else over
-            own[OUTSIDE + j] = worst if worst > before[OUTSIDE + j] else before[OUTSIDE + j]
-
-
-@njit(**OPTIONS)
-def _outward_2(x, first, last, step, watch):
-    """Second half of a solve of stage 2, with the error estimate."""
-    for i in range(first, last, step):
-        own, before = x[i], x[i - step]
-        weight = 1.0 if i >= watch else 0.0
-        for j in range(WIDTH):
-            value = own[Z + j] + own[E + j] * before[T_NEW + j]
-            heat = own[A + j] + own[B + j] * value
-            own[T_NEW + j] = value
-            own[S_NEW + j] = heat
-            under = own[LO + j] - value
-            over = value - own[HI + j]
-            worst = under if under > over else over
-            own[OUTSIDE + j] = worst if worst > before[OUTSIDE + j] else before[OUTSIDE + j]
-            miss = abs(own[GAP + j] + E3 * (heat - own[R + j])) * own[P + j] * weight
-            own[MISS + j] = miss if miss > before[MISS + j] else before[MISS + j]
-
-
-@njit(**OPTIONS)
-def _start(x, c):
-    """Right side of stage 1 from the state."""
-    for i in range(1, x.shape[0] - 1):
-        own = x[i]
-        for j in range(WIDTH):
-            own[R + j] = own[S + j] + c * own[FLUX + j]
-
-
-@njit(**OPTIONS)
-def _stage_of_all(x, first_stage, boundary, watch):
-    """Solve one stage in the present segments of all lanes."""
-    n = x.shape[0] - 1
+def _settle(x, n, tables, table_of, segment, c, stage_number, boundary, watch, factored, lost, count, width):
+    """`stage.settle` in every lane; mark in `lost` the lanes that did not settle."""
     m = middle_of(n)
-    _meet(x, boundary)
-    # The middle node is worked like the others: its Z holds its temperature, so its coupling E is put aside, and the
-    # record before it is the empty one, number n, reached by a step of m - n.
-    middle = x[m]
-    coupling = middle[E : E + WIDTH].copy()
-    middle[E : E + WIDTH] = 0.0
-    if first_stage:
-        _outward_1(x, m, m - 1, m - n)
-        _outward_1(x, m - 1, 0, -1)
-        _outward_1(x, m + 1, n, 1)
-    else:
-        _outward_2(x, m, m - 1, m - n, watch)
-        _outward_2(x, m - 1, 0, -1, watch)
-        _outward_2(x, m + 1, n, 1, watch)
-    middle[E : E + WIDTH] = coupling
+    top, base = 1, n - 1
+    for hold in range(MAX_HOLDS):
+        if factored[0] != c:
+            _factor(x, n, c, top, base, width)
+            factored[0] = c
+            count[FACTORS] += 1
+        if stage_number == 1:
+            _inward(x, n, R1, boundary, width)
+            _middle_1(x, m, m + 1, watch, width)
+            _up_1(x, m - 1, 0, watch, width)
+            _down_1(x, m + 1, n, watch, width)
+        else:
+            _inward(x, n, R2, boundary, width)
+            _middle_2(x, m, m + 1, watch, width)
+            _up_2(x, m - 1, 0, watch, width)
+            _down_2(x, m + 1, n, watch, width)
+        count[SOLVES] += 1
+        moved = False
+        top, base = m, m
+        for j in range(width):
+            lane = uintp(j)
+            worst = max(x[NEXT + OUTSIDE + lane], x[uintp(n - 1) * NEXT + OUTSIDE + lane])
+            if worst <= KNOT_SLACK or lost[j]:
+                continue
+            if hold == MAX_HOLDS - 1:
+                lost[j] = True
+                continue
+            moved = True
+            for i in range(1, n):
+                q = uintp(i) * NEXT + lane
+                if x[q + T] > x[q + HI] + KNOT_SLACK:
+                    segment[i, j] += 1
+                elif x[q + T] < x[q + LO] - KNOT_SLACK:
+                    segment[i, j] -= 1
+                else:
+                    continue
+                for field in range(8):
+                    x[q + uintp(field * WIDTH)] = tables[table_of[j], i, segment[i, j], field]
+                top = min(top, max(1, i - 1))
+                base = max(base, min(n - 1, i + 1))
+        if not moved:
+            return
+        factored[0] = 0.0
 
 
 @njit(**OPTIONS)
-def _is_outside(x, j):
-    """Whether a node of lane `j` left its segment in the last solve."""
-    return max(x[1, OUTSIDE + j], x[x.shape[0] - 2, OUTSIDE + j]) > KNOT_SLACK
+def _prepare(x, n, c, before, width):
+    """Right side of stage 1 for steps of another length; `before` is c of the steps so far."""
+    for i in range(1, n):
+        o = uintp(i) * NEXT
+        for j in range(width):
+            q = o + uintp(j)
+            flux = (x[q + R1] - x[q + S]) / before
+            x[q + R1] = x[q + S] + c * flux
 
 
 @njit(**OPTIONS)
-def _put_factors(x, j, piece, work, top, base):
-    """Write the pieces and factors of nodes `top` to `base` of one column into lane `j`."""
-    for i in range(top, base + 1):
-        own = x[i]
+def _accept(x, n, width):
+    """Take the results of stage 2 as the new state in all lanes, with the right side of the next stage 1."""
+    for i in range(1, n):
+        o = uintp(i) * NEXT
+        for j in range(width):
+            q = o + uintp(j)
+            heat = x[q + S_NEW]
+            x[q + S] = heat
+            x[q + R1] = heat + (heat - x[q + R2])
+
+
+@njit(**OPTIONS)
+def _put_lane(x, j, piece, segment, lane_segment, t, s, flux, c):
+    """Write one column into lane `j`: pieces and state, ready for a stage 1."""
+    for i in range(1, t.size):
+        q = uintp(i) * NEXT + uintp(j)
         for field in range(8):
-            own[field * WIDTH + j] = piece[field, i]
-        own[P + j], own[F + j], own[E + j], own[K + j] = work[0, i], work[1, i], work[2, i], work[3, i]
-
-
-@njit(**OPTIONS)
-def _stage_of_lane(
-    x, j, table, piece, segment, c, first_stage, boundary, below, watch, work, t, s, r, factored, count
-):  # fmt: skip
-    """Solve one stage of lane `j` by itself, where nodes have to be held at knots; False when they do not settle."""
-    n = t.size
-    for i in range(1, n):
-        own = x[i]
-        # in stage 1 the right side has been overwritten by that of stage 2
-        r[i] = own[S + j] + c * own[FLUX + j] if first_stage else own[R + j]
-    good = settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, count)
-    _put_factors(x, j, piece, work, int(factored[1]), int(factored[2]))
-    worst = 0.0
-    for i in range(1, n):
-        own = x[i]
-        own[T_NEW + j], own[S_NEW + j] = t[i], s[i]
-        if first_stage:
-            own[GAP + j] = E1 * (r[i] - own[S + j]) + E2 * (s[i] - r[i])
-            own[R + j] = B1 * s[i] - B2 * own[S + j]
-        elif i >= watch:
-            estimate = abs(own[GAP + j] + E3 * (s[i] - r[i])) * own[P + j]
-            worst = estimate if estimate > worst else worst
-    x[1, MISS + j], x[n - 1, MISS + j] = worst, worst
-    return good
-
-
-@njit(**OPTIONS)
-def _accept(x, c, inverse):
-    """Take the results of stage 2 as the new state in all lanes, and prepare the next stage 1 of the same length."""
-    for i in range(1, x.shape[0] - 1):
-        own = x[i]
-        for j in range(WIDTH):
-            heat = own[S_NEW + j]
-            flux = (heat - own[R + j]) * inverse
-            own[S + j] = heat
-            own[T + j] = own[T_NEW + j]
-            own[FLUX + j] = flux
-            own[R + j] = heat + c * flux
+            x[q + uintp(field * WIDTH)] = piece[field, i]
+        x[q + T], x[q + S], x[q + R1] = t[i], s[i], s[i] + c * flux[i]
+        segment[i, j] = lane_segment[i]
 
 
 @njit(**OPTIONS)
@@ -251,63 +258,67 @@ def _potential(tops, j, temperature):
 
 
 @njit(**OPTIONS)
-def _put_state(x, j, t, s, flux, c):
-    """Write the state of one column into lane `j`, ready for a stage 1."""
-    for i in range(1, t.size):
-        own = x[i]
-        own[T + j], own[S + j], own[FLUX + j] = t[i], s[i], flux[i]
-        own[R + j] = s[i] + c * flux[i]
+def _flux_in(x, j, surface_potential):
+    """Heat flux from the surface into node 1 of lane `j` [W m-2]."""
+    q = NEXT + uintp(j)
+    return surface_potential - (x[q + UA] + x[q + U] * x[q + T])
 
 
 @njit(**OPTIONS)
 def _march_block(
     tables, which, dt, surfaces, forced_by, parts, row, base_flux, watch, tolerance, temperature, out_temperature,
-    out_heat, status, stopped, count, first, lanes,
+    out_heat, status, stopped, count, first, lanes, width,
 ):  # fmt: skip
-    """March columns `first` to `first + lanes` through all intervals; see `march_columns`."""
+    """March columns `first` to `first + lanes` through all intervals; see `march_columns`. `width` is WIDTH.
+
+    The width comes as an argument because a loop of so few known rounds is unrolled before it can be vectorised.
+    """
     n = temperature.shape[1]
-    x = np.zeros((n + 1, FIELDS * WIDTH))
-    # What `settle` and `careful` need of each lane by itself; a lane's factors stand here and in `x`, the same in both.
-    segment, factored = np.zeros((WIDTH, n), dtype=np.int64), np.zeros((WIDTH, 3))
-    piece, work = np.zeros((WIDTH, 8, n + 1)), np.zeros((WIDTH, 14, n + 1))
-    t, s, r, flux, kept = np.zeros(n), np.zeros(n), np.zeros(n), np.zeros(n), np.zeros((3, WIDTH, n))
-    heat, begin, change = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
+    x = np.zeros((n + 1) * FIELDS * WIDTH)
+    segment, factored = np.zeros((n, WIDTH), dtype=np.int64), np.zeros(1)
+    # one column alone, for `careful`
+    work, piece, lane_segment, alone = (
+        np.zeros((14, n + 1)),
+        np.zeros((8, n + 1)),
+        np.zeros(n, dtype=np.int64),
+        np.zeros(1),
+    )
+    t, flux, kept = np.zeros(n), np.zeros((WIDTH, n)), np.zeros((WIDTH, n))
+    heat, begin, change, base = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
     phi_1, phi_2, b_1, b_2 = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
-    q_0, q_1, q_2, below = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
+    q_0, q_1, q_2 = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
     lost, dead = np.zeros(WIDTH, dtype=np.bool_), np.zeros(WIDTH, dtype=np.bool_)
     table_of, force_of = np.zeros(WIDTH, dtype=np.int64), np.zeros(WIDTH, dtype=np.int64)
     tops = np.zeros((WIDTH, tables.shape[2], 3))
     bottom = np.zeros((1, 3))
     bottom[0, 1], bottom[0, 2] = 1.0, np.inf  # the base value is a heat flux
-    node, last = x[1], x[n - 1]
+    end = uintp(n - 1) * NEXT
+    prepared = C_STAGE * dt[0] / parts[0]
     for j in range(WIDTH):
         column = first + min(j, lanes - 1)  # spare lanes repeat the last column and are not looked at
-        table_of[j], force_of[j], below[j] = which[column], forced_by[column], base_flux[column]
+        table_of[j], force_of[j], base[j] = which[column], forced_by[column], base_flux[column]
         table = tables[table_of[j]]
         for k in range(tables.shape[2]):
             tops[j, k, 0] = table[0, k, stage.VA]
             tops[j, k, 1] = table[0, k, stage.V]
             tops[j, k, 2] = table[0, k, stage.HI]
-        x[n, UA + j] = below[j]
-        piece[j, stage.UA, n] = below[j]
+        x[uintp(n) * NEXT + UA + uintp(j)] = base[j]
+        piece[stage.UA, n] = base[j]
         t[:] = temperature[column]
         t[0] = surfaces[force_of[j], 0]
-        place(table, piece[j], segment[j], t)
+        place(table, piece, lane_segment, t)
         for i in range(1, n):
-            s[i] = piece[j, stage.A, i] + piece[j, stage.B, i] * t[i]
+            kept[j, i] = piece[stage.A, i] + piece[stage.B, i] * t[i]
         phi_2[j] = potential(tops[j], t[0])
-        flux_difference(piece[j], phi_2[j], t, flux)
-        _put_state(x, j, t, s, flux, 0.0)
-        _put_factors(x, j, piece[j], work[j], 1, n - 1)
-        q_2[j] = phi_2[j] - (node[UA + j] + node[U + j] * t[1])
+        flux_difference(piece, phi_2[j], t, flux[j])
+        _put_lane(x, j, piece, segment, lane_segment, t, kept[j], flux[j], prepared)
+        q_2[j] = _flux_in(x, j, phi_2[j])
         if row[0] >= 0 and j < lanes:
             out_temperature[column, row[0], :] = t
             out_heat[column, row[0]] = 0.0
-    prepared = 0.0
     for interval in range(dt.size):
         h = dt[interval] / parts[interval]
         c = C_STAGE * h
-        inverse = 1.0 / c
         for part in range(parts[interval]):
             for j in range(WIDTH):
                 before, after = surfaces[force_of[j], interval], surfaces[force_of[j], interval + 1]
@@ -320,54 +331,41 @@ def _march_block(
                 b_2[j] = c * phi_2[j]
                 lost[j] = dead[j] or j >= lanes
             if prepared != c:
-                _start(x, c)
-                _factor(x, c, 1, n - 1)
-                count[first, FACTORS] += 1
+                _prepare(x, n, c, prepared, width)
                 prepared = c
-            _stage_of_all(x, True, b_1, watch)
-            for j in range(lanes):
-                if not lost[j] and _is_outside(x, j):
-                    lost[j] = not _stage_of_lane(
-                        x, j, tables[table_of[j]], piece[j], segment[j], c, True, b_1[j], below[j], watch,
-                        work[j], t, s, r, factored[j], count[first + j],
-                    )  # fmt: skip
+            _settle(x, n, tables, table_of, segment, c, 1, b_1, watch, factored, lost, count[first], width)
             for j in range(WIDTH):
-                q_1[j] = phi_1[j] - (node[UA + j] + node[U + j] * node[T_NEW + j])
-            _stage_of_all(x, False, b_2, watch)
-            for j in range(lanes):
-                if not lost[j] and _is_outside(x, j):
-                    lost[j] = not _stage_of_lane(
-                        x, j, tables[table_of[j]], piece[j], segment[j], c, False, b_2[j], below[j], watch,
-                        work[j], t, s, r, factored[j], count[first + j],
-                    )  # fmt: skip
+                q_1[j] = _flux_in(x, j, phi_1[j])
+            _settle(x, n, tables, table_of, segment, c, 2, b_2, watch, factored, lost, count[first], width)
+            any_lost = False
             for j in range(lanes):
                 if dead[j]:
                     continue
-                if not lost[j] and max(node[MISS + j], last[MISS + j]) <= tolerance:
-                    q_2[j] = phi_2[j] - (node[UA + j] + node[U + j] * node[T_NEW + j])
+                if not lost[j] and max(x[NEXT + MISS + uintp(j)], x[end + MISS + uintp(j)]) <= tolerance:
+                    q_2[j] = _flux_in(x, j, phi_2[j])
                     heat[j] += h * (W_FLUX * q_0[j] + W_FLUX * q_1[j] + C_STAGE * q_2[j])
                     count[first + j, STEPS] += 1
-                    count[first + j, SOLVES] += 2
                     continue
                 lost[j] = True
-                for i in range(1, n):
-                    kept[0, j, i], kept[1, j, i], kept[2, j, i] = x[i, T + j], x[i, S + j], x[i, FLUX + j]
-            _accept(x, c, inverse)
+                any_lost = True
+                for i in range(1, n):  # the state is about to be overwritten
+                    q = uintp(i) * NEXT + uintp(j)
+                    kept[j, i] = x[q + S]
+                    flux[j, i] = (x[q + R1] - x[q + S]) / c
+            _accept(x, n, width)
+            if not any_lost:
+                continue
             for j in range(lanes):
                 if not lost[j] or dead[j]:
                     continue
-                t[:], s[:], flux[:] = kept[0, j], kept[1, j], kept[2, j]
-                t[0] = begin[j]
                 code, gained, _ = careful(
-                    tables[table_of[j]], tops[j], bottom, piece[j], segment[j], h, begin[j], begin[j] + change[j],
-                    below[j], below[j], watch, tolerance, t, s, flux, work[j], factored[j], count[first + j],
+                    tables[table_of[j]], tops[j], bottom, piece, lane_segment, h, begin[j], begin[j] + change[j],
+                    base[j], base[j], watch, tolerance, t, kept[j], flux[j], work, alone, count[first + j],
                 )  # fmt: skip
-                factor(c, piece[j], work[j, 0], work[j, 1], work[j, 2], work[j, 3], 1, n - 1)
-                factored[j, 0] = c
-                _put_factors(x, j, piece[j], work[j], 1, n - 1)
-                _put_state(x, j, t, s, flux, c)
+                _put_lane(x, j, piece, segment, lane_segment, t, kept[j], flux[j], c)
+                factored[0] = 0.0
                 heat[j] += gained
-                q_2[j] = phi_2[j] - (node[UA + j] + node[U + j] * t[1])
+                q_2[j] = _flux_in(x, j, phi_2[j])
                 if code != CONVERGED:
                     dead[j] = True
                     status[first + j] = code
@@ -377,7 +375,7 @@ def _march_block(
                 out = out_temperature[first + j, row[interval + 1]]
                 out[0] = begin[j] + change[j]
                 for i in range(1, n):
-                    out[i] = x[i, T + j]
+                    out[i] = x[uintp(i) * NEXT + T + uintp(j)]
                 out_heat[first + j, row[interval + 1]] = heat[j]
                 code = health(out)
                 if code != CONVERGED and not dead[j]:
@@ -388,15 +386,15 @@ def _march_block(
                     out[:] = np.nan
                     out_heat[first + j, row[interval + 1]] = np.nan
     for j in range(lanes):
-        end = temperature[first + j]
-        end[0] = begin[j] + change[j]
+        last = temperature[first + j]
+        last[0] = begin[j] + change[j]
         for i in range(1, n):
-            end[i] = x[i, T + j]
+            last[i] = x[uintp(i) * NEXT + T + uintp(j)]
         if not dead[j]:
-            status[first + j] = health(end)
+            status[first + j] = health(last)
             stopped[first + j] = dt.size
         if status[first + j] != CONVERGED:
-            end[:] = np.nan
+            last[:] = np.nan
 
 
 def _make(fingerprint, mode):
@@ -431,15 +429,16 @@ def _make(fingerprint, mode):
         status, stopped : int64 (column,)
             Filled, see `kernel.march_one`.
         count : int64 (column, 7)
-            Added to; the factorisations of whole blocks are counted once, at the first column.
+            Added to; the factorisations of whole blocks are counted once, at the first column, as are their solves.
         """
         _ = fingerprint, mode
         columns = temperature.shape[0]
+        width = min(WIDTH, WIDTH + columns)  # WIDTH, but not for the compiler
         for block in prange((columns + WIDTH - 1) // WIDTH):
             first = block * WIDTH
             _march_block(
                 tables, which, dt, surfaces, forced_by, parts, row, base_flux, watch, tolerance, temperature,
-                out_temperature, out_heat, status, stopped, count, first, min(WIDTH, columns - first),
+                out_temperature, out_heat, status, stopped, count, first, min(WIDTH, columns - first), width,
             )  # fmt: skip
 
     return njit(parallel=mode == "parallel", **OPTIONS)(march_columns)

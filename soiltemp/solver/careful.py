@@ -41,6 +41,7 @@ from soiltemp.solver.stage import (
     flux_difference,
     miss,
     place,
+    place_by_heat,
     potential,
     settle,
     solve,
@@ -122,9 +123,9 @@ def careful(
 ):  # fmt: skip
     """Cross one step of a column with sub-steps and layers 1 to 3; return (status, heat in at the top, heat out below).
 
-    `top` and `bottom` are the curves of the potentials at the ends; `t`, `s`, `flux` hold the state at the start and
-    are replaced by the state at the end. Positions are counted in whole units of 2**-MAX_HALVINGS of the step, so that
-    the sub-steps land on its end exactly.
+    `top` and `bottom` are the curves of the potentials at the ends; `s` and `flux` hold the state at the start and are
+    replaced, with `t`, by the state at the end. Positions are counted in whole units of 2**-MAX_HALVINGS of the step,
+    so that the sub-steps land on its end exactly.
     """
     n = t.size
     units = 1 << MAX_HALVINGS
@@ -135,8 +136,9 @@ def careful(
     last = n - 1
     start, r1, s1 = work[8, :n], work[9, :n], work[10, :n]
     r2, s2, t1 = work[11, :n], work[12, :n], work[13, :n]
+    t[0] = surface_0
+    place_by_heat(table, piece, segment, s, t)
     start[:] = t
-    place(table, piece, segment, t)
     factored[0] = 0.0
     count[RESCUES] += 1
     while position < units:

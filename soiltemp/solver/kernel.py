@@ -89,9 +89,9 @@ def _make(fingerprint):
         work = np.zeros((14, n + 1))
         piece = np.zeros((8, n + 1))
         segment = np.zeros(n, dtype=np.int64)
-        factored = np.zeros(3)
+        factored = np.zeros(1)
         s, flux, r1, s1, r2, s2 = np.zeros(n), np.zeros(n), np.zeros(n), np.zeros(n), np.zeros(n), np.zeros(n)
-        t, t1, t2 = temperature.copy(), np.zeros(n), np.zeros(n)
+        t = temperature.copy()
         t[0] = surface[0]
         place(table, piece, segment, t)
         for i in range(1, n):
@@ -106,10 +106,10 @@ def _make(fingerprint):
             out_temperature[row[0], :] = t
             out_heat_in[row[0]] = heat_in
             out_heat_out[row[0]] = heat_out
+        prepared = 0.0
         for interval in range(dt.size):
             h = dt[interval] / parts[interval]
             c = C_STAGE * h
-            inverse = 1.0 / c
             for part in range(parts[interval]):
                 change = (surface[interval + 1] - surface[interval]) / parts[interval]
                 begin = surface[interval] + change * part
@@ -121,33 +121,42 @@ def _make(fingerprint):
                 phi_2 = potential(top, begin + change)
                 psi_1 = potential(bottom, base_begin + GAMMA * base_change)
                 psi_2 = potential(bottom, base_begin + base_change)
-                for i in range(1, n):
-                    r1[i] = s[i] + c * flux[i]
-                good = settle(table, piece, segment, c, r1, c * phi_1, psi_1, work, t1, s1, factored, count)
+                if prepared != c:
+                    if prepared > 0.0:
+                        for i in range(1, n):
+                            flux[i] = (r1[i] - s[i]) / prepared
+                    for i in range(1, n):
+                        r1[i] = s[i] + c * flux[i]
+                    prepared = c
+                good = settle(table, piece, segment, c, r1, c * phi_1, psi_1, work, t, s1, factored, count)
                 if good:
-                    q_1 = phi_1 - (piece[UA, 1] + piece[U, 1] * t1[1])
-                    o_1 = piece[VA, last] + piece[V, last] * t1[last] - psi_1
+                    q_1 = phi_1 - (piece[UA, 1] + piece[U, 1] * t[1])
+                    o_1 = piece[VA, last] + piece[V, last] * t[last] - psi_1
                     for i in range(1, n):
                         r2[i] = B1 * s1[i] - B2 * s[i]
-                    good = settle(table, piece, segment, c, r2, c * phi_2, psi_2, work, t2, s2, factored, count)
+                    good = settle(table, piece, segment, c, r2, c * phi_2, psi_2, work, t, s2, factored, count)
                 if good and miss(watch, work[0], s, r1, s1, r2, s2) <= tolerance:
-                    q_2 = phi_2 - (piece[UA, 1] + piece[U, 1] * t2[1])
-                    o_2 = piece[VA, last] + piece[V, last] * t2[last] - psi_2
+                    q_2 = phi_2 - (piece[UA, 1] + piece[U, 1] * t[1])
+                    o_2 = piece[VA, last] + piece[V, last] * t[last] - psi_2
                     heat_in += h * (W_FLUX * q_0 + W_FLUX * q_1 + C_STAGE * q_2)
                     heat_out += h * (W_FLUX * o_0 + W_FLUX * o_1 + C_STAGE * o_2)
                     for i in range(1, n):
-                        flux[i] = (s2[i] - r2[i]) * inverse
+                        r1[i] = s2[i] + (s2[i] - r2[i])
                     s, s2 = s2, s
-                    t, t2 = t2, t
                     t[0] = begin + change
                     count[STEPS] += 1
                 else:
+                    for i in range(1, n):
+                        flux[i] = (r1[i] - s[i]) / c
                     status, gained, lost = careful(
                         table, top, bottom, piece, segment, h, begin, begin + change,
                         base_begin, base_begin + base_change, watch, tolerance, t, s, flux, work, factored, count,
                     )  # fmt: skip
                     if status != CONVERGED:
                         return status, interval
+                    for i in range(1, n):
+                        r1[i] = s[i] + c * flux[i]
+                    t[0] = begin + change
                     heat_in += gained
                     heat_out += lost
                     q_2 = phi_2 - (piece[UA, 1] + piece[U, 1] * t[1])

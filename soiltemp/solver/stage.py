@@ -44,6 +44,7 @@ __all__ = [
     "middle_of",
     "miss",
     "place",
+    "place_by_heat",
     "potential",
     "settle",
     "solve",
@@ -199,6 +200,19 @@ def place(table, piece, segment, t):
 
 
 @njit(**OPTIONS)
+def place_by_heat(table, piece, segment, s, t):
+    """Put every node into the segment that holds its stored heat, and fill its temperature."""
+    for i in range(1, s.size):
+        k = 0
+        while s[i] > table[i, k, A] + table[i, k, B] * table[i, k, HI]:
+            k += 1
+        segment[i] = k
+        for field in range(8):
+            piece[field, i] = table[i, k, field]
+        t[i] = (s[i] - piece[A, i]) / piece[B, i]
+
+
+@njit(**OPTIONS)
 def flux_difference(piece, surface_potential, t, flux):
     """Heat flux into each node less the flux out of it [W m-2], from the temperatures; return that out of the base."""
     n = t.size
@@ -216,19 +230,17 @@ def flux_difference(piece, surface_potential, t, flux):
 def settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, count):
     """Solve one stage by layer 1; True when every node ended in its segment.
 
-    `boundary` is c times the potential at the surface, `below` the potential below the base. `factored` is c of the
-    factors at hand (0: none) and the first and last node whose factors or piece this call made anew.
+    `boundary` is c times the potential at the surface, `below` the potential below the base. `factored[0]` is c of
+    the factors at hand, 0 where there are none.
     """
     p, f, e, k, z = work[0], work[1], work[2], work[3], work[4]
     n = t.size
     piece[UA, n] = below
     top, base = 1, n - 1
-    factored[1], factored[2] = n, 0
     for _ in range(MAX_HOLDS):
         if factored[0] != c:
             factor(c, piece, p, f, e, k, top, base)
             factored[0] = c
-            factored[1], factored[2] = min(factored[1], top), max(factored[2], base)
             count[FACTORS] += 1
         b = n - 1  # the potential below may have changed since the factors were made
         k[b] = c * (piece[VA, b - 1] - piece[UA, b] - piece[VA, b] + piece[UA, n]) - piece[A, b]

@@ -1,4 +1,4 @@
-"""The checkers of CF files, run without a network: compliance-checker (CF 1.11, ACDD 1.3) and cfchecks (CF up to 1.8)."""
+"""The checkers of CF files, without a network: compliance-checker (CF 1.11, ACDD 1.3) and cfchecks (CF up to 1.8)."""
 
 from __future__ import annotations
 
