@@ -50,44 +50,26 @@ _WAVES = tuple(
     f"annual_{what}{how}" for what in ("amplitude_ratio", "phase_lag") for how in ("", "_layered", "_uniform")
 )
 
-_ATTRIBUTES: dict[str, dict[str, str]] = {
-    "surface_annual_mean": {
-        "long_name": "mean temperature of the ground surface over whole years",
-        "units": "degree_Celsius",
-        "units_metadata": "temperature: on_scale",
-    },
-    "surface_annual_amplitude": {
-        "long_name": "amplitude of the annual wave of the ground surface",
-        "units": "K",
-        "units_metadata": "temperature: difference",
-    },
-    "damping_depth_annual": {"long_name": "damping depth of the annual wave in the top layer", "units": "m"},
-    "annual_amplitude_ratio": {"long_name": "amplitude of the annual wave by that of the surface", "units": "1"},
-    "annual_amplitude_ratio_layered": {
-        "long_name": "amplitude of the annual wave by that of the surface, layered ground without freezing",
-        "units": "1",
-    },
-    "annual_amplitude_ratio_uniform": {
-        "long_name": "amplitude of the annual wave by that of the surface, uniform ground of the top layer",
-        "units": "1",
-    },
-    "annual_phase_lag": {"long_name": "lag of the annual wave behind the surface", "units": "s"},
-    "annual_phase_lag_layered": {
-        "long_name": "lag of the annual wave behind the surface, layered ground without freezing",
-        "units": "s",
-    },
-    "annual_phase_lag_uniform": {
-        "long_name": "lag of the annual wave behind the surface, uniform ground of the top layer",
-        "units": "s",
-    },
-    "stefan_frost_depth": {"long_name": "frost depth of the coldest winter by Stefan's equation", "units": "m"},
-    "modified_berggren_frost_depth": {
-        "long_name": "frost depth of the coldest winter by the modified Berggren equation",
-        "units": "m",
-    },
-    "modified_berggren_lambda": {"long_name": "coefficient lambda of the modified Berggren equation", "units": "1"},
-    "maximum_frozen_ground_depth": {"long_name": "greatest depth of frozen ground", "units": "m"},
+_FREE = "layered ground without freezing"
+_TOP = "uniform ground of the top layer"
+_RATIO = "amplitude of the annual wave by that of the surface"
+_LAG = "lag of the annual wave behind the surface"
+_TEXTS: dict[str, tuple[str, str]] = {
+    "surface_annual_mean": ("mean temperature of the ground surface over whole years", "degree_Celsius"),
+    "surface_annual_amplitude": ("amplitude of the annual wave of the ground surface", "K"),
+    "damping_depth_annual": ("damping depth of the annual wave in the top layer", "m"),
+    "annual_amplitude_ratio": (_RATIO, "1"),
+    "annual_amplitude_ratio_layered": (f"{_RATIO}, {_FREE}", "1"),
+    "annual_amplitude_ratio_uniform": (f"{_RATIO}, {_TOP}", "1"),
+    "annual_phase_lag": (_LAG, "s"),
+    "annual_phase_lag_layered": (f"{_LAG}, {_FREE}", "s"),
+    "annual_phase_lag_uniform": (f"{_LAG}, {_TOP}", "s"),
+    "stefan_frost_depth": ("frost depth of the coldest winter by Stefan's equation", "m"),
+    "modified_berggren_frost_depth": ("frost depth of the coldest winter by the modified Berggren equation", "m"),
+    "modified_berggren_lambda": ("coefficient lambda of the modified Berggren equation", "1"),
+    "maximum_frozen_ground_depth": ("greatest depth of frozen ground", "m"),
 }
+_SCALE = {"degree_Celsius": "temperature: on_scale", "K": "temperature: difference"}
 
 
 @dataclass(frozen=True, eq=False)
@@ -184,7 +166,10 @@ def closed_forms_beside(profile: Profile, surface_temperature: xr.DataArray, res
 
 
 def _labels(name: str) -> dict[str, str]:
-    return attributes(name) if name in GLOSSARY else dict(_ATTRIBUTES[name])
+    if name in GLOSSARY:
+        return attributes(name)
+    long_name, units = _TEXTS[name]
+    return {"long_name": long_name, "units": units} | ({"units_metadata": _SCALE[units]} if units in _SCALE else {})
 
 
 # ---- the annual wave -----------------------------------------------------------------------------------------
@@ -244,12 +229,14 @@ def _waves(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
     faint = f" No lag where less than {SMALLEST_REMAINDER:g} K of the wave is left."
     fitted = "Fitted to the outputs of the last 365 days; colder and warmer years before leave a trace."
     exact = (
-        f"Exact for these layers, {state}, if no water froze and every year were alike; where water freezes, its latent "
-        "heat changes the wave, mostly to a weaker and later one."
+        f"Exact for these layers, {state}, if no water froze and every year were alike; where water freezes, its "
+        "latent heat changes the wave, mostly to a weaker and later one."
     )
     alone = f'As if all the ground were layer 1 "{top.name}", {state}, without freezing and without end.'
+    uniform: Any = nothing
+    uniform_lag: Any = nothing
     if np.isnan(found["damping_depth_annual"][0]):
-        uniform, uniform_lag, alone = nothing, nothing, found["damping_depth_annual"][1]
+        alone = found["damping_depth_annual"][1]
     else:
         uniform, uniform_lag = amplitude_ratio(depths, diffusivity, YEAR), phase_lag(depths, diffusivity, YEAR)
     values = (
@@ -344,8 +331,7 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
         "freezing_season": (season, when if winter.index else "The surface never freezes."),
         "maximum_frost_depth": (
             float(frost_depth(result).max()),
-            "Numerical, of all outputs: the deepest line of 0 degC; water freezes below it only if its freezing point "
-            "is lower than the ground.",
+            "Numerical, of all outputs: the deepest line of 0 degC; the ice does not reach as deep.",
         ),
         "maximum_frozen_ground_depth": (
             (float(result["frozen_ground_depth"].max()), "Numerical, of all outputs: the depth reckoned from the ice.")

@@ -97,10 +97,12 @@ def ice_depth(depths: Floats, share: Floats) -> Floats:
     upto = node <= deepest[..., None]
     frozen = (share >= 0.5) & upto
     gap = ~icy & upto
-    # Upper end of the count; where a zone is nowhere half frozen, its first node.
+    # Upper end of the count. First frost at the surface may be less than half a node; a remnant below ground that is
+    # nowhere half frozen counts as thawed.
     start_frozen = np.where(frozen.any(axis=-1), last - np.argmax(frozen[..., ::-1], axis=-1), -1)
     start_zone = np.where(gap.any(axis=-1), last - np.argmax(gap[..., ::-1], axis=-1) + 1, 0)
     start = np.maximum(start_frozen, start_zone)
     counted = (node >= start[..., None]) & upto
     below = np.sum(share * volume, axis=-1, where=counted)
-    return np.asarray(np.where(icy.any(axis=-1), bounds[start] + below, 0.0))
+    present = icy.any(axis=-1) & ((start_frozen >= start_zone) | (start_zone == 0))
+    return np.asarray(np.where(present, bounds[start] + below, 0.0))
