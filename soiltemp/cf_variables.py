@@ -80,7 +80,7 @@ def file_attribute(owner: str, name: Any, value: Any) -> Any:
         return _clean_text(where, value)
     if isinstance(value, (list, tuple)) and value and all(isinstance(item, str) for item in value):
         return [_clean_text(where, item) for item in value]
-    is_number = isinstance(value, (int, float, np.number, np.ndarray, list, tuple)) and not isinstance(value, bool)
+    is_number = isinstance(value, (int, float, np.number, np.ndarray, list, tuple))
     array = np.asarray(value if is_number else None)
     if array.dtype.kind not in "fiu" or array.ndim > 1 or array.size == 0:
         found = f"{type(value).__name__} {str(value)[:40]!r}"

@@ -118,7 +118,7 @@ class _Ending:
         elif isinstance(error, SolverError):
             self.status, text = OUR_FAULT, f"our fault, not that of the file: {error}"
         elif isinstance(error, SoilTempError):
-            self.status, text = BAD_INPUT, str(error)
+            self.status, text = BAD_INPUT, f"{error} ({kept})" if self.written else str(error)
         else:
             self.status = OUR_FAULT
             text = (
@@ -201,9 +201,9 @@ def _run(options: argparse.Namespace, ending: _Ending) -> None:
     if climate is None:
         climate = climate_of(site)
     surface_of(site, climate)
+    _prepare(None if options.quiet else sys.stderr)
     if not options.quiet:
         ending.progress = _Progress(sys.stderr)
-    _prepare(None if options.quiet else sys.stderr)
     result = run(site, progress=ending.progress, air_temperature=climate)
     if ending.progress is not None:
         ending.progress.clear()

@@ -274,7 +274,9 @@ def _numerical_wave(surface: _Surface, result: xr.Dataset) -> tuple[NDArray[np.c
 def _layered_wave(profile: Profile, depths: Floats, state: Literal["thawed", "frozen"]) -> tuple[Floats, Floats]:
     """Amplitude ratio and lag [s], counted on past a year, of the layered solution."""
     between = [np.linspace(top, base, 200) for top, base in pairwise(profile.interfaces)]
-    every = np.unique(np.concatenate([*between, depths]))
+    # interfaces are rounded to a nanometre and may pass the sum of the layers
+    depths = np.minimum(depths, sum(layer.thickness for layer in profile.layers))
+    every = np.unique(np.concatenate([*(piece[:-1] for piece in between), depths]))
     ratio = layered_periodic(profile, YEAR, every, state=state)
     lag = -np.unwrap(np.angle(ratio)) * YEAR / (2.0 * np.pi)
     at = np.searchsorted(every, depths)

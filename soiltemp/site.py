@@ -22,6 +22,7 @@ from soiltemp.climate.moments import read_duration, read_moment, show_moment, sh
 from soiltemp.climate.options import ReadingOptions
 from soiltemp.climate.periodic import periodic_surface
 from soiltemp.climate.quality import IMPOSSIBLE
+from soiltemp.constants import YEAR
 from soiltemp.errors import DataFileError, InputError, SoilTempError, message
 from soiltemp.glossary import GLOSSARY
 from soiltemp.ground import Layer, Profile
@@ -37,6 +38,9 @@ LARGEST_FILE = 1_000_000
 
 MOST_OUTPUTS = 200_000
 """Most output times of a study: the temperatures of all nodes are held in memory for each."""
+
+LONGEST_STUDY = 200.0 * YEAR
+"""Longest study [s]; times in nanoseconds span 292 years."""
 
 _RECORD_OPTIONS = (
     *("column", "unit", "time_column", "time_zone", "date_order", "values", "stamp_at"),
@@ -273,6 +277,7 @@ def _parse(text: str, folder: Path, source: str) -> Site:
 
 
 def _check_size(size: int, source: str) -> None:
+    """Refuse what is too large [bytes] to be a site file."""
     if size > LARGEST_FILE:
         remedy = "check that this is the site file and not the weather record"
         raise DataFileError(message(source, "more than 1 MB", "a site file of up to 1 MB", remedy))
@@ -307,6 +312,7 @@ def _toml(text: str, source: str) -> dict[str, Any]:
 
 
 def _check_sections(tables: dict[str, Any], source: str) -> None:
+    """Refuse sections, and keys outside any, that a site file does not have."""
     shown = ", ".join("[[layer]]" if name == "layer" else f"[{name}]" for name in _SECTIONS)
     for name, value in tables.items():
         if name in _SECTIONS:
@@ -570,6 +576,9 @@ def _study(table: _Table, profile: Profile) -> Study:
     if length < 7200.0:
         found = f"start {show_moment(start)} and end {show_moment(end)}"
         raise InputError(message(table.place, found, "an end two hours or more after the start", "correct them"))
+    if length > LONGEST_STUDY:
+        found = f"{length / YEAR:.0f} years from {show_moment(start)} to {show_moment(end)}"
+        raise InputError(message(table.place, found, f"up to {LONGEST_STUDY / YEAR:.0f} years", "shorten the study"))
     every = table.duration("output_every", low=60.0, high=length) if "output_every" in table else min(86400.0, length)
     if length / every > MOST_OUTPUTS:
         found = f"{length / every:.0f} outputs from {show_moment(start)} to {show_moment(end)}"

@@ -17,7 +17,7 @@ import soiltemp.cli as cli
 from soiltemp.cautions import CAUTION_SHORT, CAUTIONS
 from soiltemp.cli import main
 from soiltemp.cross_check import closed_form_lines
-from soiltemp.errors import SolverError
+from soiltemp.errors import DataFileError, SolverError
 from soiltemp.frost import days_below, extremes
 from soiltemp.netcdf import open_result
 from soiltemp.site import read_site
@@ -153,6 +153,20 @@ def test_check_of_other_forms_of_a_site(site_file: pathlib.Path, capsys: pytest.
     site_file.write_text(TEXT.replace('[line]\ncover = "1.8 m"\noutside_diameter = "0.3 m"', ""))
     assert main(["check", str(site_file)]) == 0
     assert "Line: none" in said(capsys)[0]
+
+
+def test_check_of_a_record_of_the_surface(site_file: pathlib.Path, capsys: pytest.CaptureFixture[str]) -> None:
+    days = np.arange("2019-07-01", "2020-06-30", dtype="datetime64[D]")
+    rows = [f"{day},{10.0 * np.sin(number / 58.0):.2f}" for number, day in enumerate(days)]
+    (site_file.parent / "s.csv").write_text("date,t [degC]\n" + "\n".join(rows) + "\n")
+    periodic = 'periodic = { mean = "4 degC", amplitude = "17 K", coldest = "01-20" }'
+    text = TEXT.replace(periodic, 'surface_temperature = "s.csv"').replace("freezing_n_factor = 0.5", "")
+    site_file.write_text(text.replace("thawing_n_factor = 0.8", 'cover = "grass"'))
+    assert main(["check", str(site_file)]) == 0
+    out = said(capsys)[0]
+    assert "Climate: record of the ground surface temperature" in out
+    assert "Ground surface: grass" in out
+    assert "no n-factors: the record is that of the surface itself" in out
 
 
 # --- run ----------------------------------------------------------------------------------------------------
@@ -402,6 +416,18 @@ def test_ctrl_c_after_a_file_was_written_says_which(
     assert said(capsys)[1] == f"soiltemp: stopped by Ctrl-C; already written: {target}\n"
 
 
+def test_picture_that_fails_leaves_the_result_and_says_so(
+    site_file: pathlib.Path, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr(cli, "_draw", raising(DataFileError("page: found no room; allowed: room; make room.")))
+    target = site_file.parent / "r.nc"
+    assert (
+        main(["run", str(site_file), "--quiet", "-o", str(target), "--picture", str(target.with_suffix(".html"))]) == 2
+    )
+    assert said(capsys)[1] == f"soiltemp: page: found no room; allowed: room; make room. (already written: {target})\n"
+    assert target.exists()
+
+
 def test_solver_that_stops_is_our_fault(
     site_file: pathlib.Path, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
 ) -> None:
@@ -487,6 +513,21 @@ def test_in_a_file_a_line_now_and_then(clock: list[float]) -> None:
     assert "\r" not in log.getvalue()
 
 
+def test_progress_and_notices_go_to_stderr_unless_quiet(
+    site_file: pathlib.Path, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    asked: list[object] = []
+    monkeypatch.setattr(cli, "_prepare", asked.append)
+    monkeypatch.setattr(cli, "_QUIET_FOR", -1.0)
+    assert main(["run", str(site_file)]) == 0
+    out, err = said(capsys)
+    assert err.startswith("marching: ")
+    assert "marching" not in out
+    assert main(["run", str(site_file), "--quiet"]) == 0
+    assert said(capsys)[1] == ""
+    assert [stream is None for stream in asked] == [False, True]
+
+
 def test_compiling_is_announced(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(cli, "_COMPILING_FOR", 0.02)
     monkeypatch.setattr(cli, "solve", lambda *arguments, **options: time.sleep(0.3))
@@ -497,12 +538,19 @@ def test_compiling_is_announced(monkeypatch: pytest.MonkeyPatch) -> None:
 
 
 def test_compiled_solver_is_not_announced(monkeypatch: pytest.MonkeyPatch) -> None:
-    cli._prepare(None)
+    monkeypatch.setattr(cli, "_COMPILING_FOR", 0.1)
+    monkeypatch.setattr(cli, "solve", lambda *arguments, **options: None)
     stream = io.StringIO()
-    begin = time.monotonic()
     cli._prepare(stream)
+    time.sleep(0.3)
     assert stream.getvalue() == ""
-    assert time.monotonic() - begin < cli._COMPILING_FOR
+
+
+def test_the_solver_itself_is_prepared() -> None:
+    cli._prepare(None)
+    begin = time.monotonic()
+    cli._prepare(None)
+    assert time.monotonic() - begin < cli._COMPILING_FOR  # some ms; nothing is compiled twice
 
 
 # --- as a program of its own --------------------------------------------------------------------------------

@@ -1,4 +1,4 @@
-"""The pictures: what they draw are the numbers of the result, in the units asked for, and only what differs is renewed."""
+"""The pictures: they draw the numbers of the result, in the units asked for, and renew only what differs."""
 
 from __future__ import annotations
 
@@ -38,13 +38,20 @@ MAKERS = {
 
 
 def sources(drawn: Any) -> list[ColumnDataSource]:
-    return list(drawn.select(ColumnDataSource))
+    """The sources of a figure, in the order in which they are drawn."""
+    return list({renderer.data_source.id: renderer.data_source for renderer in drawn.renderers}.values())
 
 
 def source_with(drawn: Any, *columns: str) -> ColumnDataSource:
     found = [source for source in sources(drawn) if set(columns) <= set(source.data)]
     assert len(found) == 1, [list(source.data) for source in sources(drawn)]
     return found[0]
+
+
+def curves_of(drawn: Any) -> dict[str, Any]:
+    """Data of the curves of an envelope; its few-depths markers are in a source of the same columns."""
+    (curves,) = (s.data for s in sources(drawn) if "mean_temperature" in s.data and len(s.data["depth"]) > 20)
+    return dict(curves)
 
 
 def polygons(drawn: Any) -> dict[str, Any]:
@@ -72,11 +79,7 @@ def texts(drawn: Any) -> str:
 def test_envelope_draws_the_envelope_of_the_result() -> None:
     result = wave()
     drawn, _ = make_envelope(result)
-    curves = next(
-        source.data
-        for source in sources(drawn)
-        if "minimum_temperature" in source.data and len(source.data["depth"]) > 20
-    )
+    curves = curves_of(drawn)
     bounds = frost.envelope(result)
     for name in ("minimum_temperature", "mean_temperature", "maximum_temperature"):
         np.testing.assert_array_equal(curves[name], bounds[name].values.astype(np.float32))
@@ -127,11 +130,22 @@ def test_thaw_from_above_is_the_upper_edge_of_the_deepest_frozen_zone() -> None:
     np.testing.assert_array_equal(drawn["depth"], edge.astype(np.float32))
 
 
+def test_night_frost_above_does_not_hide_the_old_frost_below() -> None:
+    depth = np.arange(0.0, 1.01, 0.1)
+    night = np.interp(depth, [0.0, 0.2, 0.5, 0.7, 1.0], [-1.0, 1.0, -1.0, -1.0, 1.0])  # frozen to 0.1, and from 0.35
+    day = np.interp(depth, [0.0, 0.2, 0.5, 0.7, 1.0], [3.0, 1.0, -1.0, -1.0, 1.0])
+    times = np.array(["2021-04-01T05", "2021-04-01T15"], dtype="datetime64[ns]")
+    result = xr.Dataset(
+        {"ground_temperature": (("time", "depth"), np.stack([night, day]))}, {"time": times, "depth": depth}
+    )
+    np.testing.assert_allclose(thawed_depth(result), [0.35, 0.35], atol=1e-9)
+
+
 def test_frozen_ground_covers_as_much_as_the_zones_say() -> None:
     """Area of the polygons (shoelace) against thickness of the zones summed over time.
 
-    Both follow straight lines between the same depths and times; at the first and last day of a zone the polygon ends in a
-    slope and the sum in a step, a day of thin ground each: 1 % of the area is ample.
+    Both follow straight lines between the same depths and times; at the first and last day of a zone the polygon ends
+    in a slope and the sum in a step, a day of thin ground each: 1 % of the area is ample.
     """
     result = wave()
     ground = polygons(make_frost(result)[0])
@@ -283,7 +297,7 @@ def test_depth_grows_downward_from_the_surface(name: str) -> None:
 
 def test_us_units() -> None:
     result = wave()
-    curves = next(s.data for s in sources(make_envelope(result, units="us")[0]) if "mean_temperature" in s.data)
+    curves = curves_of(make_envelope(result, units="us")[0])
     np.testing.assert_allclose(curves["depth"], result["depth"] / FOOT, rtol=FLOAT32)
     np.testing.assert_allclose(
         curves["minimum_temperature"], frost.envelope(result)["minimum_temperature"] * 1.8 + 32.0, rtol=FLOAT32
@@ -496,6 +510,13 @@ def test_missing_values_are_refused(name: str) -> None:
         make_frost(wave().assign(frost_depth=wave()["frost_depth"].where(lambda d: d < 1.0)))
 
 
+@pytest.mark.parametrize("name", list(MAKERS))
+def test_other_datasets_are_refused(name: str) -> None:
+    for other in (wave().drop_vars("ground_temperature"), wave().isel(depth=0), wave().isel(time=[])):
+        with pytest.raises(InputError, match=r"^ground_temperature: found .*; allowed: .*; pass what solve\(\)"):
+            MAKERS[name](other)
+
+
 @pytest.mark.parametrize("depths", [[], [2.0, 1.0], [1.0, 1.0], list(range(1, 10))])
 def test_depths_in_no_order_are_refused(depths: list[float]) -> None:
     with pytest.raises(InputError, match=r"^depths: found .*; allowed: one to 8, each deeper.*sort them\.$"):
@@ -519,7 +540,7 @@ def test_update_renews_each_source_at_most_once(name: str) -> None:
     assert set(counts.values()) == {1}
     assert {s.id for s in sources(drawn)} == {s.id for s in before}
     fresh = sources(MAKERS[name](wave(mean=3.0))[0])
-    for old, new in zip(sorted(before, key=lambda s: s.id), sorted(fresh, key=lambda s: s.id), strict=True):
+    for old, new in zip(before, fresh, strict=True):
         assert old.data.keys() == new.data.keys()
         assert drawing._same_columns(old.data, new.data)
 

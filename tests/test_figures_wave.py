@@ -20,7 +20,7 @@ def wave(
     hours: int = 24,
     errors: bool = True,
 ) -> xr.Dataset:
-    """A wave coldest at the surface on 20 January, damped over 2 m; by its lag the ground thaws from above in spring."""
+    """A wave coldest at the surface on 20 January, damped over 2 m; for its lag ground thaws from above in spring."""
     depth = np.arange(0.0, 8.01, 0.1) if depths is None else np.asarray(depths)
     times = np.datetime64(start, "ns") + np.arange(days * 24 // hours) * np.timedelta64(hours, "h")
     angle = 2.0 * np.pi * ((times - np.datetime64("2021-01-20")) / DAY)[:, None] / 365.0 - depth / 2.0

@@ -87,13 +87,12 @@ def test_saving_again_changes_nothing(site_file, tmp_path):
     assert told[0]["study_sha256"] == told[1]["study_sha256"]
 
 
-def test_save_leaves_the_result_as_it_was(site, tmp_path):
-    before = site.copy(deep=True)
-    for variable in before.variables.values():
-        variable.encoding = {}
-    save(site, tmp_path / "a.nc")
-    xr.testing.assert_identical(site, before)
-    assert all(not variable.encoding for variable in site.variables.values())
+def test_save_leaves_the_result_as_it_was(tmp_path):
+    result = with_site(bare_result())
+    save(result, tmp_path / "a.nc")
+    xr.testing.assert_identical(result, with_site(bare_result()))
+    assert not result.encoding
+    assert all(not variable.encoding for variable in result.variables.values())
 
 
 @pytest.mark.parametrize(
@@ -120,6 +119,8 @@ def test_dates_texts_and_whole_numbers_among_the_results(bare, tmp_path):
     save(result, tmp_path / "d.nc")
     opened = open_result(tmp_path / "d.nc")
     xr.testing.assert_equal(opened, rounded(result))
+    with netCDF4.Dataset(tmp_path / "d.nc") as file:
+        assert file["steps"].dtype == np.int32
     assert compliance_messages(tmp_path / "d.nc", "cf:1.11", tmp_path) == []
     assert cfchecks_messages(tmp_path / "d.nc", tmp_path) == []
 
@@ -133,6 +134,8 @@ def test_attributes_of_all_sorts(bare, tmp_path):
     for name, value in kinds.items():
         assert np.array_equal(opened.attrs[name], value), name
     assert opened["frost_depth"].attrs["count"] == 4
+    # 64-bit whole numbers are unknown to CF before 1.9
+    assert opened.attrs["count"].dtype == np.int32
 
 
 def test_own_title_is_kept_and_computed_attributes_are_not(bare, tmp_path):
@@ -205,6 +208,7 @@ def test_what_the_checkers_miss(site, site_file):
         for name in ("time", "depth", "latitude", "longitude", "time_bnds"):
             assert "_FillValue" not in file[name].ncattrs(), name
             assert file[name].dtype == np.float64, name
+        assert file["damping_depth_annual"][...] is np.ma.masked  # NaN in the result: the fill value in the file
         assert file["time_bnds"].ncattrs() == []
         assert file["ground_temperature"].dtype == np.float32
         filters = file["ground_temperature"].filters()
@@ -219,6 +223,16 @@ def test_means_have_bounds_back_to_the_output_before(site_file):
     assert np.array_equal(bounds[:, 1], times)
     assert np.array_equal(bounds[1:, 0], times[:-1])
     assert bounds[0, 0] == bounds[0, 1]
+
+
+def test_attributes_that_a_result_lacks_come_from_the_glossary(bare, tmp_path):
+    result = bare.drop_attrs().assign_coords(latitude=-45.0, longitude=170.5)
+    result["time"].attrs, result["depth"].attrs = {}, {}
+    save(result, tmp_path / "a.nc")
+    assert compliance_messages(tmp_path / "a.nc", "cf:1.11", tmp_path) == []
+    with netCDF4.Dataset(tmp_path / "a.nc") as file:
+        assert file["ground_temperature"].standard_name == "temperature_in_ground"
+        assert file["latitude"].units == "degrees_north"
 
 
 def test_no_site_no_station(bare_file):

@@ -210,6 +210,8 @@ CASES = {
         r'layer 2 "b", material "b", conductivity thawed', "900", "0.005 to 500", "check"),
     "end before start": ('"2020-07-01"', '"2018-07-01"',
         r"a\.toml, study", "2019-07-01 and end 2018-07-01", "after the start", "correct"),
+    "study of centuries": ('"2019-07-01"', '"1819-07-01"',
+        r"a\.toml, study", "201 years from 1819-07-01 to 2020-07-01", "up to 200 years", "shorten"),
     "no start": ('start = "2019-07-01"', "", r"study\.start", "nothing", "first day", "add start"),
     "date of no month": ('"2019-07-01"', '"2019-17-01"', r"study\.start", "2019-17-01", "a date", "write it as"),
     "date in another order": ('"2019-07-01"', '"07/01/2019"', r"study\.start", "07/01/2019", "a date", "2019-07-01"),
@@ -289,6 +291,13 @@ def test_run_refuses_as_check_does(tmp_path: pathlib.Path, capsys: pytest.Captur
     where = refusal(["run", str(tmp_path / "a.toml"), "-o", str(tmp_path / "r.nc")], capsys)[0]
     assert where == "a.toml, site.latitude"
     assert not (tmp_path / "r.nc").exists()
+
+
+def test_starting_temperatures_in_disorder(tmp_path: pathlib.Path, capsys: pytest.CaptureFixture[str]) -> None:
+    rows = ", ".join(f'{{ depth = "{depth} m", temperature = "4 degC" }}' for depth in (0, 5, 3, 20))
+    (tmp_path / "a.toml").write_text(GOOD + f"initial = [{rows}]\n")
+    where, found, *_ = refusal(["check", str(tmp_path / "a.toml")], capsys)
+    assert (where, found) == ("a.toml, study.initial", "depths 0, 5, 3, 20 m")
 
 
 def test_single_brackets(tmp_path: pathlib.Path, capsys: pytest.CaptureFixture[str]) -> None:

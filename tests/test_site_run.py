@@ -89,18 +89,26 @@ def same_bits(one: xr.Dataset, two: xr.Dataset) -> None:
     assert one.attrs == two.attrs
 
 
-def test_a_run_is_a_solution_made_by_hand(result: xr.Dataset) -> None:
-    air = soiltemp.periodic_surface(4.0, 17.0, "01-20", start="2019-07-01", years=1).sel(
-        time=slice("2019", "2020-06-29")
+def test_a_run_is_a_solution_made_by_hand() -> None:
+    """Every setting of the study differs from what the solver takes where none is given."""
+    year = soiltemp.periodic_surface(4.0, 17.0, "01-20", start="2019-07-01", years=1)
+    surface = surface_temperature_from_air(
+        year.sel(time=slice("2019-07-01", "2020-06-30T00:00")), freezing_n_factor=0.5, thawing_n_factor=0.8
     )
-    last = soiltemp.periodic_surface(4.0, 17.0, "01-20", start="2019-07-01", years=1).sel(time=["2020-06-30"])
-    surface = surface_temperature_from_air(xr.concat([air, last], "time"), freezing_n_factor=0.5, thawing_n_factor=0.8)
     soil = soiltemp.Soil(1500.0, 0.24, "fine")
     profile = soiltemp.Profile([soiltemp.Layer(soil, 3.0), soiltemp.Layer(soiltemp.material("granite"), 9.0)])
-    by_hand = soiltemp.solve(profile, surface, initial=5.0, output_every="1D", max_step="3h")
+    depths = [0.5, 1.0, 1.8, 1.95, 2.1]
+    settings = {"base_heat_flux": 0.06, "output_every": "12h", "max_step": "20 min", "tolerance": 0.001}
+    by_hand = soiltemp.solve(profile, surface, initial=5.0, depths=depths, **settings)
+    study = """base_heat_flux = "0.06 W/m^2"
+output_every = "12 hours"
+max_step = "20 min"
+tolerance = "1 mK"
+depths = ["0.5 m", "1 m"]"""
+    result = run(made(('output_every = "1 day"\nmax_step = "3 hours"', study)))
     for name in by_hand.variables:
         assert np.array_equal(result[name].values, by_hand[name].values), name
-    assert result.sizes["time"] == 366
+    assert result.sizes["time"] == 2 * 365 + 1
 
 
 def test_rock_under_a_periodic_surface_follows_the_damping_depth() -> None:
@@ -149,6 +157,11 @@ def test_line_is_read_off_the_solution(result: xr.Dataset) -> None:
 def test_frost_that_passes_the_crown_has_a_negative_margin() -> None:
     found = run(made(('cover = "1.8 m"', 'cover = "0.6 m"')))
     assert float(found.frost_margin) < -0.2
+    days = (found.time - found.time[0]) / np.timedelta64(1, "D")
+    there = np.array([np.interp(0.6, found.depth, row) for row in found.ground_temperature.values])
+    fine = np.linspace(0.0, float(days[-1]), 200_001)
+    below = float(days[-1]) * np.mean(np.interp(fine, days, there) < 0.0)
+    assert float(found.crown_days_below_freezing) == pytest.approx(below, abs=0.01)
     assert float(found.crown_days_below_freezing) > 30.0
     assert float(found.crown_minimum_temperature) < 0.0
 
@@ -265,6 +278,12 @@ def test_periodic_climate_longer_than_a_year() -> None:
     air = climate_of(made(('end = "2020-06-30"', 'end = "2021-09-01 00:30"')))
     assert str(air.time.values[-1])[:16] == "2021-09-01T00:00"
     assert air.values[365 * 24] == air.values[0]
+
+
+def test_periodic_climate_with_a_daily_wave() -> None:
+    air = climate_of(made(('coldest = "01-20"', 'coldest = "01-20", daily_amplitude = "6 K"')))
+    by_hand = soiltemp.periodic_surface(4.0, 17.0, "01-20", "2019-07-01", 1, daily_amplitude=6.0)
+    assert np.array_equal(air.values, by_hand.sel(time=air.time).values)
 
 
 # --- the start of the run -----------------------------------------------------------------------------------

@@ -78,7 +78,8 @@ def test_temperature_follows_neumann(name):
 
 def test_wide_freezing_range_parts_the_line_from_the_ice():
     """With 0.5 K the 0 degC line truly runs ahead of the frozen ground: that is no error of the grid, as a grid four
-    times as fine says the same within 5 mm. So the project reports both."""
+    times as fine says the same, of the line within 5 mm and of the ice within half an element (a node counts as frozen
+    from half its ice on). So the project reports both."""
     case = CASES["silt"]
     material = material_of(case, 0.5)
     fine = column_of(uniform(material, 25.0), 25.0 * np.linspace(0.0, 1.0, 2001) ** 2)
@@ -87,7 +88,7 @@ def test_wide_freezing_range_parts_the_line_from_the_ice():
     ice = float(ice_depth(fine.depths, fine.frozen_share(marched.temperature))[-1])
     result = solve(uniform(material, 25.0), constant(-10.0, 60), initial=5.0)
     assert float(result.frost_depth[-1]) == pytest.approx(line, abs=0.005)
-    assert float(result.frozen_ground_depth[-1]) == pytest.approx(ice, abs=0.005)
+    assert float(result.frozen_ground_depth[-1]) == pytest.approx(ice, abs=0.0125)
     front = float(neumann_front(60 * DAY, **exact_of(case)))
     assert ice < front < line
     assert 0.05 < line - ice < 0.20

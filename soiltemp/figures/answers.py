@@ -12,6 +12,7 @@ from soiltemp.figures.display import Display, date
 from soiltemp.figures.reading import (
     BuriedLine,
     Floats,
+    check_field,
     frost_curves,
     milliseconds,
     reaches_base,
@@ -52,6 +53,7 @@ def answers(result: xr.Dataset, shown: Display, line: BuriedLine | None) -> tupl
     line : BuriedLine or None
         The buried line, if any.
     """
+    check_field(result)
     frost, frozen = frost_curves(result)
     times = result["time"].values
     freezing = f"{shown.freezing:.0f} {shown.temperature_unit}"

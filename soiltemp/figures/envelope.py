@@ -32,7 +32,7 @@ from soiltemp.figures.drawing import (
     nice_limits,
     packed,
 )
-from soiltemp.figures.reading import BuriedLine, Stratum, layers_of, line_of, picture_depth
+from soiltemp.figures.reading import BuriedLine, Stratum, check_field, layers_of, line_of, picture_depth
 
 __all__ = ["make_envelope"]
 
@@ -116,6 +116,7 @@ def _picture(
     size: tuple[int, int],
 ) -> Picture:
     rows, columns = size
+    check_field(result)
     bounds = frost.envelope(result)
     names = ("minimum_temperature", "mean_temperature", "maximum_temperature")
     curves: Columns = {name: packed(shown.temperature(bounds[name])) for name in names}

@@ -40,6 +40,7 @@ from soiltemp.figures.reading import (
     BuriedLine,
     Floats,
     block_means,
+    check_field,
     frost_curves,
     has_fine_depths,
     line_of,
@@ -96,6 +97,7 @@ def make_frost(
         A result without ground temperature, or an argument that cannot be right.
     """
     shown = display(units)
+    check_field(result)
     is_sky = surface == "shown" and surface_of(result) is not None
 
     def read(new: xr.Dataset, new_line: Any) -> tuple[Picture, tuple[float, float]]:
@@ -125,6 +127,7 @@ def make_frost(
 def _picture(
     result: xr.Dataset, line: BuriedLine | None, shown: Display, deepest: Any, is_sky: bool
 ) -> tuple[Picture, tuple[float, float]]:
+    check_field(result)
     frost, frozen = frost_curves(result)
     known_thaw = thawed_depth(result)
     thawed = np.full(frost.size, np.nan) if known_thaw is None else known_thaw

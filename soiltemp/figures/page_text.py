@@ -10,6 +10,8 @@ STYLE = """
 body { margin: 0; color: var(--ink); background: #fff; font: 15px/1.5 Arial, "Liberation Sans", Helvetica, sans-serif; }
 main { width: 100%; max-width: 996px; margin: 0 auto; padding: 0 16px 48px; }
 header { border-bottom: 6px solid var(--soil); padding: 24px 0 12px; margin-bottom: 18px; }
+.trust td:first-child { width: 32%; }
+.trust td:nth-child(2) { width: 26%; }
 h1 { font-size: 26px; line-height: 1.25; margin: 0 0 4px; overflow-wrap: anywhere; }
 h2 { font-size: 19px; margin: 34px 0 10px; }
 header p { margin: 0; color: var(--quiet); }
@@ -129,7 +131,7 @@ Object.defineProperty(window, "devicePixelRatio", { value: Math.max(2, window.de
 <h2>How far to trust these numbers</h2>
 <p>The figures below tell how well the equations were solved, and how simpler formulas compare. How well the layers, the
 weather and the surface are known is another matter and mostly the larger doubt: see the cautions.</p>
-<div class="scroll"><table>
+<div class="scroll"><table class="trust">
 <thead><tr><th>what</th><th>how much</th><th>meaning</th></tr></thead>
 <tbody>
 {% for row in trust %}

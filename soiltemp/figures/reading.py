@@ -19,6 +19,7 @@ __all__ = [
     "BuriedLine",
     "Stratum",
     "block_means",
+    "check_field",
     "freezing_lines",
     "frost_curves",
     "has_fine_depths",
@@ -138,6 +139,15 @@ def layers_of(result: xr.Dataset, given: Any = None) -> tuple[Stratum, ...]:
 
 def _text(value: Any) -> str:
     return value.decode("utf-8", "replace") if isinstance(value, bytes) else str(value)
+
+
+def check_field(result: xr.Dataset) -> None:
+    """Refuse a result whose ground temperature is missing, has other dimensions or missing values."""
+    field = result.get("ground_temperature")
+    if field is None or set(field.dims) != {"time", "depth"} or field.size == 0 or not bool(np.isfinite(field).all()):
+        found = "none" if field is None else f"dimensions {field.dims}, or missing values"
+        allowed = "finite temperatures in time and depth"
+        raise InputError(message("ground_temperature", found, allowed, "pass what solve() or open_result() returned"))
 
 
 def surface_of(result: xr.Dataset) -> Floats | None:

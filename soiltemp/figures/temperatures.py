@@ -21,7 +21,7 @@ from soiltemp.figures.drawing import (
     packed,
     style_time_axis,
 )
-from soiltemp.figures.reading import milliseconds, surface_of, temperature_there
+from soiltemp.figures.reading import check_field, milliseconds, surface_of, temperature_there
 from soiltemp.units import to_si
 
 __all__ = ["make_temperatures"]
@@ -77,6 +77,7 @@ def make_temperatures(
     """
     shown = display(units)
     places = _places(depths)
+    check_field(result)
     is_surface = surface == "shown" and surface_of(result) is not None
     sheet = Sheet(
         _picture(result, places, shown, is_surface),
@@ -115,6 +116,7 @@ def _places(depths: Any) -> list[float]:
 
 
 def _picture(result: xr.Dataset, places: list[float], shown: Display, is_surface: bool) -> Picture:
+    check_field(result)
     times = milliseconds(result["time"])
     series: Columns = {"time": times}
     for number, place in enumerate(places):

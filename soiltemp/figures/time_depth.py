@@ -33,6 +33,7 @@ from soiltemp.figures.reading import (
     BuriedLine,
     Floats,
     block_means,
+    check_field,
     freezing_lines,
     frost_curves,
     has_fine_depths,
@@ -137,6 +138,7 @@ def _blended(colors: tuple[str, ...], count: int) -> list[str]:
 def _picture(
     result: xr.Dataset, line: BuriedLine | None, shown: Display, deepest: Any
 ) -> tuple[Picture, dict[str, Any]]:
+    check_field(result)
     frozen = frost_curves(result)[1]
     if result.sizes["depth"] < 2:
         raise InputError(
@@ -148,10 +150,6 @@ def _picture(
     kept = depths <= depths[min(int(np.searchsorted(depths, to_depth)), depths.size - 1)]
     depths, field = depths[kept], field[:, kept]
     times, field, count = block_means(every_time, field, MOST_COLUMNS)
-    if not np.array_equal(field.shape, (times.size, depths.size)) or not np.isfinite(field).all():
-        raise InputError(
-            message("ground_temperature", "missing values", "finite temperatures", "drop the times that have none")
-        )
     day = 86400e3
     ends = (float(every_time[0]), float(every_time[-1]) if every_time.size > 1 else float(every_time[0]) + day)
     values = shown.temperature(field)
@@ -273,7 +271,7 @@ def _draw(sheet: Sheet, mapper: Any, ticker: Any, shown: Display) -> None:
     frozen = drawn.line("time", "depth", source=sources["frozen"], line_color=INK, line_width=1.4, line_dash="dotted")
     band = drawn.quad(
         left="left", right="right", top="top", bottom="bottom", source=sources["line"],
-        fill_color=PAPER, fill_alpha=0.35, line_color=LINE, line_width=1.6, line_dash="dashed",
+        fill_color=PAPER, fill_alpha=0.12, line_color=LINE, line_width=1.6, line_dash="dashed",
     )  # fmt: skip
     plate: dict[str, Any] = {
         "text_font": value(FONT), "text_font_size": SMALL, "text_baseline": "middle", "padding": 2,
