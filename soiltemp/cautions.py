@@ -4,7 +4,9 @@ from __future__ import annotations
 
 __all__ = ["CAUTIONS", "CAUTION_SHORT"]
 
-CAUTION_SHORT = "An aid to judgement, not a design: local codes and the licensed engineer in charge decide the depth of cover."
+CAUTION_SHORT = (
+    "An aid to judgement, not a design: local codes and the licensed engineer in charge decide the depth of cover."
+)
 
 CAUTIONS: tuple[str, ...] = (
     CAUTION_SHORT,

@@ -8,7 +8,6 @@ from __future__ import annotations
 import argparse
 import os
 import sys
-import textwrap
 import threading
 import time
 import traceback
@@ -21,28 +20,21 @@ from typing import NoReturn, TextIO
 import numpy as np
 import xarray as xr
 
-from soiltemp.cautions import CAUTION_SHORT, CAUTIONS
-from soiltemp.climate import freezing_index, thawing_index
-from soiltemp.climate.moments import interval_text, show_moment, show_name, show_value
-from soiltemp.climate.series import temperature_series
-from soiltemp.constants import DAY, HOUR
-from soiltemp.cross_check import closed_form_lines
+from soiltemp.cautions import CAUTION_SHORT
+from soiltemp.cli_text import summary, understood
+from soiltemp.climate.moments import show_name, show_value
 from soiltemp.errors import InputError, SoilTempError, SolverError, message
-from soiltemp.frost import days_below, extremes, heat_balance
 from soiltemp.ground import Layer, Profile
 from soiltemp.materials import Material
-from soiltemp.problem import DEFAULT_MAX_STEP, DEFAULT_TOLERANCE
-from soiltemp.site import Periodic, Record, Site, read_site
+from soiltemp.site import Record, Site, read_site
 from soiltemp.site_run import climate_of, run, site_from_result, surface_of
 from soiltemp.study import solve
-from soiltemp.units import from_si
 
 __all__ = ["main"]
 
 DONE, OUR_FAULT, BAD_INPUT, STOPPED, NO_READER = 0, 1, 2, 130, 141
 """Exit statuses; the last two are what shells give to a program ended by Ctrl-C or by a closed pipe."""
 
-_WIDTH = 100
 _QUIET_FOR = 1.0  # s that a run may take without a word about it
 _COMPILING_FOR = 1.5  # s after which the solver is being compiled, and not read from the cache
 _SAY_AGAIN = 10.0  # s between lines of progress in a file
@@ -189,7 +181,7 @@ def _check(options: argparse.Namespace, _ending: _Ending) -> None:
     site, climate = _load(options.site)
     if climate is None:
         climate = climate_of(site)
-    print("\n".join(_understood(site, climate, surface_of(site, climate), _Units(_UNITS[options.units]))))
+    print("\n".join(understood(site, climate, surface_of(site, climate), options.units)))
 
 
 def _run(options: argparse.Namespace, ending: _Ending) -> None:
@@ -214,7 +206,7 @@ def _run(options: argparse.Namespace, ending: _Ending) -> None:
             writer(result, target, options.units)
             ending.written.append(str(target))
             files.append(f"{'Replaced' if replaced else 'Written'}: {target}")
-    lines = _summary(site, result, options.units)
+    lines = summary(site, result, options.units)
     print("\n".join([*lines, *(files or ["Not saved; -o RESULT.nc keeps the result."])]))
 
 
@@ -311,260 +303,3 @@ class _Progress:
         if self.shown and self.on_terminal:
             print(f"\r{'':78}\r", end="", file=self.stream, flush=True)
         self.shown = False
-
-
-# --- text ---------------------------------------------------------------------------------------------------
-
-
-_Shown = tuple[str, str]  # how the text writes a unit, and how pint does
-_UNITS: dict[str, dict[str, _Shown]] = {
-    "si": {
-        "temperature": ("degC", "degC"), "temperature_difference": ("K", "K"), "length": ("m", "m"),
-        "conductivity": ("W/(m K)", "W/(m K)"), "heat_capacity": ("MJ/(m^3 K)", "MJ/(m^3 K)"),
-        "latent_heat": ("MJ/m^3", "MJ/m^3"), "freezing_index": ("K day", "K day"), "heat_flux": ("W/m^2", "W/m^2"),
-        "heat": ("MJ/m^2", "MJ/(hour m^2)"),
-    },
-    "us": {
-        "temperature": ("degF", "degF"), "temperature_difference": ("degF", "delta_degF"), "length": ("ft", "ft"),
-        "conductivity": ("BTU/(hour ft degF)", "BTU/(hour ft delta_degF)"),
-        "heat_capacity": ("BTU/(ft^3 degF)", "BTU/(ft^3 delta_degF)"), "latent_heat": ("BTU/ft^3", "BTU/ft^3"),
-        "freezing_index": ("degF day", "delta_degF day"), "heat_flux": ("BTU/(hour ft^2)", "BTU/(hour ft^2)"),
-        "heat": ("BTU/ft^2", "BTU/(hour ft^2)"),
-    },
-}  # fmt: skip
-
-
-@dataclass(frozen=True)
-class _Units:
-    """Units of the text, by kind of quantity."""
-
-    shown: dict[str, _Shown]
-
-    def value(self, value: float, kind: str) -> float:
-        """A value in the unit of the text."""
-        if kind == "heat":  # heat by area: what a heat flux brings in an hour
-            return from_si(value / HOUR, "heat_flux", self.shown[kind][1])
-        return from_si(value, kind, self.shown[kind][1])
-
-    def show(self, value: float, kind: str, digits: int = 2) -> str:
-        """A value with its unit."""
-        return f"{self.value(value, kind):.{digits}f} {self.shown[kind][0]}"
-
-
-def _table(rows: list[list[str]], left: int) -> list[str]:
-    """Rows in columns: the one numbered `left` to the left, the others to the right."""
-    widths = [max(len(row[i]) for row in rows) for i in range(len(rows[0]))]
-    aligned = [
-        [
-            cell.ljust(width) if i == left else cell.rjust(width)
-            for i, (cell, width) in enumerate(zip(row, widths, strict=True))
-        ]
-        for row in rows
-    ]
-    return [f"  {'  '.join(row)}".rstrip() for row in aligned]
-
-
-def _wrapped(text: str, first: str = "  ", rest: str = "    ") -> list[str]:
-    return textwrap.wrap(text, _WIDTH, initial_indent=first, subsequent_indent=rest)
-
-
-def _understood(site: Site, climate: xr.DataArray, surface: xr.DataArray, units: _Units) -> list[str]:
-    """What `check` says."""
-    study = site.study
-    altitude = "" if site.altitude is None else f", altitude {units.show(site.altitude, 'length', 0)}"
-    lines = [f"{site.name}: latitude {site.latitude:g}, longitude {site.longitude:g}{altitude}", ""]
-    lines += _ground(site, units)
-    what = "ground surface" if site.surface.n_factors is None else "air"
-    if isinstance(site.climate, Periodic):
-        wave = site.climate
-        lines.append(
-            f"Climate: the same every year, {what}; mean {units.show(wave.mean, 'temperature')}, "
-            f"annual amplitude {units.show(wave.amplitude, 'temperature_difference')}, "
-            f"daily amplitude {units.show(wave.daily_amplitude, 'temperature_difference')}, coldest {wave.coldest}"
-        )
-    else:
-        lines.append(f"Climate: record of the {what} temperature, {site.climate.path}")
-        lines += [f"  {line}" for line in str(climate.attrs.get("quality_report", "")).split("\n")]
-        lines.append(f"  time zone: {climate.attrs.get('time_zone', 'not stated')}; {climate.attrs['cell_methods']}")
-    lines.append(f"  {_indices(climate, units)}")
-    lines += ["", f"Ground surface: {site.surface.cover or 'cover not stated'}"]
-    factors = site.surface.n_factors
-    if factors is None:
-        lines.append("  no n-factors: the record is that of the surface itself")
-    else:
-        lines += _wrapped(f"n-factors: freezing {factors.freezing:g}, thawing {factors.thawing:g} ({factors.source})")
-        lines.append(f"  {_indices(surface, units)}")
-        if np.diff(temperature_series(climate).seconds).max() < DAY:
-            lines += _wrapped(
-                "The factors act on every value: hours below freezing on mild days count as freezing, while published "
-                "factors relate degree-days of daily means."
-            )
-    lines += ["", *_line_text(site, units)]
-    start = "the periodic steady state (cycle)"
-    if study.initial != "cycle":
-        start = f"temperatures by depth, {study.initial}"
-    if isinstance(study.initial, float):
-        start = f"{units.show(study.initial, 'temperature')} throughout"
-    depths = "all nodes of the grid"
-    if study.depths is not None:
-        depths = ", ".join(units.show(depth, "length") for depth in study.depths)
-    step = interval_text(study.max_step or DEFAULT_MAX_STEP)
-    tolerance = units.show(study.tolerance or DEFAULT_TOLERANCE, "temperature_difference", 3)
-    return [
-        *lines,
-        f"Study: {show_moment(study.start)} to {show_moment(study.end)}",
-        f"  start of the run: {start}",
-        f"  heat up into the base: {units.show(study.base_heat_flux, 'heat_flux', 3)}",
-        f"  output every {interval_text(study.output_every)} at {depths}",
-        f"  longest step {step}, tolerance of a step {tolerance}",
-        "",
-        CAUTION_SHORT,
-    ]
-
-
-def _ground(site: Site, units: _Units) -> list[str]:
-    names = units.shown
-    rows = [
-        ["", "from", "to", "layer", "conductivity", "", "heat capacity", "", "latent heat", "freezes"],
-        ["", "", "", "", "thawed", "frozen", "thawed", "frozen", "", "from"],
-        [
-            "",
-            names["length"][0],
-            "",
-            "",
-            names["conductivity"][0],
-            "",
-            names["heat_capacity"][0],
-            "",
-            names["latent_heat"][0],
-            names["temperature"][0],
-        ],
-    ]
-    sources = []
-    digits = 2 if names["length"][0] == "m" else 1
-    for number, layer in enumerate(site.profile, start=1):
-        top, bottom = site.profile.interfaces[number - 1 : number + 1]
-        material = layer.material
-        cells = [
-            (top, "length", 2),
-            (bottom, "length", 2),
-            (material.conductivity_thawed, "conductivity", 3),
-            (material.conductivity_frozen, "conductivity", 3),
-            (material.heat_capacity_thawed, "heat_capacity", digits),
-            (material.heat_capacity_frozen, "heat_capacity", digits),
-            (material.latent_heat, "latent_heat", 1),
-            (material.freezing_point, "temperature", 2),
-        ]
-        shown = [f"{units.value(value, kind):.{places}f}" for value, kind, places in cells]
-        rows.append([str(number), *shown[:2], layer.name, *shown[2:]])
-        sources += _wrapped(f"{number} {layer.name}: {material.source or 'source not stated'}")
-    depth = units.show(site.profile.base, "length")
-    return [f"Ground: {len(site.profile)} layers down to {depth}", *_table(rows, 3), *sources, ""]
-
-
-def _indices(series: xr.DataArray, units: _Units) -> str:
-    """Mean, lowest value and indices of the climate or the surface."""
-    lowest = float(series.min())
-    on = show_moment(series["time"].values[int(np.argmin(series.values))])
-    frost, thaw = (units.show(index(series), "freezing_index", 0) for index in (freezing_index, thawing_index))
-    mean = units.show(float(series.mean()), "temperature")
-    return (
-        f"mean {mean}, lowest {units.show(lowest, 'temperature')} on {on}; freezing index {frost}, thawing index {thaw}"
-    )
-
-
-def _line_text(site: Site, units: _Units) -> list[str]:
-    if site.line is None:
-        return ["Line: none", ""]
-    line = site.line
-    lines = [f"Line: {line.name}, outside diameter {units.show(line.outside_diameter, 'length', 3)}"]
-    for part, depth in line.depths.items():
-        lines.append(f"  {part:<6} at {units.show(depth, 'length')} in {site.profile.layer_at(depth).name}")
-    return [*lines, ""]
-
-
-def _summary(site: Site, result: xr.Dataset, system: str) -> list[str]:
-    """What `run` says."""
-    units = _Units(_UNITS[system])
-    times = result["time"].values
-    span = f"{show_moment(times[0])} to {show_moment(times[-1])}"
-    lines = [f"{site.name}, {span}", f"  start of the run: {result.attrs['initial_state']}", ""]
-    zero = units.show(0.0, "temperature", 0)
-    rows = [["", "greatest depth", "on", "numerical error"]]
-    for name, text in (("frost_depth", f"frost ({zero})"), ("frozen_ground_depth", "frozen ground")):
-        depth = result[name].values
-        deepest = int(np.argmax(depth))
-        on = show_moment(times[deepest]) if depth[deepest] > 0.0 else "never"
-        error = units.show(float(result[f"{name}_error"]), "length", 3)
-        rows.append([text, units.show(float(depth[deepest]), "length"), on, error])
-    lines += ["Frost", *_table(rows, 0)]
-    if float(result["frost_depth"].max()) >= site.profile.base * (1.0 - 1e-9):
-        lines += _wrapped("The column is frozen to its base: the frost goes deeper than the ground described.")
-    lines += [
-        *_coldest(site, result, units),
-        "",
-        *_closed_forms(result, system),
-        *_balance(result, units),
-        "",
-        "Cautions",
-    ]
-    for caution in CAUTIONS:
-        lines += _wrapped(caution, "  - ")
-    return [*lines, ""]
-
-
-def _coldest(site: Site, result: xr.Dataset, units: _Units) -> list[str]:
-    """Coldest ground at the line and at the depths asked for."""
-    places = [] if site.line is None else list(site.line.depths.items())
-    places += [("", depth) for depth in site.study.depths or ()]
-    if not places:
-        return []
-    rows = [["", "depth", "coldest", "on", f"days below {units.show(0.0, 'temperature', 0)}", "numerical error"]]
-    error = result["ground_temperature_error"]
-    for place, depth in places:
-        there = extremes(result, depth)
-        off = float(np.interp(depth, result["depth"].values, error.values))
-        rows.append(
-            [
-                place,
-                units.show(depth, "length"),
-                units.show(float(there["minimum_temperature"]), "temperature"),
-                show_moment(there["time_of_minimum"].values.reshape(1)[0]),
-                f"{days_below(result, 0.0, depth):.1f}",
-                units.show(off, "temperature_difference", 3),
-            ]
-        )
-    lines = ["", "Coldest ground", *_table(rows, 0)]
-    if site.line is not None:
-        margin = float(result["frost_margin"])
-        where = (
-            f"{units.show(abs(margin), 'length')} {'below the deepest frost' if margin >= 0.0 else 'inside the frost'}."
-        )
-        if float(result["frost_depth"].max()) == 0.0:
-            where = f"at {units.show(site.line.cover, 'length')}; no frost in the time studied."
-        lines.append(f"  The crown of the line lies {where}")
-    return lines
-
-
-def _balance(result: xr.Dataset, units: _Units) -> list[str]:
-    balance = heat_balance(result).isel(time=-1)
-    parts = [
-        f"{text} {units.show(float(balance[name]), 'heat')}"
-        for name, text in (
-            ("heat_through_surface", "in through the surface"),
-            ("heat_through_base", "in through the base"),
-            ("heat_stored", "stored"),
-        )
-    ]
-    error = float(np.abs(heat_balance(result)["heat_balance_error"]).max())
-    return ["Heat since the start", f"  {', '.join(parts)}; largest error {error:.2g} J/m^2"]
-
-
-def _closed_forms(result: xr.Dataset, units: str) -> list[str]:
-    """Closed forms beside the solution, and why each differs; long reasons wrapped, tables as they are."""
-    lines: list[str] = []
-    for line in closed_form_lines(result, units=units):
-        indent = line[: len(line) - len(line.lstrip())]
-        is_text = "   " not in line.strip()
-        lines += _wrapped(line.strip(), f"  {indent}", f"    {indent}") if is_text else [f"  {line}"]
-    return ["Closed forms beside it", *lines, ""] if lines else []

@@ -6,35 +6,37 @@ Units are always written. A fault is answered with one sentence that says where 
 from __future__ import annotations
 
 import os
-import re
-import tomllib
-from collections.abc import Collection, Iterator, Mapping
-from contextlib import contextmanager
 from dataclasses import dataclass
-from difflib import get_close_matches
 from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
-from soiltemp.climate.moments import read_duration, read_moment, show_moment, show_name, show_value
+from soiltemp.climate.moments import read_moment, show_moment, show_name, show_value
 from soiltemp.climate.options import ReadingOptions
 from soiltemp.climate.periodic import periodic_surface
 from soiltemp.climate.quality import IMPOSSIBLE
 from soiltemp.constants import YEAR
-from soiltemp.errors import DataFileError, InputError, SoilTempError, message
-from soiltemp.glossary import GLOSSARY
+from soiltemp.errors import DataFileError, InputError, message
 from soiltemp.ground import Layer, Profile
 from soiltemp.materials import Material, Soil, material
 from soiltemp.materials.properties import check_name
+from soiltemp.site_table import (
+    KEYS,
+    LARGEST_FILE,
+    RECORD_OPTIONS,
+    Table,
+    at_place,
+    check_sections,
+    check_size,
+    read_toml,
+    show_found,
+)
 from soiltemp.surface import FREEZING_RANGE, THAWING_RANGE, NFactors, n_factor_tables, n_factors
-from soiltemp.units import KINDS, to_si
+from soiltemp.units import to_si
 
-__all__ = ["KEYS", "Line", "Periodic", "Record", "Site", "Study", "Surface", "parse_site", "read_site"]
-
-LARGEST_FILE = 1_000_000
-"""Largest site file [bytes]; a real one has a few thousand."""
+__all__ = ["KEYS", "LARGEST_FILE", "Line", "Periodic", "Record", "Site", "Study", "Surface", "parse_site", "read_site"]
 
 MOST_OUTPUTS = 200_000
 """Most output times of a study: the temperatures of all nodes are held in memory for each."""
@@ -42,37 +44,8 @@ MOST_OUTPUTS = 200_000
 LONGEST_STUDY = 200.0 * YEAR
 """Longest study [s]; times in nanoseconds span 292 years."""
 
-_RECORD_OPTIONS = (
-    *("column", "unit", "time_column", "time_zone", "date_order", "values", "stamp_at"),
-    *("longest_gap", "missing_values", "allowed_range", "stuck_after"),
-)
-KEYS: dict[str, tuple[str, ...]] = {
-    "site": ("name", "latitude", "longitude", "altitude"),
-    "climate": ("air_temperature", "surface_temperature", "periodic", *_RECORD_OPTIONS),
-    "climate.periodic": ("mean", "amplitude", "coldest", "daily_amplitude"),
-    "surface": ("cover", "n_factor_table", "freezing_n_factor", "thawing_n_factor"),
-    "layer": ("name", "material", "soil", "conductivity_model", "thickness"),
-    "layer.soil": (
-        *("grain", "dry_density", "water_content", "quartz_fraction", "grain_density", "freezing_point"),
-        *("freezing_range", "dry_conductivity", "specific_heat_grains", "name"),
-    ),
-    "layer.material": (
-        *("name", "conductivity_thawed", "conductivity_frozen", "heat_capacity_thawed", "heat_capacity_frozen"),
-        *("latent_heat", "freezing_point", "freezing_range", "source"),
-    ),
-    "line": ("name", "cover", "outside_diameter"),
-    "study": (
-        *("start", "end", "initial", "base_heat_flux", "output_every", "depths", "max_step"),
-        *("tolerance",),
-    ),
-}
-"""Sections of a site file, tables inside them, and the keys of each."""
-
-_SECTIONS = tuple(name for name in KEYS if "." not in name)
 _STATED = "stated in the site file"
 _AS_TEXT = "save it as UTF-8 text"
-# The TOML reader takes a time that grows with the square of the parts of a key; ours have three at most.
-_ENDLESS_KEY = re.compile(r"(?<![^\s.,=\[\]{}])(?:[^\s.,=\[\]{}]++[ \t]*+\.[ \t]*+){50}")
 
 
 @dataclass(frozen=True)
@@ -206,7 +179,7 @@ def read_site(path: str | os.PathLike[str]) -> Site:
     if data is None:
         found = f"{'a folder' if place.is_dir() else 'no regular file'} at {show_value(place, 200)}"
         raise DataFileError(message(source, found, allowed, "give the path of the file itself"))
-    _check_size(len(data), source)
+    check_size(len(data), source)
     if b"\x00" in data:
         found = f"a NUL byte at byte {data.find(bytes(1))}, as in a binary file or UTF-16 text"
         raise DataFileError(message(source, found, allowed, _AS_TEXT))
@@ -253,209 +226,49 @@ def parse_site(text: str, *, folder: str | os.PathLike[str]) -> Site:
     if not isinstance(text, str):
         found = f"{type(text).__name__} {show_value(text)}"
         raise InputError(message("site file", found, "the text of a site file", "use read_site for a path"))
-    _check_size(len(text.encode("utf-8", "surrogatepass")), "site file")
+    check_size(len(text.encode("utf-8", "surrogatepass")), "site file")
     return _parse(text, Path(os.fsdecode(folder)), "site file")
 
 
 def _parse(text: str, folder: Path, source: str) -> Site:
-    tables = _toml(text, source)
-    _check_sections(tables, source)
-    site = _Table.section(tables, "site", source)
+    tables = read_toml(text, source)
+    check_sections(tables, source)
+    site = Table.section(tables, "site", source)
     name = check_name(site.need("name"), site.place)
     latitude = site.quantity("latitude", low=-90.0, high=90.0)
     longitude = site.quantity("longitude", low=-180.0, high=180.0)
     altitude = site.quantity("altitude", low=-450.0, high=9000.0) if "altitude" in site else None
     profile = _profile(tables, source)
-    study = _study(_Table.section(tables, "study", source), profile)
-    climate = _climate(_Table.section(tables, "climate", source), folder, study)
-    surface = _surface(_Table.section({"surface": {}, **tables}, "surface", source), climate)
-    line = _line(_Table.section(tables, "line", source), profile) if "line" in tables else None
+    study = _study(Table.section(tables, "study", source), profile)
+    climate = _climate(Table.section(tables, "climate", source), folder, study)
+    surface = _surface(Table.section({"surface": {}, **tables}, "surface", source), climate)
+    line = _line(Table.section(tables, "line", source), profile) if "line" in tables else None
     return Site(name, latitude, longitude, altitude, climate, surface, profile, line, study, text, folder)
 
 
-# --- text to tables -----------------------------------------------------------------------------------------
-
-
-def _check_size(size: int, source: str) -> None:
-    """Refuse what is too large [bytes] to be a site file."""
-    if size > LARGEST_FILE:
-        remedy = "check that this is the site file and not the weather record"
-        raise DataFileError(message(source, "more than 1 MB", "a site file of up to 1 MB", remedy))
-
-
-def _toml(text: str, source: str) -> dict[str, Any]:
-    """Tables of the text; a fault in the syntax with its line and column."""
-    allowed = "TOML, as in the example sites"
-    if not text.strip():
-        remedy = "check that it was saved, and copied whole"
-        raise DataFileError(message(source, "an empty file", allowed, remedy))
-    endless = _ENDLESS_KEY.search(text)
-    if endless is not None:
-        where = f"{source}, line {text.count(chr(10), 0, endless.start()) + 1}"
-        raise DataFileError(message(where, "a key of more than 50 parts", allowed, "correct the line"))
-    try:
-        return tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
-        what, _, at = str(error).partition(" (at ")
-        numbers = [int(number) for number in re.findall(r"\d+", at)]
-        remedy = "correct the line"
-        if len(numbers) != 2:
-            lines = text.rstrip("\n").split("\n")
-            numbers = [len(lines), len(lines[-1]) + 1]
-            remedy = "the text ends too early: complete the line, or copy the file again"
-        where = f"{source}, line {numbers[0]}, column {numbers[1]}"
-        found = f"text that is no TOML ({show_value(what, 100)[1:-1].lower()})"
-        raise DataFileError(message(where, found, allowed, remedy)) from error
-    except (RecursionError, ValueError) as error:
-        found = "brackets too deep, or a number too long, to be read"
-        raise DataFileError(message(source, found, allowed, "correct the value")) from error
-
-
-def _check_sections(tables: dict[str, Any], source: str) -> None:
-    """Refuse sections, and keys outside any, that a site file does not have."""
-    shown = ", ".join("[[layer]]" if name == "layer" else f"[{name}]" for name in _SECTIONS)
-    for name, value in tables.items():
-        if name in _SECTIONS:
-            continue
-        near = get_close_matches(name, _SECTIONS, n=1)
-        remedy = _home(name) or (f"correct it to {near[0]}" if near else "take it out")
-        what = "section" if isinstance(value, (dict, list)) else "key"
-        found = f"the unknown {what} {show_value(name)}"
-        raise InputError(message(source, found, f"the sections {shown}", remedy))
-
-
-def _home(key: str) -> str:
-    """What to do with a key that belongs into another section; empty if it belongs nowhere."""
-    homes = [section for section in _SECTIONS if key in KEYS[section]]
-    return f"move it to the section {homes[0]}" if homes else ""
-
-
-def _found(value: Any) -> str:
-    """What stands in place of something else, in the words of TOML."""
-    types = {str: "the text", dict: "the table", list: "the array", bool: "the truth value"}
-    return f"{types.get(type(value), 'the value')} {show_value(value)}"
-
-
-@contextmanager
-def _at(where: str) -> Iterator[None]:
-    """Put the place in the site file before a message from below."""
-    try:
-        yield
-    except SoilTempError as error:
-        raise type(error)(f"{where}, {error}") from error
-
-
-@dataclass(frozen=True)
-class _Table:
-    """One table of the file: its values, where its keys stand, and what the glossary puts before their names."""
-
-    values: Mapping[str, Any]
-    where: str
-    glossary: str
-
-    @classmethod
-    def section(cls, tables: dict[str, Any], name: str, source: str) -> _Table:
-        """The table of a section, which must be there."""
-        if name not in tables:
-            allowed = f"[{name}] with {', '.join(KEYS[name])}"
-            raise InputError(message(source, f"no section [{name}]", allowed, f"add the section [{name}]"))
-        return cls.checked(tables[name], f"{source}, {name}.", KEYS[name], f"{name}.")
-
-    @classmethod
-    def checked(cls, values: Any, where: str, keys: Collection[str], glossary: str) -> _Table:
-        """A table without unknown keys."""
-        table = cls(values, where, glossary)
-        if not isinstance(values, dict):
-            allowed = f"a table with {', '.join(keys)}"
-            raise InputError(message(table.place, _found(values), allowed, "write key = value"))
-        for key in values:
-            if key not in keys:
-                near = get_close_matches(key, keys, n=1)
-                remedy = f"correct it to {near[0]}" if near else _home(key) or "take it out"
-                found = f"the unknown key {show_value(key)}"
-                raise InputError(message(table.place, found, ", ".join(keys), remedy))
-        return table
-
-    def __contains__(self, key: str) -> bool:
-        return key in self.values
-
-    @property
-    def place(self) -> str:
-        """The table itself, for messages."""
-        return self.where.rstrip("., ")
-
-    def at(self, key: str) -> str:
-        """A key of it, for messages."""
-        return f"{self.where}{key}"
-
-    def kind(self, key: str) -> str:
-        """Kind of quantity, empty for texts."""
-        term = GLOSSARY.get(f"{self.glossary}{key}")
-        return "" if term is None else term.kind
-
-    def allowed(self, key: str) -> str:
-        """What the glossary says of a key."""
-        term = GLOSSARY.get(f"{self.glossary}{key}")
-        meaning = "a text" if term is None else term.meaning.rstrip(".")
-        return meaning[:1].lower() + meaning[1:]
-
-    def need(self, key: str) -> Any:
-        """Value of a key that must be there."""
-        if key not in self.values:
-            kind = self.kind(key)
-            example = KINDS[kind].example.partition(" or ")[0] if kind else '"..."'
-            section = self.place.rpartition(", ")[2]
-            remedy = f"add {key} = {example} to {f'[{section}]' if section in KEYS else 'it'}"
-            raise InputError(message(self.at(key), "nothing", self.allowed(key), remedy))
-        return self.values[key]
-
-    def quantity(self, key: str, *, low: float | None = None, high: float | None = None) -> float:
-        """A quantity in SI."""
-        kind = self.kind(key)
-        bare = "si" if kind == "angle" else "refuse"  # latitude and longitude go without a unit
-        return to_si(self.need(key), kind, self.at(key), low=low, high=high, bare=bare)
-
-    def words(self, key: str) -> str:
-        """A text that is not empty."""
-        value = self.need(key)
-        if not isinstance(value, str) or not value.strip() or not value.isprintable():
-            raise InputError(message(self.at(key), _found(value), self.allowed(key), "write it in quotes"))
-        return value
-
-    def duration(self, key: str, *, low: float, high: float) -> float:
-        """A length of time [s], as "1D" too."""
-        value = self.need(key)
-        if isinstance(value, str):
-            return read_duration(value, self.at(key), low=low, high=high)
-        return to_si(value, "time", self.at(key), low=low, high=high, bare="refuse")
-
-
-# --- tables to values ---------------------------------------------------------------------------------------
-
-
-def _climate(table: _Table, folder: Path, study: Study) -> Record | Periodic:
+def _climate(table: Table, folder: Path, study: Study) -> Record | Periodic:
     given = [key for key in ("air_temperature", "surface_temperature", "periodic") if key in table]
     if len(given) != 1:
         found = " and ".join(given) or "no source of temperatures"
         allowed = "one of air_temperature and surface_temperature (records) and periodic"
         raise InputError(message(table.place, found, allowed, "give exactly one of them"))
-    options = {key: table.values[key] for key in _RECORD_OPTIONS if key in table}
+    options = {key: table.values[key] for key in RECORD_OPTIONS if key in table}
     if given != ["periodic"]:
         return Record(given[0], folder / table.words(given[0]), _record_options(table, options))
     if options:
         where, found = table.at(next(iter(options))), "an option of a record beside periodic"
         raise InputError(message(where, found, "with a record only", "take it out"))
-    inner = _Table.checked(
+    inner = Table.checked(
         table.values["periodic"], f"{table.at('periodic')}.", KEYS["climate.periodic"], "climate.periodic."
     )
     daily = inner.quantity("daily_amplitude") if "daily_amplitude" in inner else 0.0
     climate = Periodic(inner.quantity("mean"), inner.quantity("amplitude"), inner.need("coldest"), daily)
-    with _at(inner.place):
+    with at_place(inner.place):
         periodic_surface(climate.mean, climate.amplitude, climate.coldest, study.start, 1, "6h", daily)
     return climate
 
 
-def _record_options(table: _Table, options: dict[str, Any]) -> tuple[tuple[str, Any], ...]:
+def _record_options(table: Table, options: dict[str, Any]) -> tuple[tuple[str, Any], ...]:
     """Options of the record, checked as far as they can be before it is opened."""
     for key in ("longest_gap", "stuck_after"):
         if not isinstance(options.get(key, ""), str):
@@ -471,7 +284,7 @@ def _record_options(table: _Table, options: dict[str, Any]) -> tuple[tuple[str, 
             odd = [item for item in items if not isinstance(item, str)]
         if odd or single or not 1 <= len(items) <= many:
             allowed = "a text in quotes" if many == 1 else f"up to {many} texts in brackets"
-            raise InputError(message(table.at(key), _found(table.values[key]), allowed, "correct it"))
+            raise InputError(message(table.at(key), show_found(table.values[key]), allowed, "correct it"))
     if "allowed_range" in options:
         place = table.at("allowed_range")
         limits = options["allowed_range"]
@@ -484,12 +297,12 @@ def _record_options(table: _Table, options: dict[str, Any]) -> tuple[tuple[str, 
         "stuck_after": None,
     }
     read |= {"missing_values": (), "allowed_range": IMPOSSIBLE, "start": None, "end": None}
-    with _at(table.place):
+    with at_place(table.place):
         ReadingOptions.read(**{key: options.get(key, usual) for key, usual in read.items()})
     return tuple(options.items())
 
 
-def _surface(table: _Table, climate: Record | Periodic) -> Surface:
+def _surface(table: Table, climate: Record | Periodic) -> Surface:
     cover = table.words("cover") if "cover" in table else None
     given = [key for key in ("n_factor_table", "freezing_n_factor", "thawing_n_factor") if key in table]
     if isinstance(climate, Record) and climate.quantity == "surface_temperature":
@@ -504,7 +317,7 @@ def _surface(table: _Table, climate: Record | Periodic) -> Surface:
         if key in table:
             factors[name] = to_si(table.need(key), "fraction", table.at(key), low=limits[0], high=limits[1])
     if "n_factor_table" in table:
-        with _at(table.at("n_factor_table")):
+        with at_place(table.at("n_factor_table")):
             return Surface(cover, n_factors(table.words("n_factor_table"), **factors))
     if len(factors) < 2:
         found = f"{given[0]} alone" if given else "no n-factors, and none are assumed"
@@ -518,11 +331,11 @@ def _surface(table: _Table, climate: Record | Periodic) -> Surface:
 def _profile(tables: dict[str, Any], source: str) -> Profile:
     layers = tables.get("layer")
     if not isinstance(layers, list):
-        found = "no layer" if layers is None else f"layer as {_found(layers)}"
+        found = "no layer" if layers is None else f"layer as {show_found(layers)}"
         remedy = "head each layer with [[layer]], in double brackets"
         raise InputError(message(source, found, "the layers of the ground, top down", remedy))
     made = [_layer(values, f"{source}, layer {number}") for number, values in enumerate(layers, start=1)]
-    with _at(source):
+    with at_place(source):
         return Profile(made)
 
 
@@ -531,7 +344,7 @@ def _layer(values: Any, where: str) -> Layer:
         parts = [values.get(key) for key in ("name", "material", "soil")]
         names = [part.get("name") if isinstance(part, dict) else part for part in parts]
         where += next((f" {show_value(name)}" for name in names if isinstance(name, str)), "")
-    table = _Table.checked(values, f"{where}, ", KEYS["layer"], "layer.")
+    table = Table.checked(values, f"{where}, ", KEYS["layer"], "layer.")
     name = check_name(table.need("name"), table.place) if "name" in table else None
     if ("soil" in table) == ("material" in table):
         found = "both soil and material" if "soil" in table else "neither soil nor material"
@@ -540,26 +353,26 @@ def _layer(values: Any, where: str) -> Layer:
     thickness = table.quantity("thickness", low=1e-3, high=1000.0)
     model = table.words("conductivity_model") if "conductivity_model" in table else None
     made = _material_or_soil(table)
-    with _at(table.place):
+    with at_place(table.place):
         return Layer(made, thickness, conductivity_model=model, name=name)
 
 
-def _material_or_soil(layer: _Table) -> Material | Soil:
+def _material_or_soil(layer: Table) -> Material | Soil:
     key = "soil" if "soil" in layer else "material"
     if key == "material" and not isinstance(layer.values[key], dict):
-        with _at(layer.place):
+        with at_place(layer.place):
             return material(layer.words(key))
-    table = _Table.checked(layer.values[key], f"{layer.at(key)}.", KEYS[f"layer.{key}"], "")
+    table = Table.checked(layer.values[key], f"{layer.at(key)}.", KEYS[f"layer.{key}"], "")
     for needed in KEYS[f"layer.{key}"][: 3 if key == "soil" else 6]:
         table.need(needed)
     values: dict[str, Any] = {
         name: table.quantity(name) if table.kind(name) else table.need(name) for name in table.values
     }
-    with _at(layer.place):
+    with at_place(layer.place):
         return Soil(**values) if key == "soil" else Material(**{"source": _STATED, **values})
 
 
-def _line(table: _Table, profile: Profile) -> Line:
+def _line(table: Table, profile: Profile) -> Line:
     name = check_name(table.need("name"), table.place) if "name" in table else "line"
     cover = table.quantity("cover", low=0.0, high=100.0)
     line = Line(name, cover, table.quantity("outside_diameter", low=1e-3, high=20.0))
@@ -570,7 +383,7 @@ def _line(table: _Table, profile: Profile) -> Line:
     return line
 
 
-def _study(table: _Table, profile: Profile) -> Study:
+def _study(table: Table, profile: Profile) -> Study:
     start, end = (read_moment(table.need(key), table.at(key)) for key in ("start", "end"))
     length = float((end - start) / np.timedelta64(1, "s"))
     if length < 7200.0:
@@ -596,20 +409,20 @@ def _study(table: _Table, profile: Profile) -> Study:
     )
 
 
-def _depths(table: _Table, profile: Profile) -> tuple[float, ...]:
+def _depths(table: Table, profile: Profile) -> tuple[float, ...]:
     place, depths = table.at("depths"), table.need("depths")
     if not isinstance(depths, list) or not depths:
-        raise InputError(message(place, _found(depths), "depths in brackets", 'write it as ["0.5 m", "1 m"]'))
+        raise InputError(message(place, show_found(depths), "depths in brackets", 'write it as ["0.5 m", "1 m"]'))
     found = tuple(
         to_si(depth, "length", f"{place}, item {number}", low=0.0, high=profile.base, bare="refuse")
         for number, depth in enumerate(depths, start=1)
     )
     if any(below <= above for above, below in pairwise(found)):
-        raise InputError(message(place, _found(depths), "each deeper than the one before", "sort them"))
+        raise InputError(message(place, show_found(depths), "each deeper than the one before", "sort them"))
     return found
 
 
-def _initial(table: _Table, profile: Profile, length: float) -> str | float | tuple[tuple[float, float], ...]:
+def _initial(table: Table, profile: Profile, length: float) -> str | float | tuple[tuple[float, float], ...]:
     place = table.at("initial")
     value = table.values.get("initial", "cycle")
     if value == "cycle":
@@ -625,7 +438,7 @@ def _initial(table: _Table, profile: Profile, length: float) -> str | float | tu
         item = f"{place}, item {number}"
         if not isinstance(row, dict) or set(row) != {"depth", "temperature"}:
             remedy = 'write it as { depth = "1 m", temperature = "4 degC" }'
-            raise InputError(message(item, _found(row), "a depth and a temperature", remedy))
+            raise InputError(message(item, show_found(row), "a depth and a temperature", remedy))
         depth = to_si(row["depth"], "length", f"{item}, depth", low=0.0, high=1e4, bare="refuse")
         limits = {"low": -80.0, "high": 80.0}
         celsius = to_si(row["temperature"], "temperature", f"{item}, temperature", **limits, bare="refuse")

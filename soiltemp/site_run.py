@@ -266,26 +266,15 @@ def _line_answers(line: Line, result: xr.Dataset) -> xr.Dataset:
     answers: dict[str, Any] = {}
     for part, depth in line.depths.items():
         there = extremes(result, depth)
-        lowest, coldest = float(there["minimum_temperature"]), there["time_of_minimum"].values
-        below = days_below(result, 0.0, depth)
-        scale = {"units": "degree_Celsius", "units_metadata": "temperature: on_scale"}
-        answers |= {
-            f"{part}_depth": ((), depth, {"long_name": f"depth of the {part} of the line", "units": "m"}),
-            f"{part}_minimum_temperature": (
-                (),
-                lowest,
-                {"long_name": f"lowest ground temperature at the {part} of the line", **scale},
-            ),
-            f"{part}_time_of_minimum": ((), coldest, {"long_name": f"time of the coldest ground at the {part}"}),
-            f"{part}_days_below_freezing": (
-                (),
-                below,
-                {"long_name": f"time that the ground at the {part} is below 0 degC", "units": "day"},
-            ),
+        values = {
+            "depth": depth,
+            "minimum_temperature": float(there["minimum_temperature"]),
+            "time_of_minimum": there["time_of_minimum"].values,
+            "days_below_freezing": days_below(result, 0.0, depth),
         }
+        answers |= {f"{part}_{name}": ((), value, attributes(f"{part}_{name}")) for name, value in values.items()}
     margin = line.cover - float(result["frost_depth"].max())
-    labels = {"long_name": "depth of the crown less the greatest frost depth, negative where frost passes the crown"}
-    answers["frost_margin"] = ((), margin, {**labels, "units": "m"})
+    answers["frost_margin"] = ((), margin, attributes("frost_margin"))
     return xr.Dataset(answers)
 
 

@@ -167,9 +167,7 @@ def _stated(given: Any, where: str, kind: str, shown: str | None, limits: tuple[
     return to_si(given, "fraction", f"{where}, {kind}", low=limits[0], high=limits[1])
 
 
-def surface_temperature_from_air(
-    air: xr.DataArray, *, freezing_n_factor: Any, thawing_n_factor: Any
-) -> xr.DataArray:
+def surface_temperature_from_air(air: xr.DataArray, *, freezing_n_factor: Any, thawing_n_factor: Any) -> xr.DataArray:
     """Temperature of the ground surface from that of the air, by n-factors.
 
     Parameters
@@ -209,12 +207,8 @@ def surface_temperature_from_air(
     >>> surface_temperature_from_air(air, freezing_n_factor=0.5, thawing_n_factor=0.8).values.tolist()
     [-5.0, 4.0]
     """
-    below = to_si(
-        freezing_n_factor, "fraction", "freezing_n_factor", low=FREEZING_RANGE[0], high=FREEZING_RANGE[1]
-    )
-    above = to_si(
-        thawing_n_factor, "fraction", "thawing_n_factor", low=THAWING_RANGE[0], high=THAWING_RANGE[1]
-    )
+    below = to_si(freezing_n_factor, "fraction", "freezing_n_factor", low=FREEZING_RANGE[0], high=FREEZING_RANGE[1])
+    above = to_si(thawing_n_factor, "fraction", "thawing_n_factor", low=THAWING_RANGE[0], high=THAWING_RANGE[1])
     celsius = temperature_series(air, "air").celsius
     surface = air.copy(data=np.where(celsius < 0.0, below * celsius, above * celsius))
     surface.name = "surface_temperature"

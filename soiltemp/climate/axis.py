@@ -104,9 +104,7 @@ def _interval(unique: npt.NDArray[np.int64], where: str) -> float:
         found = f"values {interval / 86400.0:g} days apart"
         raise DataFileError(message(where, found, allowed, "use a record of daily or hourly values"))
     if interval < _SHORTEST:
-        raise DataFileError(
-            message(where, f"values {interval:g} s apart", allowed, "average the record to minutes")
-        )
+        raise DataFileError(message(where, f"values {interval:g} s apart", allowed, "average the record to minutes"))
     if counts.max() < 0.5 * counts.sum() and counts.sum() > 2:
         odd = int(np.flatnonzero(np.diff(unique) != steps[np.argmax(counts)])[0])
         first, second = unique[odd : odd + 2].astype("datetime64[s]")
@@ -165,9 +163,7 @@ def _place(
     if absent.any():
         hit = axis[absent]
         text = "times without a line in the file"
-        findings.append(
-            Finding("missing_times", hit[0], hit[-1], int(absent.sum()), text, "treated as missing")
-        )
+        findings.append(Finding("missing_times", hit[0], hit[-1], int(absent.sum()), text, "treated as missing"))
     return RegularSeries(axis, celsius, interval, tuple(findings))
 
 
@@ -206,9 +202,7 @@ def _merge(
     merged = np.full(low.size, np.nan)
     merged[group[order]] = values[order]  # the first good value of each time is written last
     text = "times with more than one line, of the same value"
-    return merged, Finding(
-        "duplicate_times", stamps[0], stamps[-1], int(stamps.size), text, "first good one kept"
-    )
+    return merged, Finding("duplicate_times", stamps[0], stamps[-1], int(stamps.size), text, "first good one kept")
 
 
 def _clock_hour(moment: np.datetime64, *, doubled: bool) -> bool:
@@ -221,9 +215,7 @@ def _clock_hour(moment: np.datetime64, *, doubled: bool) -> bool:
     return sunday and month in months and (0 if doubled else 3600) <= seconds <= 3 * 3600
 
 
-def _check_clock(
-    unique: npt.NDArray[np.int64], doubled: npt.NDArray[np.int64], interval: float, where: str
-) -> None:
+def _check_clock(unique: npt.NDArray[np.int64], doubled: npt.NDArray[np.int64], interval: float, where: str) -> None:
     """Refuse a clock that is put forward in summer: an hour missing in spring, doubled in autumn."""
     if interval > 3600.0:
         return
@@ -232,9 +224,7 @@ def _check_clock(
     missing = [stamp for stamp in gaps.astype("datetime64[s]") if _clock_hour(stamp, doubled=False)]
     twice = [stamp for stamp in doubled.astype("datetime64[s]") if _clock_hour(stamp, doubled=True)]
     years = {int(stamp.astype("datetime64[Y]").astype(np.int64)) for stamp in missing}
-    both = any(
-        abs(int((later - earlier) / np.timedelta64(1, "D"))) > 120 for earlier in missing for later in twice
-    )
+    both = any(abs(int((later - earlier) / np.timedelta64(1, "D"))) > 120 for earlier in missing for later in twice)
     if not both and len(years) < 2:
         return
     found = f"the hour of {show_moment(missing[0])} missing"

@@ -178,9 +178,7 @@ def named_column(table: TextTable, name: Any, option: str) -> int:
             return hits[0]
         if hits:
             found = f"{len(hits)} columns called {show_value(wanted)}"
-            raise DataFileError(
-                message(table.source, found, "names that differ", "rename the columns in the header")
-            )
+            raise DataFileError(message(table.source, found, "names that differ", "rename the columns in the header"))
     found = f"no column {show_value(wanted)}"
     remedy = f"set {option} to one of {_listed(table)}"
     raise DataFileError(message(table.source, found, "a column of the file", remedy))
@@ -193,9 +191,7 @@ def _sample(table: TextTable, index: int) -> list[str]:
 def _is_date_column(table: TextTable, index: int) -> bool:
     cells = _sample(table, index)
     dated = [cell for cell in cells if has_date_shape(cell)]
-    if all(cell.isdigit() for cell in dated) and not re.search(
-        "date|time|day|stamp", table.header[index].lower()
-    ):
+    if all(cell.isdigit() for cell in dated) and not re.search("date|time|day|stamp", table.header[index].lower()):
         return False  # a station number of eight digits is no date
     return len(dated) > 0.5 * len(cells)
 

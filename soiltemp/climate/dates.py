@@ -167,9 +167,7 @@ def read_dates(
             first = indices[0]
             found = show_value(entries[first]) if entries[first] else "an empty cell instead of a date"
             remedy = "correct the date or name the right column with time_column"
-            raise DataFileError(
-                message(f'{source}, line {lines[first]}, column "{column}"', found, _ALLOWED, remedy)
-            )
+            raise DataFileError(message(f'{source}, line {lines[first]}, column "{column}"', found, _ALLOWED, remedy))
         rows = np.asarray(indices)
         texts = np.array([entries[index] for index in indices])
         date_only &= match["clock"] is None
@@ -202,9 +200,7 @@ def _split_fields(texts: npt.NDArray[np.str_], match: re.Match[str]) -> Ints:
         spans = [(start + part.start(), start + part.end()) for part in re.finditer("0+", match[kind])]
     if match["clock"] is not None:
         start = match.start("clock")
-        spans += [(start + part.start(), start + part.end()) for part in re.finditer("00?", match["clock"])][
-            :3
-        ]
+        spans += [(start + part.start(), start + part.end()) for part in re.finditer("00?", match["clock"])][:3]
     for row, (low, high) in enumerate(spans):
         fields[row] = _slice_ints(texts, low, high)
     if match.re.groupindex.get("half") and match["half"]:
@@ -242,9 +238,7 @@ def _order_fields(
     if day_first.size and month_first.size:
         bad = max(int(day_first[0]), int(month_first[0]))
         found = f"{show_value(entries[bad])}, whose order of day and month contradicts earlier lines"
-        raise DataFileError(
-            message(f"{where}, line {lines[bad]}", found, "one order throughout", "correct the dates")
-        )
+        raise DataFileError(message(f"{where}, line {lines[bad]}", found, "one order throughout", "correct the dates"))
     shown = "day-month-year" if day_first.size else "month-day-year" if month_first.size else None
     if shown is None and date_order is None:
         dotted = all("." in entries[index][:3] for index in chosen[:: max(1, len(chosen) // 50)])
@@ -252,16 +246,10 @@ def _order_fields(
             shown_entry = show_value(entries[int(chosen[0])])
             found = f"{shown_entry} and no day above 12, so day and month cannot be told apart"
             remedy = 'state date_order="day-month-year" or "month-day-year", or write dates as 2020-01-31'
-            raise DataFileError(
-                message(where, found, "an order of day and month that is shown or stated", remedy)
-            )
+            raise DataFileError(message(where, found, "an order of day and month that is shown or stated", remedy))
         shown = "day-month-year"  # dates with dots are written day first wherever they are in use
     if shown is not None and date_order is not None and shown != date_order:
-        bad = (
-            int((day_first if day_first.size else month_first)[0])
-            if day_first.size or month_first.size
-            else 0
-        )
+        bad = int((day_first if day_first.size else month_first)[0]) if day_first.size or month_first.size else 0
         found = f"{show_value(entries[bad])}, which is {shown}"
         remedy = "correct date_order"
         raise DataFileError(message(f"{where}, line {lines[bad]}", found, f"{date_order} as stated", remedy))
@@ -295,9 +283,7 @@ def _assemble(
     if outside.any():
         bad = int(np.flatnonzero(outside)[0])
         place = f'{source}, line {lines[bad]}, column "{column}"'
-        raise DataFileError(
-            message(place, show_moment(times[bad]), "the years 1750 to 2200", "correct the year")
-        )
+        raise DataFileError(message(place, show_moment(times[bad]), "the years 1750 to 2200", "correct the year"))
     return times
 
 
@@ -368,9 +354,7 @@ def read_time_zone(text: Any, name: str) -> str:
     minutes = zone_offset(clean)
     if minutes is not None and isinstance(text, str):
         return zone_name(minutes)
-    local = re.fullmatch(
-        r"(?:lst|(?:local )?standard time)(?:\s*\(?\s*([^()]*?)\s*\)?)?", clean, re.IGNORECASE
-    )
+    local = re.fullmatch(r"(?:lst|(?:local )?standard time)(?:\s*\(?\s*([^()]*?)\s*\)?)?", clean, re.IGNORECASE)
     if local is not None and isinstance(text, str):
         inner = zone_offset(local.group(1)) if local.group(1) else None
         if not local.group(1):
@@ -379,7 +363,5 @@ def read_time_zone(text: Any, name: str) -> str:
             return f"local standard time ({zone_name(inner)})"
     allowed = '"UTC", a fixed offset like "UTC-6", or "local standard time"'
     raise InputError(
-        message(
-            name, show_value(clean), allowed, "bring the times to a clock that is not put forward in summer"
-        )
+        message(name, show_value(clean), allowed, "bring the times to a clock that is not put forward in summer")
     )

@@ -79,9 +79,7 @@ def fill_gaps(
     if share > MOST_FILLED:
         found = f"{int(missing.sum())} of {missing.size} values missing ({100 * share:.0f} %), in short gaps"
         allowed = f"up to {100 * MOST_FILLED:g} % interpolated"
-        raise DataFileError(
-            message(where, found, allowed, "use a more complete record, or choose start and end")
-        )
+        raise DataFileError(message(where, found, allowed, "use a more complete record, or choose start and end"))
     index = np.arange(celsius.size)
     filled = celsius.copy()
     filled[missing] = np.interp(index[missing], index[~missing], celsius[~missing])

@@ -90,29 +90,19 @@ def raw_from_netcdf(
     if series.dims != time.dims:
         sizes = ", ".join(f"{dim} = {size}" for dim, size in variable.sizes.items())
         found = f"the dimensions {sizes}"
-        raise DataFileError(
-            message(where, found, "time only, one place", "take out one place or depth first")
-        )
+        raise DataFileError(message(where, found, "time only, one place", "take out one place or depth first"))
     if series.dtype.kind not in "fiu":
-        raise DataFileError(
-            message(where, f"values of type {series.dtype}", "numbers", "choose another variable")
-        )
+        raise DataFileError(message(where, f"values of type {series.dtype}", "numbers", "choose another variable"))
     stated = read_unit(variable.attrs.get("units", ""))
     wanted = unit or stated
     if wanted is None or (stated is not None and unit is not None and stated != unit):
-        found = f"units {show_value(variable.attrs.get('units', ''))}" + (
-            f" and unit={unit} given" if unit else ""
-        )
-        raise UnitError(
-            message(where, found, "one unit of degC, degF or K", 'correct it, or give unit="degC"')
-        )
+        found = f"units {show_value(variable.attrs.get('units', ''))}" + (f" and unit={unit} given" if unit else "")
+        raise UnitError(message(where, found, "one unit of degC, degF or K", 'correct it, or give unit="degC"'))
     times, lag = _moments(time, dataset, where)
     meaning = _meaning(str(variable.attrs.get("cell_methods", "")), str(time.name))
     values = series.values.astype(np.float64)
     values[~np.isfinite(values)] = np.nan
-    zone = settle_zone(
-        time_zone, None, variable.attrs.get("time_zone") or time.attrs.get("time_zone"), source
-    )
+    zone = settle_zone(time_zone, None, variable.attrs.get("time_zone") or time.attrs.get("time_zone"), source)
     return RawRecord(
         source=source,
         column=name,
@@ -135,15 +125,11 @@ def _choose(dataset: xr.Dataset, column: Any, source: str) -> xr.DataArray:
     if column is not None:
         if column not in dataset.data_vars:
             found = f"no variable {show_value(column)}"
-            raise DataFileError(
-                message(source, found, "a variable of the file", f"set column to one of {listed}")
-            )
+            raise DataFileError(message(source, found, "a variable of the file", f"set column to one of {listed}"))
         return dataset[column]
     variables = [dataset[name] for name in dataset.data_vars]
     named = [entry for entry in variables if entry.attrs.get("standard_name") == "air_temperature"]
-    warm = [
-        entry for entry in variables if read_unit(entry.attrs.get("units", "")) and entry.dtype.kind in "fiu"
-    ]
+    warm = [entry for entry in variables if read_unit(entry.attrs.get("units", "")) and entry.dtype.kind in "fiu"]
     candidates = named or warm
     if len(candidates) != 1:
         found = f"{len(candidates) or 'no'} variables that may be the temperature"
@@ -164,16 +150,10 @@ def _times_of(variable: xr.DataArray, time_column: Any, where: str) -> xr.DataAr
     else:
         candidates = [variable.coords[dim] for dim in variable.dims if dim in variable.coords]
         candidates = [entry for entry in candidates if entry.dtype.kind in "MO"]
-    usable: list[xr.DataArray] = [
-        entry for entry in candidates if entry.dtype.kind == "M" and entry.ndim == 1
-    ]
+    usable: list[xr.DataArray] = [entry for entry in candidates if entry.dtype.kind == "M" and entry.ndim == 1]
     if len(usable) != 1:
         other = any(entry.dtype.kind == "O" for entry in candidates)
-        found = (
-            "times of another calendar than the civil one"
-            if other
-            else "no time coordinate that can be decoded"
-        )
+        found = "times of another calendar than the civil one" if other else "no time coordinate that can be decoded"
         allowed = "one time dimension with CF units in the standard calendar"
         raise DataFileError(message(where, found, allowed, "convert the times first"))
     return usable[0]

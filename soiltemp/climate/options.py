@@ -103,9 +103,7 @@ class ReadingOptions:
             start=first,
             end=last,
             missing_numbers=tuple(
-                to_si(entry, "fraction", "missing_values")
-                for entry in missing_values
-                if not isinstance(entry, str)
+                to_si(entry, "fraction", "missing_values") for entry in missing_values if not isinstance(entry, str)
             ),
             missing_words=tuple(entry for entry in missing_values if isinstance(entry, str)),
             allowed_range=(low, high),

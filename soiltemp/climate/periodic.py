@@ -103,17 +103,13 @@ def periodic_surface(
     count = int(years) * int(YEAR) // step + 1
     if count > _MOST_SAMPLES:
         found = f"{count} values"
-        raise InputError(
-            message("every", found, f"up to {_MOST_SAMPLES}", "take a longer interval or fewer years")
-        )
+        raise InputError(message("every", found, f"up to {_MOST_SAMPLES}", "take a longer interval or fewer years"))
     seconds = np.arange(count, dtype=np.int64) * step
     since_coldest = seconds + int((first - _coldest_moment(coldest, calendar_year)) / np.timedelta64(1, "s"))
     since_midnight = seconds + int((first - first.astype("datetime64[D]")) / np.timedelta64(1, "s"))
     temperature = level - wave * np.cos(2.0 * np.pi * (since_coldest % int(YEAR)) / YEAR)
     if daily > 0.0:
-        temperature = temperature - daily * np.cos(
-            2.0 * np.pi * ((since_midnight - COLDEST_HOUR) % DAY) / DAY
-        )
+        temperature = temperature - daily * np.cos(2.0 * np.pi * ((since_midnight - COLDEST_HOUR) % DAY) / DAY)
     times = (first + seconds.astype("timedelta64[s]")).astype("datetime64[ns]")
     return xr.DataArray(
         temperature,

@@ -155,9 +155,7 @@ def mask_sentinels(
     return result, tuple(findings)
 
 
-def check_unit_plausible(
-    celsius: Floats, days: float, unit: str, where: str, limits: tuple[float, float]
-) -> None:
+def check_unit_plausible(celsius: Floats, days: float, unit: str, where: str, limits: tuple[float, float]) -> None:
     """Refuse a record whose values fit another unit than the one stated.
 
     Parameters

@@ -106,9 +106,7 @@ def raw_from_text(
     if set(indices) & set(time_indices):
         name = show_name(table.header[indices[0]])
         found = f'"{name}" as time and as temperature'
-        raise InputError(
-            message(f"{source}, column", found, "two different columns", "set column and time_column")
-        )
+        raise InputError(message(f"{source}, column", found, "two different columns", "set column and time_column"))
     table, row_unit = _take_unit_row(table, time_indices, indices)
     names = [show_name(table.header[index]) for index in indices]
     label = " and ".join(names)
@@ -185,9 +183,7 @@ def _header_zone(names: Sequence[str]) -> str | None:
     if words & {"utc", "gmt"} and not words & {"lst"}:
         inner = re.search(r"(?:utc|gmt)\s*[+-]\s*\d{1,2}(?::?\d{2})?", " ".join(names), re.IGNORECASE)
         return (
-            read_time_zone(inner.group().replace(" ", ""), "header")
-            if inner and zone_offset(inner.group())
-            else "UTC"
+            read_time_zone(inner.group().replace(" ", ""), "header") if inner and zone_offset(inner.group()) else "UTC"
         )
     return "local standard time" if "lst" in words else None
 
@@ -221,9 +217,7 @@ def settle_zone(given: str | None, stated: str | None, comment: str | None, sour
         return read_time_zone(comment, f"{source}, comment time_zone")
     if argument is None or stated is None:
         return argument or stated
-    offsets = [
-        zone_offset(text.removeprefix("local standard time").strip(" ()")) for text in (argument, stated)
-    ]
+    offsets = [zone_offset(text.removeprefix("local standard time").strip(" ()")) for text in (argument, stated)]
     if None not in offsets and offsets[0] != offsets[1]:
         found = f"times in {stated}"
         remedy = "leave time_zone out, or correct it"
@@ -244,9 +238,7 @@ def _numbers(table: TextTable, index: int, missing_words: Sequence[str]) -> npt.
     for cell in set(cells):
         text = cell.replace("\u2212", "-")
         if comma:
-            text = (
-                text.replace(",", ".") if "." not in text else text + ","
-            )  # a point beside commas is no number
+            text = text.replace(",", ".") if "." not in text else text + ","  # a point beside commas is no number
         if is_number(text) and math.isfinite(float(text)):
             known[cell] = float(text)
         elif not cell or cell.lower() in words:

@@ -198,9 +198,7 @@ def _load(path: Any) -> tuple[bytes, str]:
     """Bytes and name of the file."""
     if not isinstance(path, (str, os.PathLike)):
         found = f"{type(path).__name__} {show_value(path)}"
-        raise InputError(
-            message("path", found, "the path of a CSV or NetCDF file", "give it as text or a Path")
-        )
+        raise InputError(message("path", found, "the path of a CSV or NetCDF file", "give it as text or a Path"))
     place = pathlib.Path(os.fsdecode(path))
     source = show_value(place.name or str(place), 80).strip('"')
     allowed = "a CSV or NetCDF file that can be read"
@@ -209,9 +207,7 @@ def _load(path: Any) -> tuple[bytes, str]:
     except (OSError, ValueError) as error:
         reason = getattr(error, "strerror", None) or str(error)
         found = f"no readable file at {show_value(place, 200)} ({str(reason).lower()})"
-        raise DataFileError(
-            message(source, found, allowed, "check the path, and that it is a file")
-        ) from error
+        raise DataFileError(message(source, found, allowed, "check the path, and that it is a file")) from error
 
 
 def _check(raw: RawRecord, options: ReadingOptions, sha256: str) -> CheckedRecord:
@@ -228,9 +224,7 @@ def _check(raw: RawRecord, options: ReadingOptions, sha256: str) -> CheckedRecor
         times = times - np.timedelta64(round(STAMPS[options.stamp_at] * interval), "s")
     elif options.stamp_at != "start":
         found = f'stamp_at "{options.stamp_at}" with point values'
-        raise InputError(
-            message("stamp_at", found, "means over an interval", 'leave it out, or state values="mean"')
-        )
+        raise InputError(message("stamp_at", found, "means over an interval", 'leave it out, or state values="mean"'))
     stuck_free, stuck = mask_stuck(times, series.celsius, interval, options.stuck_after)
     jumps = find_jumps(times, stuck_free, interval)
     low, high, trimmed = _window(times, stuck_free, interval, meaning, options, where)
@@ -241,9 +235,7 @@ def _check(raw: RawRecord, options: ReadingOptions, sha256: str) -> CheckedRecor
     inside = slice(low - before, high - before + 1)
     times, filled, flags = times[low : high + 1], filled[inside], flags[inside]
     everything = (*notes, *assumed, *findings, *series.findings, *stuck, *trimmed, *jumps, *gaps)
-    report = QualityReport(
-        raw.source, times[0], times[-1], interval, filled.size, int(flags.sum()), everything
-    )
+    report = QualityReport(raw.source, times[0], times[-1], interval, filled.size, int(flags.sum()), everything)
     return CheckedRecord(_label(raw, times, filled, flags, interval, meaning, report, sha256), report)
 
 
@@ -301,9 +293,7 @@ def _judge(raw: RawRecord, options: ReadingOptions, where: str) -> tuple[Floats,
     empty = int(sum(np.isnan(array).sum() for array in raw.values))
     if empty:
         hit = raw.times[np.isnan(raw.values[0]) | np.isnan(raw.values[-1])]
-        findings.append(
-            Finding("missing_value", hit.min(), hit.max(), empty, "cells without a number", "as missing")
-        )
+        findings.append(Finding("missing_value", hit.min(), hit.max(), empty, "cells without a number", "as missing"))
     if len(arrays) == 1:
         return arrays[0], tuple(findings)
     low, high = arrays
@@ -322,21 +312,13 @@ def _judge(raw: RawRecord, options: ReadingOptions, where: str) -> tuple[Floats,
     return mean, tuple(findings)
 
 
-def _meaning(
-    raw: RawRecord, options: ReadingOptions, interval: float, where: str
-) -> tuple[str, tuple[Finding, ...]]:
+def _meaning(raw: RawRecord, options: ReadingOptions, interval: float, where: str) -> tuple[str, tuple[Finding, ...]]:
     """Whether values are means or points, and the finding that says how it was told."""
     pair = len(raw.values) == 2
     if pair and (interval != 86400.0 or options.values == "point"):
-        found = (
-            f"minimum and maximum every {interval_text(interval)}"
-            if interval != 86400.0
-            else 'values="point"'
-        )
+        found = f"minimum and maximum every {interval_text(interval)}" if interval != 86400.0 else 'values="point"'
         remedy = "name one column instead of two" if interval != 86400.0 else "leave values out"
-        raise DataFileError(
-            message(where, found, "minimum and maximum of each day, whose mean is taken", remedy)
-        )
+        raise DataFileError(message(where, found, "minimum and maximum of each day, whose mean is taken", remedy))
     if options.values is not None and raw.meaning is not None and options.values != raw.meaning:
         found = f'values "{raw.meaning}" by the file'
         remedy = "leave values out, or correct the file"
@@ -350,9 +332,7 @@ def _meaning(
         raise DataFileError(message(where, found, "means or points, stated", remedy))
     if interval >= 86400.0:
         text = "one value a date, taken as the mean of that day"
-        return "mean", (
-            Finding("assumption", None, None, 1, text, 'state values="point" if it is a reading'),
-        )
+        return "mean", (Finding("assumption", None, None, 1, text, 'state values="point" if it is a reading'),)
     text = f"values every {interval_text(interval)}, taken as readings at their time"
     return "point", (Finding("assumption", None, None, 1, text, 'state values="mean" if they are means'),)
 
@@ -378,9 +358,7 @@ def _window(
         findings = (Finding("missing_edge", times[0], times[-1], cut, text, "left out"),)
     reach = np.timedelta64(round(interval) if meaning == "mean" else 0, "s")
     first, last = times[low], times[high] + reach
-    if (options.start is not None and options.start < first) or (
-        options.end is not None and options.end > last
-    ):
+    if (options.start is not None and options.start < first) or (options.end is not None and options.end > last):
         found = f"values from {show_moment(first)} to {show_moment(last)}"
         remedy = "choose start and end inside, or add the missing time"
         raise DataFileError(message(where, found, f"a record that covers {_span(options)}", remedy))

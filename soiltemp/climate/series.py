@@ -73,9 +73,7 @@ def temperature_series(temperature: xr.DataArray, name: str = "temperature") -> 
         raise InputError(message(name, found, 'the one dimension "time", with times', "select one series"))
     unit = temperature.attrs.get("units")
     if unit is not None and read_unit(unit) != "degC":
-        raise UnitError(
-            message(name, f"units {show_value(unit)}", "degree_Celsius", "convert it to degC first")
-        )
+        raise UnitError(message(name, f"units {show_value(unit)}", "degree_Celsius", "convert it to degC first"))
     times = temperature["time"].values
     if times.dtype.kind != "M" or np.isnat(times).any():
         found = "missing times" if times.dtype.kind == "M" else f"times of type {times.dtype}"
@@ -87,9 +85,7 @@ def temperature_series(temperature: xr.DataArray, name: str = "temperature") -> 
     if steps.min() <= 0.0:
         odd = int(np.argmax(steps <= 0.0)) + 1
         found = f"a time not later than the one before ({show_moment(times[odd])})"
-        raise InputError(
-            message(f"{name}, time", found, "strictly increasing times", "sort it and drop doubled times")
-        )
+        raise InputError(message(f"{name}, time", found, "strictly increasing times", "sort it and drop doubled times"))
     celsius = _finite_values(temperature, times, name)
     is_mean = _is_mean(temperature, name)
     seconds = np.concatenate([[0.0], np.cumsum(steps)])
@@ -109,16 +105,12 @@ def _finite_values(temperature: xr.DataArray, times: npt.NDArray[np.datetime64],
         first = int(np.argmax(bad))
         found = f"{celsius[first]} ({int(bad.sum())} such values)"
         remedy = "fill or cut the gap; read_record does so for a file"
-        raise InputError(
-            message(f"{name}, {show_moment(times[first])}", found, "finite temperatures", remedy)
-        )
+        raise InputError(message(f"{name}, {show_moment(times[first])}", found, "finite temperatures", remedy))
     outside = (celsius < POSSIBLE[0]) | (celsius > POSSIBLE[1])
     if outside.any():
         first = int(np.argmax(outside))
         found = f"{celsius[first]:.6g} degC ({int(outside.sum())} such values)"
-        remedy = (
-            "convert kelvin to degC" if np.median(celsius) > 150.0 else "correct the values or their unit"
-        )
+        remedy = "convert kelvin to degC" if np.median(celsius) > 150.0 else "correct the values or their unit"
         allowed = f"{POSSIBLE[0]:g} to {POSSIBLE[1]:g} degC"
         raise InputError(message(f"{name}, {show_moment(times[first])}", found, allowed, remedy))
     return celsius
@@ -130,15 +122,11 @@ def _is_mean(temperature: xr.DataArray, name: str) -> bool:
     word = match.group(1) if match else "point"
     if word not in ("mean", "point"):
         remedy = "use means or readings"
-        raise InputError(
-            message(f"{name}, cell_methods", show_value(methods), '"time: mean" or "time: point"', remedy)
-        )
+        raise InputError(message(f"{name}, cell_methods", show_value(methods), '"time: mean" or "time: point"', remedy))
     return word == "mean"
 
 
-def _interval(
-    temperature: xr.DataArray, steps: Floats, times: npt.NDArray[np.datetime64], name: str
-) -> float:
+def _interval(temperature: xr.DataArray, steps: Floats, times: npt.NDArray[np.datetime64], name: str) -> float:
     """Length of the averaging interval [s], which all steps between times must have."""
     stated = temperature.attrs.get("interval")
     length = float(steps[0])

@@ -95,9 +95,7 @@ def read_table(data: bytes, source: str) -> TextTable:
     _check_header(header, source, body_start - 1)
     if not rows:
         found = "a header line and no rows below it"
-        raise DataFileError(
-            message(source, found, "at least two rows of data", "check that the export is complete")
-        )
+        raise DataFileError(message(source, found, "at least two rows of data", "check that the export is complete"))
     if not ends_with_line_end:
         _check_last_line(header, rows, lines, source)
         notes.append("the last line has no line end; it is complete, and is used")
@@ -151,9 +149,7 @@ def _refuse_nul(data: bytes, source: str, allowed: str) -> None:
     else:
         found = f"a NUL byte at byte {first}, as in a binary file or one whose writing broke off"
         remedy = "export or download the file again"
-    raise DataFileError(
-        message(f"{source}, line {data.count(bytes([10]), 0, first) + 1}", found, allowed, remedy)
-    )
+    raise DataFileError(message(f"{source}, line {data.count(bytes([10]), 0, first) + 1}", found, allowed, remedy))
 
 
 def _split_header(text: str, source: str) -> tuple[list[str], str, int, str]:
@@ -228,14 +224,10 @@ def _cells(
 
 def _check_header(header: tuple[str, ...], source: str, line: int) -> None:
     named = [name for name in header if name]
-    if any(is_number(name.replace(",", ".")) for name in named) or (
-        named and all(name[0].isdigit() for name in named)
-    ):
+    if any(is_number(name.replace(",", ".")) for name in named) or (named and all(name[0].isdigit() for name in named)):
         found = f"the values {show_value(', '.join(header))} where the column names should stand"
         allowed = "a header line that names the columns"
-        raise DataFileError(
-            message(f"{source}, line {line}", found, allowed, "put the column names in the first line")
-        )
+        raise DataFileError(message(f"{source}, line {line}", found, allowed, "put the column names in the first line"))
 
 
 def _check_width(header: tuple[str, ...], rows: list[tuple[str, ...]], lines: list[int], source: str) -> None:
@@ -243,19 +235,13 @@ def _check_width(header: tuple[str, ...], rows: list[tuple[str, ...]], lines: li
     for row, line in zip(rows, lines, strict=True):
         if len(row) != width:
             last = line == lines[-1]
-            remedy = (
-                "the file was cut short: download or export it again"
-                if last
-                else "correct or delete the line"
-            )
+            remedy = "the file was cut short: download or export it again" if last else "correct or delete the line"
             found = f"{len(row)} cells ({show_value(', '.join(row))})"
             allowed = f"{width} cells, as in the header"
             raise DataFileError(message(f"{source}, line {line}", found, allowed, remedy))
 
 
-def _check_last_line(
-    header: tuple[str, ...], rows: list[tuple[str, ...]], lines: list[int], source: str
-) -> None:
+def _check_last_line(header: tuple[str, ...], rows: list[tuple[str, ...]], lines: list[int], source: str) -> None:
     """Refuse a last line, without line end, that is shorter than its neighbours: the file broke off there."""
     last, before = rows[-1], rows[-51:-1]
     where = f"{source}, line {lines[-1]}"

@@ -157,14 +157,10 @@ def read_values(value: Any, argument: str, name: str | None = None) -> Any:
         try:
             value = np.asarray(value)
         except ValueError as error:
-            raise InputError(
-                message(shown, "rows of unequal length", "a regular array", "make it regular")
-            ) from error
+            raise InputError(message(shown, "rows of unequal length", "a regular array", "make it regular")) from error
     if hasattr(value, "__array__") and not hasattr(value, "units") and np.ndim(value) > 0:
         filled = (
-            np.ma.filled(value.astype(float), np.nan)
-            if isinstance(value, np.ma.MaskedArray)
-            else np.asarray(value)
+            np.ma.filled(value.astype(float), np.nan) if isinstance(value, np.ma.MaskedArray) else np.asarray(value)
         )
         numbers = _numbers(filled, rule, shown)
         _check_array(numbers, rule, shown, bare=True)
@@ -172,9 +168,7 @@ def read_values(value: Any, argument: str, name: str | None = None) -> Any:
     return read(value, argument, name)
 
 
-def read_layers(
-    values: Any, argument: str, *, zero: bool = False, half_space: bool = False
-) -> tuple[float, ...]:
+def read_layers(values: Any, argument: str, *, zero: bool = False, half_space: bool = False) -> tuple[float, ...]:
     """Read one number for each layer, top down.
 
     Parameters
@@ -209,9 +203,7 @@ def read_layers(
             message(f"layers, {shown}", f"{values!r}", "one value for each layer, top down", "give a list")
         )
     if len(values) == 0:
-        raise InputError(
-            message(f"layers, {shown}", "no layer", "one layer or more", "describe at least one layer")
-        )
+        raise InputError(message(f"layers, {shown}", "no layer", "one layer or more", "describe at least one layer"))
     result = []
     for number, value in enumerate(values, start=1):
         where = f"layer {number}, {shown}"

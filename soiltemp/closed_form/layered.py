@@ -329,9 +329,7 @@ def _at_depths(wave: _Wave, depths: Any) -> tuple[Any, Any]:
 
 def _temperature(wave: _Wave, depths: Any) -> Any:
     temperature, _ = _at_depths(wave, depths)
-    return as_given(
-        temperature, "temperature_ratio", "1", "complex amplitude of temperature relative to the surface"
-    )
+    return as_given(temperature, "temperature_ratio", "1", "complex amplitude of temperature relative to the surface")
 
 
 def _flux(wave: _Wave, depths: Any) -> Any:

@@ -96,9 +96,7 @@ def modified_berggren_lambda(alpha: QuantityLike, mu: QuantityLike) -> float:
     >>> round(modified_berggren_lambda(0.33, 0.20), 3)
     0.898
     """
-    return _coefficient(
-        to_si(alpha, "fraction", "alpha", low=0.0), to_si(mu, "fraction", "mu", low=0.0, high=50.0)
-    )
+    return _coefficient(to_si(alpha, "fraction", "alpha", low=0.0), to_si(mu, "fraction", "mu", low=0.0, high=50.0))
 
 
 def modified_berggren_depth(

@@ -224,10 +224,7 @@ def front_root(warmth: float, stefan_number: float, spread: float = 1.0) -> floa
             return math.sqrt(math.pi) / 2
         frozen = root * math.exp(-root * root) / math.erf(root)
         # erfcx is exp(x^2) erfc(x): their quotient in the equation neither over- nor underflows
-        return (
-            float(frozen - warmth * root / erfcx(spread * root))
-            - math.sqrt(math.pi) * root * root / stefan_number
-        )
+        return float(frozen - warmth * root / erfcx(spread * root)) - math.sqrt(math.pi) * root * root / stefan_number
 
     # a little above the bound, where rounding cannot hide the sign; at 27 the first term has underflowed
     upper = min(1.001 * math.sqrt(stefan_number / 2), 27.0)

@@ -67,9 +67,7 @@ def step_change_temperature(
     check_shapes(depth=z, duration=t)
     # at the first moment the reach is 0: the least number instead gives the step itself, and 0 on the surface
     reach = np.maximum(2 * np.sqrt(read(diffusivity, "diffusivity") * t), 1e-300)
-    result: Values = as_given(
-        now + (before - now) * erf(z / reach), "ground_temperature", "degC", "ground temperature"
-    )
+    result: Values = as_given(now + (before - now) * erf(z / reach), "ground_temperature", "degC", "ground temperature")
     return result
 
 
