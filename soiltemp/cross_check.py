@@ -28,7 +28,7 @@ from soiltemp.closed_form import (
 from soiltemp.constants import DAY, HOUR, YEAR
 from soiltemp.errors import InputError, message
 from soiltemp.frost import frost_depth
-from soiltemp.glossary import GLOSSARY, attributes
+from soiltemp.glossary import attributes
 from soiltemp.ground import Profile
 from soiltemp.surface import forcing_knots
 from soiltemp.units import from_si
@@ -49,27 +49,6 @@ SMALLEST_REMAINDER = 0.01
 _WAVES = tuple(
     f"annual_{what}{how}" for what in ("amplitude_ratio", "phase_lag") for how in ("", "_layered", "_uniform")
 )
-
-_FREE = "layered ground without freezing"
-_TOP = "uniform ground of the top layer"
-_RATIO = "amplitude of the annual wave by that of the surface"
-_LAG = "lag of the annual wave behind the surface"
-_TEXTS: dict[str, tuple[str, str]] = {
-    "surface_annual_mean": ("mean temperature of the ground surface over whole years", "degree_Celsius"),
-    "surface_annual_amplitude": ("amplitude of the annual wave of the ground surface", "K"),
-    "damping_depth_annual": ("damping depth of the annual wave in the top layer", "m"),
-    "annual_amplitude_ratio": (_RATIO, "1"),
-    "annual_amplitude_ratio_layered": (f"{_RATIO}, {_FREE}", "1"),
-    "annual_amplitude_ratio_uniform": (f"{_RATIO}, {_TOP}", "1"),
-    "annual_phase_lag": (_LAG, "s"),
-    "annual_phase_lag_layered": (f"{_LAG}, {_FREE}", "s"),
-    "annual_phase_lag_uniform": (f"{_LAG}, {_TOP}", "s"),
-    "stefan_frost_depth": ("frost depth of the coldest winter by Stefan's equation", "m"),
-    "modified_berggren_frost_depth": ("frost depth of the coldest winter by the modified Berggren equation", "m"),
-    "modified_berggren_lambda": ("coefficient lambda of the modified Berggren equation", "1"),
-    "maximum_frozen_ground_depth": ("greatest depth of frozen ground", "m"),
-}
-_SCALE = {"degree_Celsius": "temperature: on_scale", "K": "temperature: difference"}
 
 
 @dataclass(frozen=True, eq=False)
@@ -158,18 +137,11 @@ def closed_forms_beside(profile: Profile, surface_temperature: xr.DataArray, res
     found = {**_waves(profile, surface, result), **_frost(profile, surface, result)}
     return xr.Dataset(
         {
-            name: (("depth",) if np.ndim(value) else (), value, {**_labels(name), "comment": comment})
+            name: (("depth",) if np.ndim(value) else (), value, {**attributes(name), "comment": comment})
             for name, (value, comment) in found.items()
         },
         coords={"depth": result["depth"]},
     )
-
-
-def _labels(name: str) -> dict[str, str]:
-    if name in GLOSSARY:
-        return attributes(name)
-    long_name, units = _TEXTS[name]
-    return {"long_name": long_name, "units": units} | ({"units_metadata": _SCALE[units]} if units in _SCALE else {})
 
 
 # ---- the annual wave -----------------------------------------------------------------------------------------
@@ -233,17 +205,16 @@ def _waves(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
         "latent heat changes the wave, mostly to a weaker and later one."
     )
     alone = f'As if all the ground were layer 1 "{top.name}", {state}, without freezing and without end.'
-    uniform: Any = nothing
-    uniform_lag: Any = nothing
+    uniform: tuple[Any, Any] = (nothing, nothing)
     if np.isnan(found["damping_depth_annual"][0]):
         alone = found["damping_depth_annual"][1]
     else:
-        uniform, uniform_lag = amplitude_ratio(depths, diffusivity, YEAR), phase_lag(depths, diffusivity, YEAR)
+        uniform = (amplitude_ratio(depths, diffusivity, YEAR), phase_lag(depths, diffusivity, YEAR))
     values = (
-        *((np.abs(numerical), fitted), (layered, exact), (uniform, alone)),
+        *((np.abs(numerical), fitted), (layered, exact), (uniform[0], alone)),
         (np.where(np.abs(numerical) > noise, lag, np.nan), fitted + faint),
         (np.where(layered > noise, layered_lag, np.nan), exact + faint),
-        (uniform_lag, alone),
+        (uniform[1], alone),
     )
     return found | dict(zip(_WAVES, values, strict=True))
 
@@ -373,8 +344,8 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
         f"surface, {surface.mean:.1f} degC, means of frozen and thawed properties, all water freezing at 0 degC.",
         dry,
     )
-    coefficient = "What the stored heat leaves of Stefan's depth with these mean properties."
-    found[names[2]] = (steps[0].lambda_coefficient, coefficient) if steps else (np.nan, found[names[1]][1])
+    why = "What the stored heat leaves of Stefan's depth with these mean properties."
+    found[names[2]] = (steps[0].lambda_coefficient, why) if steps else (np.nan, found[names[1]][1])
     return found
 
 

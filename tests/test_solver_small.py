@@ -39,6 +39,8 @@ def test_heat_balance(tolerance):
         assert np.isfinite(run.temperature).all()
         assert error < 1e-9, seed
         paths += run.counters["paths"]
+        if tolerance == np.inf:
+            assert run.counters["halvings"] == 0  # the path alone leads out of a cycle
     assert paths > 0 or tolerance < 1.0
 
 
@@ -88,6 +90,18 @@ def test_order_in_time():
     truth = run(512)
     errors = [np.abs(run(steps) - truth).max() for steps in (8, 16, 32)]
     np.testing.assert_allclose(np.log2(np.array(errors[:-1]) / errors[1:]), 2.0, rtol=0, atol=0.2)
+
+
+def test_sub_steps_are_steps():
+    """A tolerance that nothing meets cuts each step into 64, and these are what 64 plain steps are; heat as well."""
+    column = column_of(Profile([Layer(SILT, 0.1), Layer(SAND, 0.5)]), np.linspace(0.0, 0.1, 4), np.linspace(0.1, 0.6, 5))
+    seconds, surface = np.arange(4) * 8 * HOUR, [3.0, -4.0, -2.0, 5.0]
+    cut = march_column(column, seconds, surface, 2.0, base_flux=0.4, tolerance=1e-12)
+    plain = march_column(column, seconds, surface, 2.0, base_flux=0.4, max_step=8 * HOUR / 64)
+    assert cut.run.counters["steps"] == plain.run.counters["steps"] == 3 * 64
+    np.testing.assert_allclose(cut.temperature, plain.temperature, rtol=0, atol=1e-10)
+    np.testing.assert_allclose(cut.run.heat, plain.run.heat, rtol=1e-10)
+    np.testing.assert_allclose(cut.run.heat_out, plain.run.heat_out, rtol=1e-10)
 
 
 def test_step_change():
