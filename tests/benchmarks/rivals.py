@@ -1,0 +1,158 @@
+"""The same case by general-purpose integrators and by what engineers write by hand."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numba import njit
+from scipy.integrate import solve_ivp
+from scipy.linalg import solve_banded
+
+from tests.benchmarks.case import DAY, MATERIAL, OUTPUTS, START, YEAR, Timed, fastest, grid, surface_at
+
+SCALE = 2e6
+"""Heat content is given to the integrators over this [J m-3 K-1], so that their tolerances are about kelvins."""
+
+
+class Equations:
+    """Heat balance of the nodes below the surface; state: heat content per volume over `SCALE`.
+
+    Heat content as the state, its temperature by a table, and the flux by the conduction potential: the form that lets
+    an adaptive integrator cross a freezing range with the fewest steps. The surface is the smooth curve itself.
+    """
+
+    def __init__(self) -> None:
+        curves = MATERIAL.curves()
+        depths = grid()
+        knots = np.array([-100.0, *curves.knots, 100.0])
+        self.heat, self.knots = curves.enthalpy(knots) / SCALE, knots
+        self.potential = curves.conduction_potential(knots)
+        self.h = np.diff(depths)
+        self.volume = 0.5 * (self.h + np.append(self.h[1:], 0.0)) * SCALE
+        self.begin = np.full(depths.size - 1, float(np.interp(START, knots, self.heat)))
+        self.flux = np.zeros(depths.size)
+        self.theta = np.empty(depths.size)
+
+    def rate(self, time: float, state: np.ndarray) -> np.ndarray:
+        """Rate of change of the state [1/s times K]."""
+        theta, flux = self.theta, self.flux
+        surface = 5.0 + 15.0 * math.cos(2 * math.pi * time / YEAR) + 5.0 * math.cos(2 * math.pi * time / DAY)
+        theta[0] = np.interp(surface, self.knots, self.potential)
+        # heat content to potential in one reading: both bend at the same knots
+        theta[1:] = np.interp(state, self.heat, self.potential)
+        np.divide(theta[:-1] - theta[1:], self.h, out=flux[:-1])
+        return (flux[:-1] - flux[1:]) / self.volume
+
+    def temperature(self, times: np.ndarray, states: np.ndarray) -> np.ndarray:
+        """Node temperatures (time, node) of states (time, node - 1)."""
+        return np.column_stack([surface_at(times), np.interp(states, self.heat, self.knots)])
+
+
+def lsoda(rtol: float, atol: float, max_step: float, days: int = 365) -> Timed:
+    """SciPy's LSODA with a banded Jacobian, for so many days from the start."""
+    system = Equations()
+    outputs = OUTPUTS[: days + 1]
+
+    def run():
+        return solve_ivp(
+            system.rate, (0.0, outputs[-1]), system.begin, "LSODA", outputs, rtol=rtol, atol=atol, max_step=max_step,
+            lband=1, uband=1,
+        )  # fmt: skip
+
+    least, answer = fastest(run, 1)
+    if not answer.success:
+        raise RuntimeError(answer.message)
+    return Timed(least, system.temperature(answer.t, answer.y.T), f"{answer.nfev} evaluations")
+
+
+def cvode(rtol: float, atol: float, max_step: float, repeats: int = 1) -> Timed:
+    """SUNDIALS CVODE (scikit-sundae), BDF with a banded Jacobian."""
+    from sksundae.cvode import CVODE
+
+    system = Equations()
+
+    def rate(time, state, out):
+        out[:] = system.rate(time, state)
+
+    solver = CVODE(
+        rate, rtol=rtol, atol=atol, max_step=max_step, linsolver="band", lband=1, uband=1, max_num_steps=10**7
+    )
+    least, answer = fastest(lambda: solver.solve(OUTPUTS, system.begin), repeats)
+    if not answer.success:
+        raise RuntimeError(answer.message)
+    return Timed(least, system.temperature(answer.t, answer.y), f"{answer.nfev} evaluations")
+
+
+def by_hand(repeats: int) -> Timed:
+    """What is usually written: numpy and `solve_banded`, backward Euler, an hour, properties of the step before.
+
+    Apparent heat capacity (latent heat spread over the freezing range) and conductivity by temperature, both lagged.
+    """
+    curves = MATERIAL.curves()
+    depths = grid()
+    h = np.diff(depths)
+    volume = 0.5 * (h + np.append(h[1:], 0.0))
+    knots = np.asarray(curves.knots)
+    capacity, conductivity = np.asarray(curves.heat_capacity), np.asarray(curves.conductivity)
+    step = 3600.0
+    seconds = np.arange(0.0, YEAR + 1, step)
+    surface = surface_at(seconds)
+
+    def run():
+        t = np.full(depths.size, START)
+        t[0] = surface[0]
+        out = np.empty((OUTPUTS.size, depths.size))
+        out[0] = t
+        bands = np.zeros((3, depths.size - 1))
+        for n in range(1, seconds.size):
+            segment = np.searchsorted(knots, t)
+            store = capacity[segment[1:]] * volume / step
+            k = conductivity[segment]
+            conductance = 0.5 * (k[:-1] + k[1:]) / h
+            below = np.append(conductance[1:], 0.0)
+            bands[0, 1:] = -conductance[1:]
+            bands[1] = store + conductance + below
+            bands[2, :-1] = -conductance[1:]
+            right = store * t[1:]
+            right[0] += conductance[0] * surface[n]
+            t[0], t[1:] = surface[n], solve_banded((1, 1), bands, right)
+            if n % 24 == 0:
+                out[n // 24] = t
+        return out
+
+    least, out = fastest(run, repeats)
+    return Timed(least, out, "8760 steps")
+
+
+@njit
+def _sweeps(steps, lower, diagonal, upper, right, t):
+    """So many solves of one tridiagonal system with its full elimination (Thomas), each from the last."""
+    n = diagonal.size
+    c, d = np.empty(n), np.empty(n)
+    for _ in range(steps):
+        for i in range(n):
+            d[i] = right[i] * t[i]
+        c[0] = upper[0] / diagonal[0]
+        d[0] /= diagonal[0]
+        for i in range(1, n):
+            factor = 1.0 / (diagonal[i] - lower[i] * c[i - 1])
+            c[i] = upper[i] * factor
+            d[i] = (d[i] - lower[i] * d[i - 1]) * factor
+        t[n - 1] = d[n - 1]
+        for i in range(n - 2, -1, -1):
+            t[i] = d[i] - c[i] * t[i + 1]
+
+
+def thomas(steps: int, repeats: int) -> float:
+    """Time of a bare linear sweep: one solve a step, thawed ground throughout, no output [s]."""
+    depths = grid()
+    h = np.diff(depths)
+    store = MATERIAL.heat_capacity_thawed * 0.5 * (h + np.append(h[1:], 0.0)) / 3600.0
+    conductance = MATERIAL.conductivity_thawed / h
+    below = np.append(conductance[1:], 0.0)
+    lower = np.append(0.0, -conductance[1:])
+    t = np.full(store.size, START)
+    _sweeps(1, lower, store + conductance + below, -below, store, t)  # compile
+    least, _ = fastest(lambda: _sweeps(steps, lower, store + conductance + below, -below, store, t), repeats)
+    return least
