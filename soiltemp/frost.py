@@ -187,6 +187,8 @@ def temperature_at(result: xr.Dataset, depth: Any) -> xr.DataArray:
     temperature = _temperature(result)
     known = np.asarray(temperature["depth"], dtype=np.float64)
     place = to_si(depth, "length", "depth", low=float(known[0]), high=float(known[-1]))
+    if known.size == 1:
+        return temperature.isel(depth=0)
     return temperature.interp(depth=place).assign_attrs(temperature.attrs)
 
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["deepest_frost", "frozen_zones", "ice_depth"]
+__all__ = ["deepest_frost", "frozen_zones", "ice_depth", "thaw_from_above"]
 
 Floats = NDArray[np.float64]
 
@@ -42,6 +42,42 @@ def deepest_frost(depths: Floats, temperature: Floats, isotherm: float = 0.0) ->
         share = (isotherm - upper) / (lower - upper)
     crossing = depths[deepest] + np.where(below > deepest, share, 0.0) * (depths[below] - depths[deepest])
     return np.asarray(np.where(cold.any(axis=-1), crossing, 0.0))
+
+
+def thaw_from_above(depths: Floats, temperature: Floats, isotherm: float = 0.0) -> Floats:
+    """Upper edge of the deepest zone colder than `isotherm`, by straight lines between depths.
+
+    Parameters
+    ----------
+    depths : float64 (depth,)
+        Depths, increasing [m].
+    temperature : float64 (..., depth)
+        Temperatures [degC].
+    isotherm : float
+        Temperature below which ground counts as frozen [degC].
+
+    Returns
+    -------
+    float64 (...)
+        Depth [m]; 0 where nothing is frozen, or the ground is frozen from the surface down.
+
+    Examples
+    --------
+    >>> thaw_from_above(np.array([0.0, 1.0, 2.0]), np.array([[-2.0, 2.0, 4.0], [3.0, -1.0, 1.0], [1.0, 2.0, 3.0]]))
+    array([0.  , 0.75, 0.  ])
+    """
+    cold = temperature < isotherm
+    last = depths.size - 1
+    deepest = last - np.argmax(cold[..., ::-1], axis=-1)
+    thawed = ~cold & (np.arange(depths.size) < deepest[..., None])
+    above = last - np.argmax(thawed[..., ::-1], axis=-1)
+    below = np.minimum(above + 1, last)
+    upper = np.take_along_axis(temperature, above[..., None], axis=-1)[..., 0]
+    lower = np.take_along_axis(temperature, below[..., None], axis=-1)[..., 0]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        share = (isotherm - upper) / (lower - upper)
+    edge = depths[above] + share * (depths[below] - depths[above])
+    return np.asarray(np.where(cold.any(axis=-1) & thawed.any(axis=-1), edge, 0.0))
 
 
 def frozen_zones(depths: Floats, temperature: Floats, isotherm: float = 0.0) -> list[tuple[float, float]]:

@@ -14,7 +14,7 @@ from soiltemp.column import Column
 from soiltemp.errors import InputError, message
 from soiltemp.glossary import attributes
 from soiltemp.ground import Profile
-from soiltemp.isotherm import deepest_frost, ice_depth
+from soiltemp.isotherm import deepest_frost, ice_depth, thaw_from_above
 from soiltemp.problem import Problem, coarsened, read_problem, whole_years
 from soiltemp.solver.cycle import find_cycle
 from soiltemp.solver.march import March, march
@@ -91,8 +91,8 @@ def solve(
     xr.Dataset
         `ground_temperature` (time, depth) [degC]; `surface_heat_flux` and `base_heat_flux` (time) [W m-2], positive
         downward (so a `base_heat_flux` argument of 0.06 comes back as -0.06), means over the time since the previous
-        output (the value at the start, for the first); `heat_content` (time) [J m-2] above 0 degC; `frost_depth` and
-        `frozen_ground_depth` (time) [m]; `ground_temperature_error` (depth) [K], `frost_depth_error` and
+        output (the value at the start, for the first); `heat_content` (time) [J m-2] above 0 degC; `frost_depth`,
+        `frozen_ground_depth` and `thaw_depth` (time) [m]; `ground_temperature_error` (depth) [K], `frost_depth_error` and
         `frozen_ground_depth_error` [m].
 
     Raises
@@ -196,6 +196,7 @@ def _labelled(problem: Problem, answer: _Answer) -> xr.Dataset:
         "heat_content": (("time",), column.heat_content(run.temperature)),
         "frost_depth": (("time",), answer.frost),
         "frozen_ground_depth": (("time",), answer.frozen),
+        "thaw_depth": (("time",), thaw_from_above(column.depths, run.temperature)),
     }
     result = xr.Dataset(
         {name: (dims, data, attributes(name)) for name, (dims, data) in values.items()},
@@ -207,7 +208,7 @@ def _labelled(problem: Problem, answer: _Answer) -> xr.Dataset:
     result["ground_temperature"].attrs["cell_methods"] = "time: point depth: point"
     for name in ("surface_heat_flux", "base_heat_flux"):
         result[name].attrs["cell_methods"] = "time: mean"
-    for name in ("heat_content", "frost_depth", "frozen_ground_depth"):
+    for name in ("heat_content", "frost_depth", "frozen_ground_depth", "thaw_depth"):
         result[name].attrs["cell_methods"] = "time: point"
     return result
 
