@@ -46,12 +46,12 @@ WIDTH = 16
 """Columns abreast: two vectors of eight doubles. Wider blocks gain little a node and solve more lanes again for one."""
 
 # Distances within a record, unsigned: a signed index may be negative, and code that looks for it does not vectorise.
-# The first eight rows are the piece in force, in the order of `stage.PIECE_FIELDS`.
-A, B, UA, U, VA, V, LO, HI = (np.uintp(field * WIDTH) for field in range(8))
-P, F, E, K, Z = (np.uintp(field * WIDTH) for field in range(8, 13))  # factors, constant part, substitution
-S, R1, R2 = (np.uintp(field * WIDTH) for field in range(13, 16))  # heat at the start, right sides of the stages
-S_NEW, T = (np.uintp(field * WIDTH) for field in range(16, 18))  # results of a stage
-GAP, OUTSIDE, MISS = (np.uintp(field * WIDTH) for field in range(18, 21))  # error so far; worst up to this node
+# Rows that are used together stand together.
+UA, U, VA, V = (np.uintp(row * WIDTH) for row in range(4))  # the piece in force, see `stage.PIECE_FIELDS`
+F, P, K, Z, E, A, B = (np.uintp(row * WIDTH) for row in range(4, 11))  # factors, constant part, substitution
+T, LO, HI, OUTSIDE, MISS = (np.uintp(row * WIDTH) for row in range(11, 16))  # result; worst up to this node
+R1, S, GAP, R2, S_NEW = (np.uintp(row * WIDTH) for row in range(16, 21))  # right sides, heat, error estimate so far
+PIECE_ROWS = (A, B, UA, U, VA, V, LO, HI)
 FIELDS = 21
 NEXT = np.uintp(FIELDS * WIDTH)
 
@@ -206,7 +206,7 @@ def _settle(x, n, tables, table_of, segment, c, stage_number, boundary, watch, f
                 else:
                     continue
                 for field in range(8):
-                    x[q + uintp(field * WIDTH)] = tables[table_of[j], i, segment[i, j], field]
+                    x[q + PIECE_ROWS[field]] = tables[table_of[j], i, segment[i, j], field]
                 top = min(top, max(1, i - 1))
                 base = max(base, min(n - 1, i + 1))
         if not moved:
@@ -243,7 +243,7 @@ def _put_lane(x, j, piece, segment, lane_segment, t, s, flux, c):
     for i in range(1, t.size):
         q = uintp(i) * NEXT + uintp(j)
         for field in range(8):
-            x[q + uintp(field * WIDTH)] = piece[field, i]
+            x[q + PIECE_ROWS[field]] = piece[field, i]
         x[q + T], x[q + S], x[q + R1] = t[i], s[i], s[i] + c * flux[i]
         segment[i, j] = lane_segment[i]
 
@@ -274,7 +274,9 @@ def _march_block(
     The width comes as an argument because a loop of so few known rounds is unrolled before it can be vectorised.
     """
     n = temperature.shape[1]
-    x = np.zeros((n + 1) * FIELDS * WIDTH)
+    raw = np.zeros((n + 1) * FIELDS * WIDTH + 8)
+    shift = (-raw.ctypes.data % 64) // 8  # vectors that straddle two cache lines cost a third more
+    x = raw[shift : shift + (n + 1) * FIELDS * WIDTH]
     segment, factored = np.zeros((n, WIDTH), dtype=np.int64), np.zeros(1)
     # one column alone, for `careful`
     work, piece, lane_segment, alone = (

@@ -1,8 +1,9 @@
 """The one case that all are timed on: a year of frost under an hourly surface, 95 elements to 20 m.
 
-Surface 5 + 15 cos(year) + 5 cos(day) degC; frozen/thawed conductivity 2.3/1.5 W/(m K), heat capacity 2.0/2.8 MJ/(m3 K),
-latent heat 90 MJ/m3 over 0.5 K; start 5 degC throughout. Frost goes to 1.7 m. The error of a run is its largest
-deviation anywhere below 0.3 m, at the end of any day, from a run of ours with steps of 60 s.
+Surface 5 + 15 cos(year) + 5 cos(day) degC, known at each hour and straight in between, as a weather record is; frozen/thawed conductivity 2.3/1.5 W/(m K), heat capacity 2.0/2.8 MJ/(m3 K),
+latent heat 90 MJ/m3 over 0.5 K; start 5 degC throughout. Frost goes to 1.8 m. The error of a run is its largest
+deviation anywhere below 0.3 m, at the end of any day, from a run of ours with steps of 60 s under the same surface:
+the hourly record, or, for rivals that are given it, the smooth curve itself.
 """
 
 from __future__ import annotations
@@ -51,11 +52,12 @@ class Timed:
     seconds: float
     temperature: np.ndarray
     note: str = ""
+    surface: str = "hourly record"
 
     @property
     def error(self) -> float:
-        """Largest deviation from the reference [K]."""
-        return float(np.abs(self.temperature - reference())[:, grid() > READ_FROM].max())
+        """Largest deviation from the reference under the same surface [K]."""
+        return float(np.abs(self.temperature - reference(self.surface))[:, grid() > READ_FROM].max())
 
 
 def fastest(run: Callable[[], object], repeats: int) -> tuple[float, object]:
@@ -68,9 +70,9 @@ def fastest(run: Callable[[], object], repeats: int) -> tuple[float, object]:
     return least, result
 
 
-def ours(step: float, tolerance: float = np.inf, repeats: int = 1) -> Timed:
+def ours(step: float, tolerance: float = np.inf, repeats: int = 1, surface: str = "hourly record") -> Timed:
     """Our solver with a step and a tolerance."""
-    seconds = np.arange(0.0, YEAR + 1, step)
+    seconds = np.arange(0.0, YEAR + 1, step if surface == "smooth curve" else 3600.0)
     schedule = make_schedule(seconds, surface_at(seconds), OUTPUTS, max_step=step)
     ground = column()
     start = np.full(ground.depths.size, START)
@@ -80,15 +82,16 @@ def ours(step: float, tolerance: float = np.inf, repeats: int = 1) -> Timed:
 
     least, result = fastest(run, repeats)
     counters = result.counters
-    return Timed(least, result.temperature, f"{counters['solves'] / counters['steps'] / 2:.2f} solves a stage")
+    note = f"{counters['steps']} steps, {counters['solves'] / counters['steps'] / 2:.2f} solves a stage"
+    return Timed(least, result.temperature, note, surface)
 
 
 @cache
-def reference() -> np.ndarray:
+def reference(surface: str) -> np.ndarray:
     """Temperatures at the end of each day by steps of 60 s."""
-    return ours(60.0).temperature
+    return ours(60.0, surface=surface).temperature
 
 
 def frost_reached() -> float:
     """Deepest 0 degC line of the reference [m]."""
-    return float(deepest_frost(grid(), reference()).max())
+    return float(deepest_frost(grid(), reference("hourly record")).max())
