@@ -77,7 +77,9 @@ def test_another_isotherm_is_a_shift(case, isotherm):
 def test_zero_line_does_not_ask_how_cold(case, factor):
     """Temperatures in other units of size have their 0 at the same depths."""
     depths, temperature = case
-    assert float(deepest_frost(depths, factor * temperature)) == pytest.approx(float(deepest_frost(depths, temperature)), abs=1e-9)
+    assert float(deepest_frost(depths, factor * temperature)) == pytest.approx(
+        float(deepest_frost(depths, temperature)), abs=1e-9
+    )
 
 
 @given(st.lists(st.lists(celsius, min_size=6, max_size=6), min_size=1, max_size=8))

@@ -7,6 +7,8 @@ ground with properties that soils have, and not that they were predicted. With b
 diffusivity and latent heat over heat capacity can be told from the data: nothing is claimed of the conductivity.
 """
 
+import sys
+
 import numpy as np
 import pytest
 import xarray as xr
@@ -43,7 +45,7 @@ def rmse(probes, values):
 
 def told(capsys, station, what, errors):
     with capsys.disabled():
-        print(f"\n{station}, {what}: RMSE at 10/20/50 cm {errors[0]:.2f}/{errors[1]:.2f}/{errors[2]:.2f} K", end="")
+        sys.stdout.write(f"\n{station}, {what}: RMSE at 10/20/50 cm {errors[0]:.2f}/{errors[1]:.2f}/{errors[2]:.2f} K")
 
 
 def test_buffalo_south_dakota(capsys):

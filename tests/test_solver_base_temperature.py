@@ -32,10 +32,17 @@ def test_steady_slab_with_two_conductivities():
 def test_wave_from_below():
     """The base as warm as a wave and the surface held: by symmetry the same as a surface wave over a held base."""
     seconds = np.arange(0.0, 30 * DAY + 1, HOUR)
-    wave, held = points(seconds, 5.0 + 4.0 * np.sin(2 * np.pi * seconds / (5 * DAY))), points(seconds, np.full(seconds.size, 5.0))
+    wave, held = (
+        points(seconds, 5.0 + 4.0 * np.sin(2 * np.pi * seconds / (5 * DAY))),
+        points(seconds, np.full(seconds.size, 5.0)),
+    )
     depths = np.linspace(0.0, 0.5, 11)
-    above = solve(uniform(inert(1.0, 2e6), 0.5), wave, base_temperature=held, initial=5.0, depths=depths, tolerance=1e-3)
-    below = solve(uniform(inert(1.0, 2e6), 0.5), held, base_temperature=wave, initial=5.0, depths=depths, tolerance=1e-3)
+    above = solve(
+        uniform(inert(1.0, 2e6), 0.5), wave, base_temperature=held, initial=5.0, depths=depths, tolerance=1e-3
+    )
+    below = solve(
+        uniform(inert(1.0, 2e6), 0.5), held, base_temperature=wave, initial=5.0, depths=depths, tolerance=1e-3
+    )
     # the grid is not symmetric (1 cm at the surface, 2.5 cm at the base): a grid error of 4 K (h/d)^2/12
     np.testing.assert_allclose(
         above.ground_temperature.values, below.ground_temperature.values[:, ::-1], rtol=0, atol=0.02
@@ -45,7 +52,9 @@ def test_wave_from_below():
 def deep_and_cut(cut):
     """A deep column, and its upper part under the temperature that the deep one has at the cut."""
     seconds = np.arange(0.0, 120 * DAY + 1, 3 * HOUR)
-    surface = points(seconds, 3.0 - 12.0 * np.sin(np.pi * seconds / (120 * DAY)) + 4.0 * np.cos(2 * np.pi * seconds / DAY))
+    surface = points(
+        seconds, 3.0 - 12.0 * np.sin(np.pi * seconds / (120 * DAY)) + 4.0 * np.cos(2 * np.pi * seconds / DAY)
+    )
     deep_profile = Profile([Layer(SILT, 0.6), Layer(SAND, cut - 0.6), Layer(SAND, 10.0 - cut)])
     start = xr.DataArray([2.0, 9.0, 8.0], {"depth": [0.0, 4.0, 10.0]}, "depth")
     deep = solve(deep_profile, surface, initial=start, output_every="3h", numerical_error="left out")
@@ -64,7 +73,8 @@ def test_cut_from_a_deeper_column(cut):
     deep, part = deep_and_cut(cut)
     depths = np.arange(0.1, cut, 0.1)
     ours, theirs = (
-        np.array([np.interp(depths, result.depth, row) for row in result.ground_temperature.values]) for result in (part, deep)
+        np.array([np.interp(depths, result.depth, row) for row in result.ground_temperature.values])
+        for result in (part, deep)
     )
     np.testing.assert_allclose(ours, theirs, rtol=0, atol=0.02)
     np.testing.assert_allclose(part.frozen_ground_depth, deep.frozen_ground_depth, rtol=0, atol=0.005)

@@ -42,15 +42,15 @@ def block_case(columns, seed, profiles=4, forcings=3, days=40):
     )  # fmt: skip
     schedule = make_schedule(seconds, surfaces[0], np.arange(0.0, days * DAY + 1, 5 * DAY), max_step=3 * HOUR)
     surfaces = np.stack([np.interp(schedule.seconds, seconds, row) for row in surfaces])
-    return dict(
-        tables=padded,
-        which=rng.integers(0, len(tables), columns),
-        schedule=schedule,
-        surfaces=surfaces,
-        forced_by=rng.integers(0, forcings, columns),
-        start=rng.uniform(-3.0, 8.0, (columns, 1)) + np.zeros(padded.shape[1]),
-        base_flux=rng.uniform(-0.2, 0.2, columns),
-    )
+    return {
+        "tables": padded,
+        "which": rng.integers(0, len(tables), columns),
+        "schedule": schedule,
+        "surfaces": surfaces,
+        "forced_by": rng.integers(0, forcings, columns),
+        "start": rng.uniform(-3.0, 8.0, (columns, 1)) + np.zeros(padded.shape[1]),
+        "base_flux": rng.uniform(-0.2, 0.2, columns),
+    }
 
 
 def run_block(case, *, tolerance=0.05, threads="serial"):
@@ -62,7 +62,10 @@ def run_block(case, *, tolerance=0.05, threads="serial"):
 
 def run_alone(case, column, tolerance=0.05):
     own = case["schedule"].__class__(
-        case["schedule"].seconds, case["surfaces"][case["forced_by"][column]], case["schedule"].parts, case["schedule"].row
+        case["schedule"].seconds,
+        case["surfaces"][case["forced_by"][column]],
+        case["schedule"].parts,
+        case["schedule"].row,
     )
     return march(
         case["tables"][case["which"][column]], own, case["start"][column], base_flux=case["base_flux"][column], watch=3,

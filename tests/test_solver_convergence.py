@@ -56,7 +56,9 @@ def test_order_in_time():
     depths = np.linspace(0.0, BASE, elements + 1)
     column = column_of(uniform(GROUND, BASE), depths)
     rate = DIFFUSIVITY / (BASE / elements) ** 2
-    system = rate * (np.diag(np.full(elements - 1, 1.0), -1) - 2.0 * np.eye(elements) + np.diag(np.ones(elements - 1), 1))
+    system = rate * (
+        np.diag(np.full(elements - 1, 1.0), -1) - 2.0 * np.eye(elements) + np.diag(np.ones(elements - 1), 1)
+    )
     system[-1, -2] = 2.0 * rate  # the base node is half an element
     start = 10.0 * np.sin(0.5 * np.pi * depths / BASE) + 3.0 * np.sin(2.5 * np.pi * depths / BASE)
     exact = expm(system * end) @ start[1:]

@@ -116,11 +116,14 @@ def test_ground_that_hovers_at_zero_settles_or_says_so(mean):
     A half settled start must not come back."""
     column = build_column(uniform(WET, 30.0), frost_zone=3.0)
     schedule = year_of(mean, 14.0, 86400.0)
+    settings = {"base_flux": 0.05, "watch": 1, "tolerance": 0.05}
     try:
-        cycle = find_cycle(column.table, schedule, base_flux=0.05, watch=1, tolerance=0.05)
-    except SolverError as error:
-        assert str(error).startswith('initial "cycle": after 60 repeated years')
-        assert str(error).endswith("give `initial` as a measured profile or a temperature instead.")
+        cycle = find_cycle(column.table, schedule, **settings)
+    except SolverError:
+        cycle = None
+    if cycle is None:
+        with pytest.raises(SolverError, match=r'^initial "cycle": after 60 repeated years .*temperature instead\.$'):
+            find_cycle(column.table, schedule, **settings)
         return
     later = years_after(column, schedule, cycle.temperature, 0.05, 100)
     np.testing.assert_allclose(later, cycle.temperature, rtol=0, atol=0.01)

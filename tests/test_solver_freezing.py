@@ -1,5 +1,7 @@
 """Truth in closed form: the two-phase freezing front, and the textbook's frost depth beside it."""
 
+import sys
+
 import numpy as np
 import pytest
 
@@ -18,10 +20,10 @@ from tests.helpers.columns import DAY, column_of, constant, march_column, unifor
 # Exact front: F. Neumann's two-phase solution in H. S. Carslaw and J. C. Jaeger, Conduction of Heat in Solids, 2nd ed.,
 # Oxford 1959, section 11.2. Columns are 25 m deep: after 60 days nothing is felt there.
 CASES = {
-    "silt": dict(kf=2.3, kt=1.5, cf=2.0e6, ct=2.8e6, latent=90e6, initial=5.0, surface=-10.0),
-    "wet clay": dict(kf=1.9, kt=1.2, cf=2.1e6, ct=2.8e6, latent=150e6, initial=8.0, surface=-6.0),
-    "dry gravel": dict(kf=2.5, kt=2.5, cf=2.2e6, ct=2.2e6, latent=40e6, initial=2.0, surface=-15.0),
-    "peat": dict(kf=1.4, kt=0.45, cf=2.0e6, ct=3.8e6, latent=230e6, initial=6.0, surface=-12.0),
+    "silt": {"kf": 2.3, "kt": 1.5, "cf": 2.0e6, "ct": 2.8e6, "latent": 90e6, "initial": 5.0, "surface": -10.0},
+    "wet clay": {"kf": 1.9, "kt": 1.2, "cf": 2.1e6, "ct": 2.8e6, "latent": 150e6, "initial": 8.0, "surface": -6.0},
+    "dry gravel": {"kf": 2.5, "kt": 2.5, "cf": 2.2e6, "ct": 2.2e6, "latent": 40e6, "initial": 2.0, "surface": -15.0},
+    "peat": {"kf": 1.4, "kt": 0.45, "cf": 2.0e6, "ct": 3.8e6, "latent": 230e6, "initial": 6.0, "surface": -12.0},
 }
 
 
@@ -32,11 +34,11 @@ def material_of(case, freezing_range):
 
 
 def exact_of(case):
-    return dict(
-        initial=case["initial"], surface=case["surface"], conductivity_frozen=case["kf"],
-        conductivity_thawed=case["kt"], heat_capacity_frozen=case["cf"], heat_capacity_thawed=case["ct"],
-        latent_heat=case["latent"],
-    )  # fmt: skip
+    return {
+        "initial": case["initial"], "surface": case["surface"], "conductivity_frozen": case["kf"],
+        "conductivity_thawed": case["kt"], "heat_capacity_frozen": case["cf"], "heat_capacity_thawed": case["ct"],
+        "latent_heat": case["latent"],
+    }  # fmt: skip
 
 
 @pytest.mark.parametrize("name", CASES)
@@ -121,16 +123,21 @@ def test_beside_the_manual(capsys):
 
     def ground(thawed, frozen):
         return Profile(
-            [Layer(Material("sandy silt", thawed, frozen, heat_capacity, heat_capacity, latent, freezing_range=0.05), 30)]
+            [
+                Layer(
+                    Material("sandy silt", thawed, frozen, heat_capacity, heat_capacity, latent, freezing_range=0.05),
+                    30,
+                )
+            ]
         )
 
     same = solve(ground(0.76 * btu, 0.76 * btu), constant(surface, 160), initial=initial)
     both = solve(ground(0.7154 * btu, 0.8025 * btu), constant(surface, 160), initial=initial)
     depth_same, depth_both = float(same.frozen_ground_depth[-1]), float(both.frozen_ground_depth[-1])
     with capsys.disabled():
-        print(
-            f"\nUFC 3-130-06, 3-3: manual 5.8 ft, exact lambda {manual / foot:.3f} ft, solver {depth_same / foot:.3f} ft, "
-            f"with frozen and thawed conductivity {depth_both / foot:.3f} ft"
+        sys.stdout.write(
+            f"\nUFC 3-130-06, 3-3: manual 5.8 ft, exact lambda {manual / foot:.3f} ft, "
+            f"solver {depth_same / foot:.3f} ft, with both conductivities {depth_both / foot:.3f} ft"
         )
     assert manual / foot == pytest.approx(5.8, rel=0.015)  # lambda is read off a chart to 0.01
     assert depth_same == pytest.approx(manual, rel=0.01)

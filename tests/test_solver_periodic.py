@@ -41,9 +41,7 @@ def daily_wave(column, diffusivity, step, depths):
     surface = 10.0 + 8.0 * np.cos(2 * np.pi * seconds / DAY)
     marched = march_column(column, seconds, surface, 10.0)
     last = slice(-round(DAY / step) - 1, -1)
-    wave = 2.0 * np.mean(
-        (marched.temperature[last] - 10.0) * np.exp(-2j * np.pi * seconds[last, None] / DAY), axis=0
-    )
+    wave = 2.0 * np.mean((marched.temperature[last] - 10.0) * np.exp(-2j * np.pi * seconds[last, None] / DAY), axis=0)
     at = np.searchsorted(column.depths, depths - 1e-9)
     np.testing.assert_allclose(column.depths[at], depths)
     return np.abs(wave[at]) / 8.0, (-np.angle(wave[at]) / (2 * np.pi) * DAY) % DAY

@@ -32,7 +32,9 @@ def test_lsoda_says_the_same(name):
     column = column_of(profile, *grid)
     seconds = np.arange(0.0, 75 * DAY + 1, HOUR)
     day = seconds / DAY
-    surface = 2.0 - 9.0 * np.sin(np.pi * day / 75) - 5.0 * np.cos(2 * np.pi * day) + 9.0 * np.exp(-(((day - 50) / 3) ** 2))
+    surface = (
+        2.0 - 9.0 * np.sin(np.pi * day / 75) - 5.0 * np.cos(2 * np.pi * day) + 9.0 * np.exp(-(((day - 50) / 3) ** 2))
+    )
     start = np.interp(column.depths, [0.0, column.depths[-1]], [-3.0, 8.0])
     outputs = np.arange(0.0, 75 * DAY + 1, 3 * DAY)
     ours = march_column(

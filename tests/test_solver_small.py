@@ -63,7 +63,13 @@ def test_steady_flux_across_the_freezing_point():
     column = column_of(uniform(ground, 3.0), depths)
     schedule = make_schedule(np.arange(4) * 100 * YEAR, np.full(4, -6.0), np.arange(4) * 100 * YEAR, max_step=1e12)
     run = march(
-        column.table, schedule, np.full(13, 1.0), base_flux=0.0, watch=1, tolerance=np.inf, base_temperature=np.full(4, 6.0)
+        column.table,
+        schedule,
+        np.full(13, 1.0),
+        base_flux=0.0,
+        watch=1,
+        tolerance=np.inf,
+        base_temperature=np.full(4, 6.0),
     )
     expected = np.interp(depths, [0.0, 2.0, 3.0], [-6.0, 0.0, 6.0])
     np.testing.assert_allclose(run.temperature[-1], expected, rtol=0, atol=0.01)
@@ -94,7 +100,9 @@ def test_order_in_time():
 
 def test_sub_steps_are_steps():
     """A tolerance that nothing meets cuts each step into 64, and these are what 64 plain steps are; heat as well."""
-    column = column_of(Profile([Layer(SILT, 0.1), Layer(SAND, 0.5)]), np.linspace(0.0, 0.1, 4), np.linspace(0.1, 0.6, 5))
+    column = column_of(
+        Profile([Layer(SILT, 0.1), Layer(SAND, 0.5)]), np.linspace(0.0, 0.1, 4), np.linspace(0.1, 0.6, 5)
+    )
     seconds, surface = np.arange(4) * 8 * HOUR, [3.0, -4.0, -2.0, 5.0]
     cut = march_column(column, seconds, surface, 2.0, base_flux=0.4, tolerance=1e-12)
     plain = march_column(column, seconds, surface, 2.0, base_flux=0.4, max_step=8 * HOUR / 64)
@@ -130,7 +138,9 @@ def test_periodic_wave_in_layers():
 def test_layer_cut_in_two_is_the_same_wave():
     """Identity of the transfer matrices, and the half space: exp(-(1 + i) z / d)."""
     whole = layered_periodic_ratio([1.5, 0.5], [2e6, 3e6], [0.5, 30.0], YEAR, [0.2, 0.5, 2.0])
-    parts = layered_periodic_ratio([1.5, 1.5, 0.5, 0.5], [2e6, 2e6, 3e6, 3e6], [0.3, 0.2, 1.0, 29.0], YEAR, [0.2, 0.5, 2.0])
+    parts = layered_periodic_ratio(
+        [1.5, 1.5, 0.5, 0.5], [2e6, 2e6, 3e6, 3e6], [0.3, 0.2, 1.0, 29.0], YEAR, [0.2, 0.5, 2.0]
+    )
     np.testing.assert_allclose(parts, whole, rtol=1e-9)
     half_space = layered_periodic_ratio([1.5], [2e6], [60.0], YEAR, [1.0])
     damping = np.sqrt(2 * 0.75e-6 / (2 * np.pi / YEAR))
@@ -139,7 +149,9 @@ def test_layer_cut_in_two_is_the_same_wave():
 
 def test_second_opinion():
     """LSODA on the same equations, a week of frost in two layers: within 0.03 K."""
-    column = column_of(Profile([Layer(SILT, 0.1), Layer(SAND, 0.5)]), np.linspace(0.0, 0.1, 4), np.linspace(0.1, 0.6, 7))
+    column = column_of(
+        Profile([Layer(SILT, 0.1), Layer(SAND, 0.5)]), np.linspace(0.0, 0.1, 4), np.linspace(0.1, 0.6, 7)
+    )
     seconds = np.arange(0.0, 7 * DAY + 1, 6 * HOUR)
     surface = 1.0 - 4.0 * seconds / (3 * DAY) + 3.0 * np.cos(2 * np.pi * seconds / DAY)
     start = np.full(column.depths.size, 3.0)
@@ -173,7 +185,9 @@ def test_ice_under_a_thawed_top():
 
 
 def test_block_of_columns_has_the_bits_of_one():
-    column = column_of(Profile([Layer(SILT, 0.1), Layer(SAND, 0.5)]), np.linspace(0.0, 0.1, 4), np.linspace(0.1, 0.6, 5))
+    column = column_of(
+        Profile([Layer(SILT, 0.1), Layer(SAND, 0.5)]), np.linspace(0.0, 0.1, 4), np.linspace(0.1, 0.6, 5)
+    )
     seconds = np.arange(0.0, 4 * DAY + 1, 8 * HOUR)
     surface = 2.0 - 6.0 * np.sin(2 * np.pi * seconds / (3 * DAY))
     alone = march_column(column, seconds, surface, 1.0, base_flux=0.3, tolerance=0.05)
@@ -201,7 +215,9 @@ def test_cycle():
 
 def test_stated_error_is_there():
     seconds = np.arange(0.0, 3 * DAY + 1, 6 * HOUR)
-    result = solve(uniform(SILT, 0.5), points(seconds, 2.0 - 5.0 * seconds / DAY), initial=2.0, max_step="6h", tolerance=5.0)
+    result = solve(
+        uniform(SILT, 0.5), points(seconds, 2.0 - 5.0 * seconds / DAY), initial=2.0, max_step="6h", tolerance=5.0
+    )
     assert 1e-4 < float(result.ground_temperature_error[3:].max()) < 2.0
     assert float(result.ground_temperature_error[0]) == pytest.approx(0.0, abs=1e-9)
 
@@ -211,7 +227,9 @@ def test_first_elements_are_thin_and_layers_are_kept():
     assert depths[1] < 0.012
     assert {0.5, 2.5, 12.5} <= set(np.round(depths, 9))
     assert np.diff(depths)[depths[:-1] < 1.4].max() < 0.026
-    assert np.bincount(layer).tolist() == [int(((depths > a) & (depths <= b)).sum()) for a, b in ((0, 0.5), (0.5, 2.5), (2.5, 12.5))]
+    assert np.bincount(layer).tolist() == [
+        int(((depths > a) & (depths <= b)).sum()) for a, b in ((0, 0.5), (0.5, 2.5), (2.5, 12.5))
+    ]
 
 
 def test_means_keep_their_mean():

@@ -123,7 +123,12 @@ def test_means_give_the_ground_their_mean():
     days = np.datetime64("2021-01-01", "ns") + np.arange(60) * np.timedelta64(1, "D")
     means = xr.DataArray(rng.normal(0.0, 6.0, 60), {"time": days}, "time", attrs={"cell_methods": "time: mean"})
     result = solve(
-        uniform(inert(1.5, 2e6), 10.0), means, initial=0.0, output_every="1h", depths=[0.0, 0.5], numerical_error="left out"
+        uniform(inert(1.5, 2e6), 10.0),
+        means,
+        initial=0.0,
+        output_every="1h",
+        depths=[0.0, 0.5],
+        numerical_error="left out",
     )
     assert result.sizes["time"] == 60 * 24 + 1  # the last mean lasts a day
     surface = result.ground_temperature.isel(depth=0).values
@@ -139,7 +144,9 @@ def test_means_and_points_are_not_taken_for_each_other():
     mean = point.assign_attrs(cell_methods="time: mean")
     ground = uniform(inert(1.5, 2e6), 5.0)
     first, second = (
-        solve(ground, series, initial=0.0, depths=[0.2], output_every="1h", numerical_error="left out").ground_temperature
+        solve(
+            ground, series, initial=0.0, depths=[0.2], output_every="1h", numerical_error="left out"
+        ).ground_temperature
         for series in (point, mean)
     )
     peaks = [int(np.argmax(series.values[24 * 20 : 24 * 32, 0])) for series in (first, second)]
@@ -149,10 +156,10 @@ def test_means_and_points_are_not_taken_for_each_other():
 def test_stated_error_covers_the_true_one():
     """`ground_temperature_error` against a run with a tenth of the step and tolerance on the same grid is pessimistic
     but of the same kind; `frozen_ground_depth_error` covers the distance to the exact front of Neumann."""
-    case = dict(
-        initial=5.0, surface=-10.0, conductivity_frozen=1.9, conductivity_thawed=1.2, heat_capacity_frozen=2.1e6,
-        heat_capacity_thawed=2.8e6, latent_heat=110e6,
-    )  # fmt: skip
+    case = {
+        "initial": 5.0, "surface": -10.0, "conductivity_frozen": 1.9, "conductivity_thawed": 1.2, "heat_capacity_frozen": 2.1e6,
+        "heat_capacity_thawed": 2.8e6, "latent_heat": 110e6,
+    }  # fmt: skip
     sharp = SILT.with_values(freezing_range=0.01)
     result = solve(uniform(sharp, 20.0), constant(-10.0, 60), initial=5.0)
     front = neumann_front(seconds_of(result)[-1], **case)
@@ -173,7 +180,7 @@ def test_error_can_be_left_out():
 def test_tolerance_and_step_shrink_the_error():
     """Against a run with steps of a minute, read at 0.3 m and below: ten times the steps, a tenth of the error or less."""
     surface = weather(30)
-    settings = dict(initial=6.0, depths=[0.3, 0.6, 1.0], numerical_error="left out")
+    settings = {"initial": 6.0, "depths": [0.3, 0.6, 1.0], "numerical_error": "left out"}
     truth = solve(GROUND, surface, max_step=60.0, tolerance=1e-4, **settings).ground_temperature
 
     def miss(**more):
@@ -271,14 +278,14 @@ def test_progress_is_told_and_can_cancel():
     assert shares[-1] == 1.0
     assert {what for _, what in told} == {"finding the periodic start", "marching"}
 
-    class Cancelled(Exception):
+    class CancelledError(Exception):
         pass
 
     def cancel(share, what):
         if share > 0.1:
-            raise Cancelled(what)
+            raise CancelledError(what)
 
-    with pytest.raises(Cancelled, match="finding"):
+    with pytest.raises(CancelledError, match="finding"):
         solve(GROUND, surface, initial="cycle", progress=cancel)
 
 

@@ -200,7 +200,7 @@ def march(
         total += gained[:, local[-1]]
         if progress is not None:
             progress(last / intervals)
-    heat[0] += _end_store(table[0], temperature[:, 0]) - _end_store(table[0], schedule.surface[:1])
+    heat[0] += _end_store(table[0], schedule.surface[schedule.row >= 0]) - _end_store(table[0], schedule.surface[:1])
     if base_given:
         temperature[:, -1] = base[schedule.row >= 0]
         heat[1] -= _end_store(table[-1], temperature[:, -1]) - _end_store(table[-1], base[:1])

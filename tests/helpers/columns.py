@@ -26,7 +26,9 @@ def uniform(material: Material, base: float) -> Profile:
     return Profile([Layer(material, base)])
 
 
-def points(seconds: np.ndarray | list[float], celsius: np.ndarray | list[float], start: str = "2020-01-01") -> xr.DataArray:
+def points(
+    seconds: np.ndarray | list[float], celsius: np.ndarray | list[float], start: str = "2020-01-01"
+) -> xr.DataArray:
     """Point values of a surface temperature from `start` on."""
     since = np.round(np.asarray(seconds, dtype=np.float64) * 1e9).astype("timedelta64[ns]")
     return xr.DataArray(celsius, dims="time", coords={"time": np.datetime64(start, "ns") + since})
