@@ -27,11 +27,14 @@ SMALLEST_ELEMENT = 0.01
 FINE_ELEMENT = 0.025
 """Largest element down to the depth that frost may reach [m]: an element is what the 0 degC line is uncertain by."""
 
-GROWTH = 1.12
+GROWTH = 1.04
 """Largest ratio of neighbouring elements, and of an element below the frost zone to its neighbour above."""
 
 COARSEST_ELEMENT = 0.5
 """Largest element anywhere [m]: an annual wave (damping depth 1 to 4 m) is resolved by it."""
+
+LEAST_ELEMENTS = 8
+"""Fewest elements of a column, so that half of them still are one."""
 
 SAME_KNOT = 1e-9
 """Knots of two materials closer than this [K] are one knot of the node between them."""
@@ -77,12 +80,13 @@ def graded_grid(
     target = np.minimum(target, COARSEST_ELEMENT)
     density = fineness / target
     above = np.concatenate([[0.0], np.cumsum(np.diff(ladder) * 0.5 * (density[1:] + density[:-1]))])
+    least = -(-LEAST_ELEMENTS // (2 * len(thicknesses)))
     pieces: list[Floats] = [np.zeros(1)]
     layer: list[int] = []
     top = 0.0
     for index, thickness in enumerate(thicknesses):
         bounds = np.interp([top, top + thickness], ladder, above)
-        elements = 2 * max(1, int(np.ceil(0.5 * (bounds[1] - bounds[0]) - 1e-9)))
+        elements = 2 * max(least, int(np.ceil(0.5 * (bounds[1] - bounds[0]) - 1e-9)))
         inner = np.interp(np.linspace(bounds[0], bounds[1], elements + 1), above, ladder)
         inner[0], inner[-1] = top, top + thickness
         pieces.append(inner[1:])

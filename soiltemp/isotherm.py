@@ -10,6 +10,14 @@ __all__ = ["deepest_frost", "frozen_zones", "ice_depth", "thaw_from_above"]
 Floats = NDArray[np.float64]
 
 
+def _share(isotherm: float, first: Floats, second: Floats) -> Floats:
+    """Where between two temperatures the isotherm lies, 0 to 1; 0 where they are equal."""
+    difference = second - first
+    return np.asarray(
+        np.where(difference == 0.0, 0.0, (isotherm - first) / np.where(difference == 0.0, 1.0, difference))
+    )
+
+
 def deepest_frost(depths: Floats, temperature: Floats, isotherm: float = 0.0) -> Floats:
     """Lower edge of the deepest zone colder than `isotherm`, by straight lines between depths.
 
@@ -38,9 +46,7 @@ def deepest_frost(depths: Floats, temperature: Floats, isotherm: float = 0.0) ->
     below = np.minimum(deepest + 1, last)
     upper = np.take_along_axis(temperature, deepest[..., None], axis=-1)[..., 0]
     lower = np.take_along_axis(temperature, below[..., None], axis=-1)[..., 0]
-    with np.errstate(divide="ignore", invalid="ignore"):
-        share = (isotherm - upper) / (lower - upper)
-    crossing = depths[deepest] + np.where(below > deepest, share, 0.0) * (depths[below] - depths[deepest])
+    crossing = depths[deepest] + _share(isotherm, upper, lower) * (depths[below] - depths[deepest])
     return np.asarray(np.where(cold.any(axis=-1), crossing, 0.0))
 
 
@@ -74,9 +80,7 @@ def thaw_from_above(depths: Floats, temperature: Floats, isotherm: float = 0.0) 
     below = np.minimum(above + 1, last)
     upper = np.take_along_axis(temperature, above[..., None], axis=-1)[..., 0]
     lower = np.take_along_axis(temperature, below[..., None], axis=-1)[..., 0]
-    with np.errstate(divide="ignore", invalid="ignore"):
-        share = (isotherm - upper) / (lower - upper)
-    edge = depths[above] + share * (depths[below] - depths[above])
+    edge = depths[above] + _share(isotherm, upper, lower) * (depths[below] - depths[above])
     return np.asarray(np.where(cold.any(axis=-1) & thawed.any(axis=-1), edge, 0.0))
 
 
@@ -125,20 +129,14 @@ def ice_depth(depths: Floats, share: Floats) -> Floats:
     array([0.75, 0.  ])
     """
     bounds = np.concatenate([depths[:1], 0.5 * (depths[:-1] + depths[1:]), depths[-1:]])
-    volume = np.diff(bounds)
     last = depths.size - 1
-    icy = share > 0.0
-    deepest = last - np.argmax(icy[..., ::-1], axis=-1)
+    last = depths.size - 1
     node = np.arange(depths.size)
-    upto = node <= deepest[..., None]
-    frozen = (share >= 0.5) & upto
-    gap = ~icy & upto
+    frozen = share >= 0.5
     # Upper end of the count. First frost at the surface may be less than half a node; a remnant below ground that is
     # nowhere half frozen counts as thawed.
-    start_frozen = np.where(frozen.any(axis=-1), last - np.argmax(frozen[..., ::-1], axis=-1), -1)
-    start_zone = np.where(gap.any(axis=-1), last - np.argmax(gap[..., ::-1], axis=-1) + 1, 0)
-    start = np.maximum(start_frozen, start_zone)
-    counted = (node >= start[..., None]) & upto
-    below = np.sum(share * volume, axis=-1, where=counted)
-    present = icy.any(axis=-1) & ((start_frozen >= start_zone) | (start_zone == 0))
-    return np.asarray(np.where(present, bounds[start] + below, 0.0))
+    start = np.where(frozen.any(axis=-1), last - np.argmax(frozen[..., ::-1], axis=-1), 0)[..., None]
+    bare = (share <= 0.0) & (node >= start)
+    stop = np.where(bare.any(axis=-1), np.argmax(bare, axis=-1), depths.size)[..., None]
+    below = np.sum(share * np.diff(bounds), axis=-1, where=(node >= start) & (node < stop))
+    return np.asarray(np.where(stop > start, bounds[start], 0.0)[..., 0] + below)

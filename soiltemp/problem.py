@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 from soiltemp.climate.moments import read_duration
 from soiltemp.column import Column, build_column
 from soiltemp.constants import DAY, YEAR
-from soiltemp.errors import InputError, message
+from soiltemp.errors import InputError, UnitError, message
 from soiltemp.ground import Profile
 from soiltemp.solver.march import Schedule, make_schedule
 from soiltemp.surface import forcing_knots
@@ -103,6 +103,10 @@ def read_problem(
     InputError, UnitError
         An argument that cannot be right.
     """
+    if not isinstance(profile, Profile):
+        raise InputError(
+            message("profile", type(profile).__name__, "a Profile", "put the layers into soiltemp.Profile([...])")
+        )
     seconds, surface, start_time = forcing_knots(surface_temperature)
     base_flux = to_si(base_heat_flux, "heat_flux", "base_heat_flux", low=-10.0, high=10.0)
     length = float(seconds[-1])
@@ -153,10 +157,11 @@ def whole_years(seconds: float) -> int:
 
 def _frost_zone(profile: Profile, seconds: Floats, surface: Floats) -> float:
     """Depth that frost (thaw, where the ground is frozen on average) can reach by a Stefan estimate, made generous."""
-    mean = float(np.trapezoid(surface, seconds) / seconds[-1])
     years = max(1.0, float(seconds[-1]) / YEAR)
-    below = -np.minimum(surface, 0.0) if mean >= 0.0 else np.maximum(surface, 0.0)
-    index = float(np.trapezoid(below, seconds)) / years * 1.6  # a winter far colder than the average of the series
+    index = -float(np.trapezoid(np.minimum(surface, 0.0), seconds))
+    if float(np.trapezoid(surface, seconds)) < 0.0:
+        index = max(index, float(np.trapezoid(np.maximum(surface, 0.0), seconds)))
+    index *= 1.6 / years  # a winter far colder than the average of the series
     depth = 0.0
     for layer in profile.layers:
         material = layer.material
@@ -193,7 +198,7 @@ def _depths(depths: Any, profile: Profile) -> Floats:
 
 def _base_series(base_temperature: xr.DataArray, start: np.datetime64, length: float) -> tuple[Floats, Floats]:
     """Knots of the base temperature in seconds since the start of the surface temperature."""
-    seconds, celsius, first = forcing_knots(base_temperature)
+    seconds, celsius, first = forcing_knots(base_temperature, name="base_temperature")
     seconds = seconds + float((first - start) / np.timedelta64(1, "ns")) / 1e9
     if seconds[0] > 0.0 or seconds[-1] < length:
         raise InputError(
@@ -216,9 +221,18 @@ def _start(initial: Any, column: Column) -> Floats:
                 "rename it",
             )
         )
-    depth, values = np.asarray(initial["depth"], dtype=np.float64), np.asarray(initial, dtype=np.float64)
+    unit = initial.attrs.get("units", "degree_Celsius")
+    if unit not in ("degree_Celsius", "degC", "Celsius", "celsius"):
+        raise UnitError(message("initial", f"units {unit!r}", "degree_Celsius", "convert it to degC first"))
+    try:
+        depth, values = np.asarray(initial["depth"], dtype=np.float64), np.asarray(initial, dtype=np.float64)
+    except (TypeError, ValueError) as error:
+        raise InputError(
+            message("initial", "values or depths that are no numbers", "numbers", "correct them")
+        ) from error
     base = column.profile.base
-    if not (np.isfinite(values).all() and np.isfinite(depth).all()) or np.any(np.diff(depth) <= 0.0):
+    whole = values.size > 0 and bool(np.isfinite(values).all() and np.isfinite(depth).all())
+    if not whole or np.any(np.diff(depth) <= 0.0):
         raise InputError(
             message("initial", "missing values or depths that do not increase", "finite values, depths increasing",
                     "fill or drop the missing ones and sort by depth")
@@ -227,7 +241,7 @@ def _start(initial: Any, column: Column) -> Floats:
         raise InputError(
             message("initial", f"{values[np.argmax(np.abs(values))]:g} degC", "-80 to 80 degC", "check the unit")
         )
-    if depth[-1] < base * (1.0 - 1e-9) or depth[0] > 0.5:
+    if depth[-1] < base * (1.0 - 1e-9) or not 0.0 <= depth[0] <= 0.5:
         raise InputError(
             message(
                 "initial", f"depths {depth[0]:g} to {depth[-1]:g} m", f"0 to {base:g} m, the base of the profile",

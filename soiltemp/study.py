@@ -92,8 +92,8 @@ def solve(
         `ground_temperature` (time, depth) [degC]; `surface_heat_flux` and `base_heat_flux` (time) [W m-2], positive
         downward (so a `base_heat_flux` argument of 0.06 comes back as -0.06), means over the time since the previous
         output (the value at the start, for the first); `heat_content` (time) [J m-2] above 0 degC; `frost_depth`,
-        `frozen_ground_depth` and `thaw_depth` (time) [m]; `ground_temperature_error` (depth) [K], `frost_depth_error` and
-        `frozen_ground_depth_error` [m].
+        `frozen_ground_depth` and `thaw_depth` (time) [m]; and, where the numerical error is stated,
+        `ground_temperature_error` (depth) [K], `frost_depth_error` and `frozen_ground_depth_error` [m].
 
     Raises
     ------

@@ -225,7 +225,7 @@ def surface_temperature_from_air(air: xr.DataArray, *, freezing_n_factor: Any, t
 
 
 def forcing_knots(
-    surface: xr.DataArray,
+    surface: xr.DataArray, *, name: str = "surface temperature"
 ) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.float64], np.datetime64]:
     """Surface temperature as the solver integrates it: straight lines between knots.
 
@@ -238,6 +238,8 @@ def forcing_knots(
     surface : xarray.DataArray
         Temperature over ``time`` [degC], points or means, as
         :func:`soiltemp.climate.series.temperature_series` takes it.
+    name : str
+        How to call it in a message.
 
     Returns
     -------
@@ -274,7 +276,7 @@ def forcing_knots(
     >>> forcing_knots(air)[1].tolist()
     [-4.0, -5.0, -2.0, 0.0, 2.0, 5.0, 4.0]
     """
-    series = temperature_series(surface, "surface temperature")
+    series = temperature_series(surface, name)
     if not series.is_mean:
         return series.seconds, series.celsius, series.start
     mean, edge_times = series.celsius, series.seconds

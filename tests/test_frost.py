@@ -131,7 +131,7 @@ REFUSED = {
     "another dimension": (
         lambda: envelope(WINTER.expand_dims(site=2)), "ground_temperature: found dimensions ('site', 'time', 'depth')",
     ),
-    "a hole": (lambda: zones(WINTER.where(WINTER.ground_temperature > -5.0)), "ground_temperature: found missing values"),
+    "a hole": (lambda: zones(WINTER.where(WINTER.ground_temperature > -5.0)), "ground_temperature: found missing"),
     "no ice": (lambda: frozen_ground_depth(WINTER), "result: found no frozen_ground_depth"),
     "too deep": (lambda: temperature_at(WINTER, 5.0), "depth: found 5 m; allowed: 0 to 4 m"),
     "no flux": (lambda: heat_balance(WINTER), "result: found no surface_heat_flux, base_heat_flux, heat_content"),

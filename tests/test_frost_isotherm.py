@@ -6,7 +6,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from soiltemp import Layer, Material, Profile
-from soiltemp.isotherm import deepest_frost, frozen_zones, ice_depth
+from soiltemp.isotherm import deepest_frost, frozen_zones, ice_depth, thaw_from_above
 from tests.helpers.columns import column_of, inert, uniform
 
 DEPTHS = np.array([0.0, 0.1, 0.3, 0.6, 1.0, 2.0])
@@ -55,6 +55,17 @@ def test_deepest_frost_is_the_end_of_the_last_zone(case):
     zones = zones_plainly(depths, temperature)
     expected = zones[-1][1] if zones else 0.0
     assert float(deepest_frost(depths, temperature)) == pytest.approx(expected, rel=1e-12, abs=1e-12)
+
+
+@given(profiles())
+def test_thaw_from_above_is_the_top_of_the_last_zone(case):
+    """And no warning of a division by 0 comes with it: tests make warnings of numpy errors here."""
+    depths, temperature = case
+    zones = zones_plainly(depths, temperature)
+    expected = zones[-1][0] if zones else 0.0
+    with np.errstate(all="raise", under="ignore"):
+        found = float(thaw_from_above(depths, temperature))
+    assert found == pytest.approx(expected, rel=1e-12, abs=1e-12)
 
 
 @given(profiles(), st.floats(0.0, 5.0))
@@ -123,7 +134,7 @@ def test_sharp_front_is_read_exactly(case, share):
 
 @given(profiles(least=6), st.floats(0.0, 1.0), st.floats(0.0, 1.0))
 def test_thawed_top_leaves_the_lower_edge(case, first, second):
-    """Frozen between two fronts, thawed above: the lower edge still, where the zone holds a node that is half frozen."""
+    """Frozen between two fronts, thawed above: the lower edge still, where the zone holds a frozen node."""
     depths, _ = case
     top, bottom = sorted((first * depths[-1], second * depths[-1]))
     shares = np.clip(front_shares(depths, bottom) - front_shares(depths, top), 0.0, 1.0)

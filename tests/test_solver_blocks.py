@@ -36,7 +36,8 @@ def block_case(columns, seed, profiles=4, forcings=3, days=40):
     day = seconds / DAY
     surfaces = np.stack(
         [
-            rng.uniform(-2.0, 4.0) - rng.uniform(4.0, 12.0) * np.sin(2 * np.pi * day / 40 + rng.uniform(0, 6)) + rng.normal(0, 3, day.size)
+            rng.uniform(-2.0, 4.0) - rng.uniform(4.0, 12.0) * np.sin(2 * np.pi * day / 40 + rng.uniform(0, 6))
+            + rng.normal(0, 3, day.size)
             for _ in range(forcings)
         ]
     )  # fmt: skip

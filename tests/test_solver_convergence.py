@@ -83,9 +83,9 @@ def test_order_in_time_under_a_moving_surface():
 
 
 def test_large_steps_do_not_ring():
-    """L-stable: after one step of ten years a jump of 20 K leaves what the scheme's own stability function leaves of the
-    slowest sine, sqrt(2) / (c |z|) with c = 1 - sqrt(2)/2 (TR-BDF2, z to infinity); the trapezoidal rule would leave
-    all of it, with its sign changed."""
+    """L-stable: after one step of ten years a jump of 20 K leaves what the scheme's own stability function leaves of
+    the slowest sine, sqrt(2) / (c |z|) with c = 1 - sqrt(2)/2 (TR-BDF2, z to infinity); the trapezoidal rule would
+    leave all of it, with its sign changed."""
     column = column_of(uniform(GROUND, BASE), np.linspace(0.0, BASE, 41))
     step = 3650 * DAY
     marched = march_column(column, [0.0, step], [-10.0, -10.0], 10.0)

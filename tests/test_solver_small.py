@@ -32,7 +32,7 @@ SAND = Material("sand", 2.2, 3.2, 2.6e6, 2.0e6, 70e6, freezing_range=0.2)
 
 @pytest.mark.parametrize("tolerance", [np.inf, 0.5])
 def test_heat_balance(tolerance):
-    """Layered, freezing, some along Katzenelson's path, some with heat through the base; limit as in the large sample."""
+    """Layered, freezing, some along Katzenelson's path, some with heat through the base; limit as in the sample."""
     paths = 0
     for seed in (2093, 1470, 848, 564, 2144, 1068, 2811):
         run, error = march_wild(wild_case(seed), tolerance)

@@ -90,8 +90,8 @@ def test_windows_leave_the_bits():
 def test_compiled_or_not_the_bits_are_the_same():
     """The kernels as plain Python: the same numbers, so coverage and tracebacks of one speak for the other."""
     plain = subprocess.run(
-        [sys.executable, "-m", "tests.helpers.digest"], cwd=ROOT, capture_output=True, text=True, check=True, timeout=120,
-        env={**os.environ, "NUMBA_DISABLE_JIT": "1", "PYTHONPATH": str(ROOT)},
+        [sys.executable, "-m", "tests.helpers.digest"], cwd=ROOT, capture_output=True, text=True, check=True,
+        timeout=120,         env={**os.environ, "NUMBA_DISABLE_JIT": "1", "PYTHONPATH": str(ROOT)},
     )  # fmt: skip
     assert plain.stdout == digest()
 

@@ -58,8 +58,7 @@ class Dates:
 
 
 def zone_offset(text: str) -> int | None:
-    """Minutes east of UTC that a zone such as ``"UTC-6"``, ``"+05:30"`` or ``"Z"`` states, or None if it
-    states none.
+    """Minutes east of UTC that a zone states, or None if it states none.
 
     Examples
     --------

@@ -1,9 +1,8 @@
-"""Durations and moments as a user writes them: "1h", "3 days", "2019-07-01"; and how moments are shown in
-messages."""
+"""Durations and moments as a user writes them ("1h", "3 days", "2019-07-01"), and how messages show them."""
 
 from __future__ import annotations
 
-import datetime
+import datetime as dt
 import re
 from typing import Any
 
@@ -71,7 +70,7 @@ def read_duration(value: Any, name: str, *, low: float, high: float) -> float:
     >>> read_duration("3 days", "longest_gap", low=0.0, high=1e6)
     259200.0
     """
-    if isinstance(value, datetime.timedelta):
+    if isinstance(value, dt.timedelta):
         value = value.total_seconds()
     elif isinstance(value, np.timedelta64):
         value = float(value / np.timedelta64(1, "s"))

@@ -67,6 +67,7 @@ class ReadingOptions:
         allowed_range: tuple[Any, Any],
         stuck_after: Any,
     ) -> ReadingOptions:
+        """Read and check the keywords of `read_checked`, where they are explained."""
         known_unit = None if unit is None else read_unit(unit)
         if unit is not None and known_unit is None:
             raise UnitError(message("unit", show_value(unit), ", ".join(UNITS), "give one of them"))

@@ -412,7 +412,7 @@ def _frozen_mean(values: tuple[float, ...], thickness: tuple[float, ...], depth:
 
 
 def _coefficient(alpha: float, mu: float) -> float:
-    """lambda with its limits; `mu` unbounded, as a thin wet layer under a dry one asks for."""
+    """Coefficient lambda with its limits; `mu` unbounded, as a thin wet layer under a dry one asks for."""
     if math.inf in (alpha, mu):
         return 0.0
     if mu == 0:

@@ -168,6 +168,8 @@ def march(
         base, bottom = base_temperature, table[-1][:, [_UA, _U, _HI]]
     else:
         base, bottom = np.full(schedule.seconds.size, base_flux), np.array([[0.0, 1.0, np.inf]])
+    if solved < 3:
+        raise SolverError(f"solver: found a column with {start.size} nodes; allowed: 4 or more; make the grid finer.")
     temperature, heat = np.empty((rows, start.size)), np.empty((2, rows))
     state = np.array(start[:solved], dtype=np.float64)
     count = np.zeros(len(COUNTERS), dtype=np.int64)

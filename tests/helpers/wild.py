@@ -25,8 +25,8 @@ class WildCase:
 
 
 def wild_case(seed: int) -> WildCase:
-    """Draw a case: 1 to 8 layers, conductivity 0.02 to 4 W/(m K), frozen/thawed ratio 1/4 to 4, freezing range 1e-4 to 3 K,
-    elements from 1 mm, steps from 1 minute to 1 year, surface to +-90 degC with jumps."""
+    """Draw a case: 1 to 8 layers, conductivity 0.02 to 4 W/(m K), frozen/thawed ratio 1/4 to 4, freezing range
+    1e-4 to 3 K, elements from 1 mm, steps from 1 minute to 1 year, surface to +-90 degC with jumps."""
     rng = np.random.default_rng(seed)
     layers = []
     for _ in range(rng.integers(1, 9)):
@@ -37,7 +37,8 @@ def wild_case(seed: int) -> WildCase:
         layers.append(
             Layer(
                 Material(
-                    "wild", conductivity, conductivity * ratio, capacity, capacity * float(rng.uniform(0.5, 1.0)), latent,
+                    "wild", conductivity, conductivity * ratio, capacity, capacity * float(rng.uniform(0.5, 1.0)),
+                    latent,
                     freezing_point=float(rng.choice([0.0, -rng.uniform(0.0, 5.0)])),
                     freezing_range=float(np.exp(rng.uniform(np.log(1e-4), np.log(3.0)))),
                 ),
