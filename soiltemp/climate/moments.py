@@ -112,12 +112,12 @@ def read_moment(value: Any, name: str) -> np.datetime64:
     try:
         if isinstance(value, str) and _MOMENT.match(value.strip()):
             moment = np.datetime64(value.strip().replace(" ", "T"), "s")
-        elif isinstance(value, datetime.datetime):
+        elif isinstance(value, dt.datetime):
             if value.tzinfo is not None:
                 remedy = "take the time zone off after bringing it to the time zone of the record"
             else:
                 moment = np.datetime64(value, "s")
-        elif isinstance(value, datetime.date):
+        elif isinstance(value, dt.date):
             moment = np.datetime64(value.isoformat(), "s")
         elif isinstance(value, np.datetime64):
             moment = value.astype("datetime64[s]")

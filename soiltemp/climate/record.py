@@ -51,7 +51,7 @@ class CheckedRecord:
 
 
 def read_record(path: str | os.PathLike[str], **options: Unpack[ReadingKeywords]) -> xr.DataArray:
-    """Read a temperature record from a CSV or NetCDF file, checked and on a regular time axis.
+    r"""Read a temperature record from a CSV or NetCDF file, checked and on a regular time axis.
 
     The same as ``read_checked(path, ...).temperature``.
 
@@ -77,7 +77,7 @@ def read_record(path: str | os.PathLike[str], **options: Unpack[ReadingKeywords]
     >>> import pathlib, tempfile
     >>> with tempfile.TemporaryDirectory() as folder:
     ...     path = pathlib.Path(folder, "air.csv")
-    ...     _ = path.write_text("date,t_air [degF]\\n2020-01-01,14.0\\n2020-01-02,23.0\\n2020-01-03,32.0\\n")
+    ...     _ = path.write_text("date,t_air [degF]\n2020-01-01,14.0\n2020-01-02,23.0\n2020-01-03,32.0\n")
     ...     air = read_record(path)
     >>> air.values.round(6).tolist(), air.attrs["cell_methods"]
     ([-10.0, -5.0, 0.0], 'time: mean')
@@ -102,7 +102,7 @@ def read_checked(
     allowed_range: tuple[Any, Any] = IMPOSSIBLE,
     stuck_after: Any = None,
 ) -> CheckedRecord:
-    """Read a temperature record and say what its checks found.
+    r"""Read a temperature record and say what its checks found.
 
     Parameters
     ----------
@@ -166,7 +166,7 @@ def read_checked(
     >>> with tempfile.TemporaryDirectory() as folder:
     ...     path = pathlib.Path(folder, "air.csv")
     ...     rows = [f"2020-01-{day:02d};{-day / 2:.1f}".replace(".", ",") for day in range(1, 21)]
-    ...     text = "# unit: degC\\ndate;t_air\\n" + "\\n".join(rows) + "\\n"
+    ...     text = "# unit: degC\ndate;t_air\n" + "\n".join(rows) + "\n"
     ...     _ = path.write_text(text.replace("-4,5", "-9999"))
     ...     checked = read_checked(path)
     >>> [finding.kind for finding in checked.report.findings], float(checked.temperature[8].round(6))
