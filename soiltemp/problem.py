@@ -28,7 +28,7 @@ Floats = NDArray[np.float64]
 DEFAULT_MAX_STEP = 3600.0
 """Longest step where none is given [s]: at one hour the time error of a freezing year is about 0.01 K below 0.3 m."""
 
-DEFAULT_TOLERANCE = 0.1
+DEFAULT_TOLERANCE = 0.2
 """Largest error estimate of one step where none is given [K]; beyond it the step is cut."""
 
 WATCHED_DEPTH = 0.1

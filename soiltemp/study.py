@@ -79,7 +79,7 @@ def solve(
         Longest step; an hour where none is given.
     tolerance : float or str, optional
         Largest error estimate of a step [K], judged from 0.1 m down (or from the shallowest depth asked for);
-        0.1 K where none is given.
+        0.2 K where none is given.
     numerical_error : {"stated", "left out"}
         Whether the problem is solved again on a grid and a step twice as coarse, and the differences are given as
         `ground_temperature_error` and `frost_depth_error`. Costs about a third of the run.

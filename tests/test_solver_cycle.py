@@ -129,10 +129,14 @@ def test_ground_that_hovers_at_zero_settles_or_says_so(mean):
     np.testing.assert_allclose(later, cycle.temperature, rtol=0, atol=0.01)
 
 
-def test_daily_steps_over_ground_frozen_below_settle_too():
-    """A case that came back 0.025 K off at 1.5 m: heat was balanced over the year while a thin layer still moved."""
-    column = build_column(uniform(SILT, 20.0), frost_zone=3.0)
-    schedule = year_of(-2.0, 14.0, 86400.0)
+@pytest.mark.parametrize(
+    ("frost_zone", "mean", "amplitude", "hours"), [(3.0, -2.0, 14.0, 24.0), (3.5, -1.5, 16.0, 3.0)]
+)
+def test_thin_layers_settle_too(frost_zone, mean, amplitude, hours):
+    """Cases that came back 0.025 and 0.013 K off at the edge of frozen ground: the heat of the year was balanced while
+    a thin layer still moved from year to year."""
+    column = build_column(uniform(SILT, 20.0), frost_zone=frost_zone)
+    schedule = year_of(mean, amplitude, hours * 3600.0)
     cycle = find_cycle(column.table, schedule, base_flux=0.0, watch=1, tolerance=0.05)
     later = years_after(column, schedule, cycle.temperature, 0.0, 20)
     np.testing.assert_allclose(later, cycle.temperature, rtol=0, atol=0.01)

@@ -49,10 +49,11 @@ WIDTH = 16
 # Rows that are used together stand together.
 UA, U, VA, V = (np.uintp(row * WIDTH) for row in range(4))  # the piece in force, see `stage.PIECE_FIELDS`
 F, P, K, Z, E, A, B = (np.uintp(row * WIDTH) for row in range(4, 11))  # factors, constant part, substitution
-T, LO, HI, OUTSIDE, MISS = (np.uintp(row * WIDTH) for row in range(11, 16))  # result; worst up to this node
-R1, S, GAP, R2, S_NEW = (np.uintp(row * WIDTH) for row in range(16, 21))  # right sides, heat, error estimate so far
+T, LO, HI, WORST = (np.uintp(row * WIDTH) for row in range(11, 15))  # result; worst up to this node, see _make_outward
+R1, S, GAP, R2, S_NEW = (np.uintp(row * WIDTH) for row in range(15, 20))  # right sides, heat, error estimate so far
 PIECE_ROWS = (A, B, UA, U, VA, V, LO, HI)
-FIELDS = 21
+FIELDS = 20
+ESCAPED = 1e140  # no error estimate is as large [K]; its square is finite
 NEXT = np.uintp(FIELDS * WIDTH)
 
 
@@ -123,8 +124,10 @@ def _inward(x, n, right, boundary, width):
 def _make_outward(stage_number, step):
     """Compile the way back from the middle: upward (`step` -1), downward (1), or the middle node itself (0).
 
-    Fills temperatures and stored heat of the stage, how far nodes are outside their segments, and in stage 1 the right
-    side of stage 2 and the first part of the error estimate, in stage 2 the whole of it.
+    Fills temperatures and stored heat of the stage; in stage 1 also the right side of stage 2 and the first
+    part of the error estimate. The row WORST carries the worst from node to node: in stage 1 how far a
+    node is outside its segment [K]; in stage 2 the error estimate [K], or, where a node is outside by more than the
+    slack, a number beyond `ESCAPED`.
     """
     stage_1 = stage_number == 1
     middle = step == 0
@@ -139,24 +142,24 @@ def _make_outward(stage_number, step):
             for j in range(width):
                 q = o + uintp(j)
                 if middle:
-                    value, outside_before, miss_before = x[q + Z], 0.0, 0.0
+                    value, before = x[q + Z], 0.0
                 else:
-                    value = x[q + Z] + x[q + E] * x[q + T + back]
-                    outside_before, miss_before = x[q + OUTSIDE + back], x[q + MISS + back]
+                    value, before = x[q + Z] + x[q + E] * x[q + T + back], x[q + WORST + back]
                 heat = x[q + A] + x[q + B] * value
                 under = x[q + LO] - value
                 over = value - x[q + HI]
                 worst = under if under > over else over
                 x[q + T] = value
-                x[q + OUTSIDE] = worst if worst > outside_before else outside_before
                 if stage_1:
                     right, old = x[q + R1], x[q + S]
                     x[q + GAP] = E1 * (right - old) + E2 * (heat - right)
                     x[q + R2] = B1 * heat - B2 * old
                 else:
                     x[q + S_NEW] = heat
+                    worst = (worst - KNOT_SLACK) * (ESCAPED * ESCAPED)
                     estimate = abs(x[q + GAP] + E3 * (heat - x[q + R2])) * x[q + P] * weight
-                    x[q + MISS] = estimate if estimate > miss_before else miss_before
+                    worst = estimate if estimate > worst else worst
+                x[q + WORST] = worst if worst > before else before
 
     return outward
 
@@ -166,10 +169,32 @@ _up_2, _middle_2, _down_2 = _make_outward(2, -1), _make_outward(2, 0), _make_out
 
 
 @njit(**OPTIONS)
+def _worst(x, n, j):
+    """What the row WORST of lane `j` came to at the ends."""
+    return max(x[NEXT + WORST + uintp(j)], x[uintp(n - 1) * NEXT + WORST + uintp(j)])
+
+
+@njit(**OPTIONS)
+def _hold(x, tables, which, segment, i, j):
+    """Move node `i` of lane `j` to the neighbouring segment if it left its own; say whether it did."""
+    q = uintp(i) * NEXT + uintp(j)
+    if x[q + T] > x[q + HI] + KNOT_SLACK:
+        segment[i, j] += 1
+    elif x[q + T] < x[q + LO] - KNOT_SLACK:
+        segment[i, j] -= 1
+    else:
+        return False
+    for field in range(8):
+        x[q + PIECE_ROWS[field]] = tables[which, i, segment[i, j], field]
+    return True
+
+
+@njit(**OPTIONS)
 def _settle(x, n, tables, table_of, segment, c, stage_number, boundary, watch, factored, lost, count, width):
     """`stage.settle` in every lane; mark in `lost` the lanes that did not settle."""
     m = middle_of(n)
     top, base = 1, n - 1
+    limit = KNOT_SLACK if stage_number == 1 else ESCAPED
     for hold in range(MAX_HOLDS):
         if factored[0] != c:
             _factor(x, n, c, top, base, width)
@@ -190,25 +215,23 @@ def _settle(x, n, tables, table_of, segment, c, stage_number, boundary, watch, f
         top, base = m, m
         for j in range(width):
             lane = uintp(j)
-            worst = max(x[NEXT + OUTSIDE + lane], x[uintp(n - 1) * NEXT + OUTSIDE + lane])
-            if worst <= KNOT_SLACK or lost[j]:
+            if _worst(x, n, j) <= limit or lost[j]:
                 continue
             if hold == MAX_HOLDS - 1:
                 lost[j] = True
                 continue
             moved = True
-            for i in range(1, n):
-                q = uintp(i) * NEXT + lane
-                if x[q + T] > x[q + HI] + KNOT_SLACK:
-                    segment[i, j] += 1
-                elif x[q + T] < x[q + LO] - KNOT_SLACK:
-                    segment[i, j] -= 1
-                else:
-                    continue
-                for field in range(8):
-                    x[q + PIECE_ROWS[field]] = tables[table_of[j], i, segment[i, j], field]
-                top = min(top, max(1, i - 1))
-                base = max(base, min(n - 1, i + 1))
+            # WORST grows from the middle outward: no node beyond the first that is within the limit has left
+            for i in range(1, m + 1):
+                if x[uintp(i) * NEXT + WORST + lane] <= limit:
+                    break
+                if _hold(x, tables, table_of[j], segment, i, j):
+                    top, base = min(top, max(1, i - 1)), max(base, min(n - 1, i + 1))
+            for i in range(n - 1, m, -1):
+                if x[uintp(i) * NEXT + WORST + lane] <= limit:
+                    break
+                if _hold(x, tables, table_of[j], segment, i, j):
+                    top, base = min(top, max(1, i - 1)), max(base, min(n - 1, i + 1))
         if not moved:
             return
         factored[0] = 0.0
@@ -294,7 +317,6 @@ def _march_block(
     tops = np.zeros((WIDTH, tables.shape[2], 3))
     bottom = np.zeros((1, 3))
     bottom[0, 1], bottom[0, 2] = 1.0, np.inf  # the base value is a heat flux
-    end = uintp(n - 1) * NEXT
     prepared = C_STAGE * dt[0] / parts[0]
     for j in range(WIDTH):
         column = first + min(j, lanes - 1)  # spare lanes repeat the last column and are not looked at
@@ -343,7 +365,7 @@ def _march_block(
             for j in range(lanes):
                 if dead[j]:
                     continue
-                if not lost[j] and max(x[NEXT + MISS + uintp(j)], x[end + MISS + uintp(j)]) <= tolerance:
+                if not lost[j] and _worst(x, n, j) <= tolerance:
                     q_2[j] = _flux_in(x, j, phi_2[j])
                     heat[j] += h * (W_FLUX * q_0[j] + W_FLUX * q_1[j] + C_STAGE * q_2[j])
                     count[first + j, STEPS] += 1

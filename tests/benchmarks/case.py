@@ -1,10 +1,10 @@
 """The one case that all are timed on: a year of frost under an hourly surface, 95 elements to 20 m.
 
-Surface 5 + 15 cos(year) + 5 cos(day) degC, known at each hour and straight in between, as a weather record
-is; frozen/thawed conductivity 2.3/1.5 W/(m K), heat capacity 2.0/2.8 MJ/(m3 K), latent heat 90 MJ/m3 over 0.5 K; start 5
-degC throughout. Frost goes to 1.8 m. The error of a run is its largest
-deviation anywhere below 0.3 m, at the end of any day, from a run of ours with steps of 60 s under the same surface:
-the hourly record, or, for rivals that are given it, the smooth curve itself.
+Surface 5 + 15 cos(year) + 5 cos(day) degC, known at each hour and straight in between, as a weather record is;
+frozen/thawed conductivity 2.3/1.5 W/(m K), heat capacity 2.0/2.8 MJ/(m3 K), latent heat 90 MJ/m3 over 0.5 K; start
+5 degC throughout. Frost goes to 1.8 m. The error of a run is its largest deviation anywhere below 0.3 m, at the end of
+any day, from a run of ours with steps of 60 s under the same surface: the hourly record, or, for rivals that are given
+it, the smooth curve itself.
 """
 
 from __future__ import annotations
