@@ -1,0 +1,54 @@
+"""The README says what is so: its example runs, its site file is read, its printed numbers are those of the run."""
+
+import contextlib
+import io
+import pathlib
+import re
+
+import pytest
+
+from soiltemp.cli import main
+from soiltemp.site import parse_site
+
+ROOT = pathlib.Path(__file__).parents[1]
+TEXT = (ROOT / "README.md").read_text(encoding="utf-8")
+
+
+def block(language: str, number: int = 0) -> str:
+    return re.findall(rf"```{language}\n(.*?)```", TEXT, re.DOTALL)[number]
+
+
+def test_python_example(tmp_path: pathlib.Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.chdir(tmp_path)
+    printed = io.StringIO()
+    names: dict[str, object] = {}
+    with contextlib.redirect_stdout(printed):
+        exec(compile(block("python"), "README.md", "exec"), names)
+    frost, coldest = printed.getvalue().splitlines()
+    assert frost == "frost to 1.37 m"
+    assert [float(word) for word in coldest.strip("[]").split()] == pytest.approx([-1.50, 0.71], abs=0.02)
+    assert (tmp_path / "result.nc").stat().st_size > 10_000
+
+
+def test_site_file_is_read() -> None:
+    site = parse_site(block("toml"), folder=ROOT / "example_sites")
+    assert site.profile.base == pytest.approx(20.0)
+    assert site.line is not None
+    assert site.line.cover == pytest.approx(1.8288)
+
+
+def test_printed_numbers_are_those_of_the_run(capsys: pytest.CaptureFixture[str]) -> None:
+    """The last digit may differ on another processor or with other versions of the libraries."""
+    shown = block("", 2)
+    assert "Wether Lane water main" in shown
+    assert main(["run", str(ROOT / "example_sites" / "wether_lane.toml"), "--quiet"]) == 0
+    said = capsys.readouterr().out
+    for line in shown.splitlines():
+        numbers = [float(word) for word in re.findall(r"(?<![\w-])\d+\.\d+", line)]
+        label = line.split("  ")[1 if line.startswith("  ") else 0].strip() if line.strip() else ""
+        if not numbers or not label:
+            continue
+        found = next(row for row in said.splitlines() if row.strip().startswith(label))
+        assert [float(word) for word in re.findall(r"(?<![\w-])\d+\.\d+", found)] == pytest.approx(
+            numbers, abs=0.011
+        ), line
