@@ -465,7 +465,7 @@ def _make(fingerprint, mode):
                 out_temperature, out_heat, status, stopped, count, first, min(WIDTH, columns - first), width,
             )  # fmt: skip
 
-    return njit(parallel=mode == "parallel", **OPTIONS)(march_columns)
+    return njit(cache=True, parallel=mode == "parallel", **OPTIONS)(march_columns)
 
 
 march_columns = _make(FINGERPRINT, "serial")

@@ -40,7 +40,7 @@ __all__ = ["march_one"]
 def _make(fingerprint):
     """Compile `march_one`; its disk cache is asked for by the fingerprint of all solver sources, see `stage`."""
 
-    @njit(**OPTIONS)
+    @njit(cache=True, **OPTIONS)
     def march_one(
         table, bottom, dt, surface, base, parts, row, watch, tolerance, temperature, out_temperature,
         out_heat_in, out_heat_out, count,
