@@ -130,7 +130,6 @@ def ice_depth(depths: Floats, share: Floats) -> Floats:
     """
     bounds = np.concatenate([depths[:1], 0.5 * (depths[:-1] + depths[1:]), depths[-1:]])
     last = depths.size - 1
-    last = depths.size - 1
     node = np.arange(depths.size)
     frozen = share >= 0.5
     # Upper end of the count. First frost at the surface may be less than half a node; a remnant below ground that is

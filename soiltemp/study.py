@@ -159,7 +159,7 @@ def _answer(problem: Problem, progress: Progress | None) -> _Answer:
     }
     if problem.cycle is not None:
         told = None if progress is None else (lambda share: progress(0.7 * share, "finding the periodic start"))
-        cycle = find_cycle(problem.column.table, problem.cycle, progress=told, **settings)
+        cycle = find_cycle(problem.column.table, problem.cycle, depths=problem.column.depths, progress=told, **settings)
         start, periods = cycle.temperature, cycle.periods
     if start is None:  # unreachable for a type checker only: a problem has one or the other
         raise InputError(message("initial", "nothing", '"cycle", a temperature or a profile', "give one"))
@@ -227,12 +227,13 @@ def _with_errors(
     result: xr.Dataset, problem: Problem, fine: _Answer, coarse_problem: Problem, coarse: _Answer
 ) -> xr.Dataset:
     """Add the differences to the run that was twice as coarse."""
+    # not at the start: a given start may jump at the surface, which every grid bridges by its first element
     difference = problem.column.at(fine.run.temperature, problem.depths) - coarse_problem.column.at(
         coarse.run.temperature, problem.depths
     )
     return result.assign(
         ground_temperature_error=(
-            "depth", np.abs(difference).max(axis=0), attributes("ground_temperature_error"),
+            "depth", np.abs(difference[1:]).max(axis=0), attributes("ground_temperature_error"),
         ),
         frost_depth_error=((), abs(float(fine.frost.max() - coarse.frost.max())), attributes("frost_depth_error")),
         frozen_ground_depth_error=(

@@ -6,7 +6,6 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.special import erf, erfcx
 
 from soiltemp.closed_form.arguments import ArrayLike, Values, as_given, check_shapes, read, read_values
 from soiltemp.errors import InputError, message
@@ -153,6 +152,8 @@ def neumann_temperature(
     ...     heat_capacity_thawed=2.7e6, latent_heat=100e6).round(2).tolist()
     [-10.0, -3.19, 1.53]
     """
+    from scipy.special import erf, erfcx  # a fifth of a second, only where it is used
+
     ground = _read_ground(
         initial=initial,
         surface=surface,
@@ -218,6 +219,7 @@ def front_root(warmth: float, stefan_number: float, spread: float = 1.0) -> floa
     """
     # imported here: scipy.optimize alone would add a third to the cost of `import soiltemp`
     from scipy.optimize import brentq
+    from scipy.special import erfcx  # a fifth of a second, only where it is used
 
     def balance(root: float) -> float:
         if root == 0:

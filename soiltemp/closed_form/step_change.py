@@ -5,7 +5,6 @@ from __future__ import annotations
 import math
 
 import numpy as np
-from scipy.special import erf, erfcinv, erfinv
 
 from soiltemp.closed_form.arguments import ArrayLike, Values, as_given, check_shapes, read, read_values
 from soiltemp.errors import InputError, message
@@ -62,6 +61,8 @@ def step_change_temperature(
     >>> round(step_change_temperature(15.0, -10.0, "0.80 m", 0.15e-6, "90 day"), 2)
     -0.01
     """
+    from scipy.special import erf  # a fifth of a second, only where it is used
+
     before, now = read(initial, "temperature", "initial"), read(surface, "temperature", "surface")
     z, t = read_values(depth, "depth"), read_values(duration, "duration")
     check_shapes(depth=z, duration=t)
@@ -121,6 +122,8 @@ def step_change_depth(
     >>> round(step_change_depth("15 degC", "-10 degC", "0 degC", "0.15 mm^2/s", "90 day"), 3)
     0.801
     """
+    from scipy.special import erfcinv, erfinv  # a fifth of a second, only where it is used
+
     before, now = read(initial, "temperature", "initial"), read(surface, "temperature", "surface")
     wanted = read(limit, "temperature", "limit")
     reach = 2 * math.sqrt(read(diffusivity, "diffusivity") * read(duration, "duration"))

@@ -17,7 +17,6 @@ from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.linalg import solveh_banded
 
 from soiltemp.errors import SolverError
 from soiltemp.solver.march import Schedule, march
@@ -28,8 +27,8 @@ __all__ = ["SETTLED", "Cycle", "find_cycle"]
 Floats = NDArray[np.float64]
 _A, _B, _UA, _U, _VA, _V, _LO, _HI = range(len(PIECE_FIELDS))
 
-SETTLED = 0.001
-"""Largest move, and largest change over the period, when a cycle counts as settled [K]; what is left is less."""
+SETTLED = 0.002
+"""Largest move when a cycle counts as settled [K]; what is left is a fraction of it."""
 
 MOST_PERIODS = 60
 """Periods after which a cycle that has not settled is given up."""
@@ -89,6 +88,8 @@ def _mean_potential(table: Floats, schedule: Schedule) -> float:
 
 def _move(table: Floats, mean: Floats, gain: Floats, period: float) -> Floats:
     """Temperature move that puts the mean flux right, for heat `gain` stored by each node in one period."""
+    from scipy.linalg import solveh_banded  # costs time to import, and a run without a cycle does not need it
+
     piece = _pieces_at(table, mean)
     conductance = 0.5 * (piece[:-1, _V] + piece[1:, _U])
     below = np.cumsum(gain[::-1])[::-1][1:]  # heat stored below each element
@@ -108,6 +109,7 @@ def find_cycle(
     base_flux: float,
     watch: int,
     tolerance: float,
+    depths: Floats | None = None,
     progress: Callable[[float], None] | None = None,
 ) -> Cycle:
     """Find the periodic steady state of a column under a forcing that repeats.
@@ -118,6 +120,8 @@ def find_cycle(
         As for `march`.
     schedule : Schedule
         One period; its last surface temperature is followed by its first.
+    depths : float64 (node,), optional
+        Node depths [m], for the message of a cycle that does not settle.
     progress : callable, optional
         As for `march`; gets the share of the way to a settled state, guessed from the moves.
 
@@ -132,7 +136,7 @@ def find_cycle(
         need centuries), or the kernel stopped.
     """
     state = _steady(table, _mean_potential(table, schedule), base_flux)
-    largest = drift = np.inf
+    largest = np.inf
     worst = 0
     share = 1.0
     for period in range(1, MOST_PERIODS + 1):
@@ -148,15 +152,16 @@ def find_cycle(
             # much latent heat at the edge of ground frozen all year makes whole moves swing to and fro
             share = max(0.5 * share, LEAST_SHARE)
         largest = float(np.abs(move[worst]))
-        # heat can balance over the year while a thin layer at its freezing point still moves from year to year
-        drift = float(np.abs(run.end - state).max())
         state = run.end + share * move
-        if largest <= SETTLED and drift <= SETTLED:
-            return Cycle(state, period, largest)
+        if largest <= SETTLED:
+            # one plain year more: at the edge of ground frozen all year the last move may itself be a step too far
+            run = march(table, schedule, state, base_flux=base_flux, watch=watch, tolerance=tolerance)
+            return Cycle(run.end, period + 1, largest)
         if progress is not None:
             progress(min(0.95, period / MOST_PERIODS + 0.1))
+    place = f"node {worst}" if depths is None else f"{depths[worst]:.2f} m"
     raise SolverError(
-        f'initial "cycle": after {MOST_PERIODS} repeated years the ground at node {worst} still moves by '
-        f"{max(largest, drift):.3g} K a year; allowed: {SETTLED} K; ground that hovers at its freezing point may need centuries, "
-        "so give `initial` as a measured profile or a temperature instead."
+        f'initial "cycle": after {MOST_PERIODS} repeated years the ground at {place} still moves by {largest:.3g} K '
+        f"a year; allowed: {SETTLED} K; ground that hovers at its freezing point may need centuries, so give `initial` "
+        "as a measured profile or a temperature instead."
     )

@@ -79,8 +79,8 @@ E2 = 1.0 / 3.0 / C_STAGE
 E3 = -2.0 / 3.0
 
 # numba's disk cache of a function looks at the source file of that function alone, and not at the flags it is
-# compiled with. So only the doors of the kernel are cached, and they are closures over this: a change in any file of the
-# solver asks for a new entry.
+# compiled with. So only the doors of the kernel are cached, and they are closures over this: a change in any file of
+# the solver asks for a new entry.
 FINGERPRINT = zlib.crc32(b"".join(path.read_bytes() for path in sorted(Path(__file__).parent.glob("*.py"))))
 
 OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "boundscheck": False}
