@@ -178,9 +178,9 @@ def _worst(x, n, j):
 def _hold(x, tables, which, segment, i, j):
     """Move node `i` of lane `j` to the neighbouring segment if it left its own; say whether it did."""
     q = uintp(i) * NEXT + uintp(j)
-    if x[q + T] > x[q + HI] + KNOT_SLACK:
+    if x[q + T] - x[q + HI] > KNOT_SLACK:
         segment[i, j] += 1
-    elif x[q + T] < x[q + LO] - KNOT_SLACK:
+    elif x[q + LO] - x[q + T] > KNOT_SLACK:
         segment[i, j] -= 1
     else:
         return False

@@ -37,9 +37,9 @@ from soiltemp.solver.stage import (
     B,
     U,
     V,
+    estimate,
     factor,
     flux_difference,
-    miss,
     place,
     place_by_heat,
     potential,
@@ -169,7 +169,8 @@ def careful(
             t1[0] = begin + GAMMA * rise
             good = _stage(table, piece, segment, c, r2, c * phi_2, psi_2, t1, work, t, s2, factored, count)
         if good:
-            error = miss(watch, work[0], s, r1, s1, r2, s2)
+            for i in range(watch, n):
+                error = max(error, estimate(i, work[0], s, r1, s1, r2, s2))
         if not good or (error > tolerance and level < ACCURACY_HALVINGS):
             if level == MAX_HALVINGS:
                 return NOT_CONVERGED, heat_in, heat_out

@@ -38,11 +38,12 @@ __all__ = [
     "OPTIONS",
     "OUT_OF_RANGE",
     "PIECE_FIELDS",
+    "estimate",
     "factor",
     "flux_difference",
     "health",
     "middle_of",
-    "miss",
+    "misses",
     "place",
     "place_by_heat",
     "potential",
@@ -134,7 +135,7 @@ def factor(c, piece, p, f, e, k, top, base):
 
 @njit(**OPTIONS)
 def solve(r, boundary, piece, p, f, e, k, z, t, s):
-    """Substitute from both ends; fill temperatures `t` and stored heat `s`; return how far any node is outside."""
+    """Substitute from both ends; fill temperatures `t` and stored heat `s`; return how many nodes are outside."""
     n = p.size - 1
     m = middle_of(n)
     a, b, lo, hi = piece[A], piece[B], piece[LO], piece[HI]
@@ -171,13 +172,10 @@ def solve(r, boundary, piece, p, f, e, k, z, t, s):
         t_base = z[j] + e[j] * t_base
         t[j] = t_base
         j += 1
-    outside = 0.0
+    outside = 0  # a count, as the largest of floats does not vectorise
     for i in range(1, n):
         s[i] = a[i] + b[i] * t[i]
-        under = lo[i] - t[i]
-        over = t[i] - hi[i]
-        worst = under if under > over else over
-        outside = worst if worst > outside else outside
+        outside += int(lo[i] - t[i] > KNOT_SLACK) + int(t[i] - hi[i] > KNOT_SLACK)
     return outside
 
 
@@ -246,15 +244,15 @@ def settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, c
         k[b] = c * (piece[VA, b - 1] - piece[UA, b] - piece[VA, b] + piece[UA, n]) - piece[A, b]
         outside = solve(r, boundary, piece, p, f, e, k, z, t, s)
         count[SOLVES] += 1
-        if outside <= KNOT_SLACK:
+        if outside == 0:
             return True
         # Hold: whoever left its segment moves to the neighbouring one, never further.
         m = middle_of(n)
         top, base = m, m
         for i in range(1, n):
-            if t[i] > piece[HI, i] + KNOT_SLACK:
+            if t[i] - piece[HI, i] > KNOT_SLACK:
                 segment[i] += 1
-            elif t[i] < piece[LO, i] - KNOT_SLACK:
+            elif piece[LO, i] - t[i] > KNOT_SLACK:
                 segment[i] -= 1
             else:
                 continue
@@ -267,13 +265,19 @@ def settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, c
 
 
 @njit(**OPTIONS)
-def miss(watch, p, s, r1, s1, r2, s2):
-    """Largest embedded error estimate of a step [K] from node `watch` down; the pivots turn heat into temperature."""
-    worst = 0.0
-    for i in range(watch, s.size):
-        estimate = abs(E1 * (r1[i] - s[i]) + E2 * (s1[i] - r1[i]) + E3 * (s2[i] - r2[i])) * p[i]
-        worst = estimate if estimate > worst else worst
-    return worst
+def estimate(i, p, s, r1, s1, r2, s2):
+    """Embedded error estimate of a step at node `i` [K]; the pivot turns heat into temperature."""
+    return abs(E1 * (r1[i] - s[i]) + E2 * (s1[i] - r1[i]) + E3 * (s2[i] - r2[i])) * p[i]
+
+
+@njit(**OPTIONS)
+def misses(limit, watch, p, s, r1, s1, r2, s2):
+    """How many nodes from `watch` down have an error estimate beyond `limit`."""
+    count = 0
+    for i in range(1, s.size):  # from a fixed start and without a branch, so that the loop vectorises
+        error = abs(E1 * (r1[i] - s[i]) + E2 * (s1[i] - r1[i]) + E3 * (s2[i] - r2[i])) * p[i]
+        count += int(error > limit) * int(i >= watch)
+    return count
 
 
 @njit(**OPTIONS)
