@@ -1,14 +1,19 @@
 """Ground temperature and frost depth in layered, freezing ground."""
 
-from soiltemp import closed_form
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
 from soiltemp.climate import periodic_surface, read_record
 from soiltemp.frost import envelope, frost_depth
 from soiltemp.ground import Layer, Profile
 from soiltemp.materials import Material, Soil, library_materials, material
-from soiltemp.netcdf import open_result, save
-from soiltemp.site import Site, read_site
-from soiltemp.site_run import run
 from soiltemp.study import solve
+
+if TYPE_CHECKING:
+    from soiltemp import closed_form
+    from soiltemp.netcdf import open_result, save
+    from soiltemp.site import Site, read_site
+    from soiltemp.site_run import run
 
 __all__ = [
     "Layer",
@@ -29,3 +34,26 @@ __all__ = [
     "save",
     "solve",
 ]
+
+# Found when first asked for: not every notebook has a site file, and an import should cost little.
+_LATER = {
+    "Site": "soiltemp.site",
+    "open_result": "soiltemp.netcdf",
+    "read_site": "soiltemp.site",
+    "run": "soiltemp.site_run",
+    "save": "soiltemp.netcdf",
+}
+
+
+def __getattr__(name: str) -> Any:
+    if name == "closed_form":
+        return import_module("soiltemp.closed_form")
+    if name in _LATER:
+        value = getattr(import_module(_LATER[name]), name)
+        globals()[name] = value
+        return value
+    raise AttributeError(f"module 'soiltemp' has no attribute {name!r}")
+
+
+def __dir__() -> list[str]:
+    return sorted(__all__)

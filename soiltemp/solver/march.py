@@ -257,19 +257,20 @@ def march_block(
         The same bits for either value of `threads` and any grouping of columns.
     """
     columns, nodes = start.shape
-    block = Block(
-        np.full((columns, schedule.rows, nodes), np.nan),
-        np.full((columns, schedule.rows), np.nan),
-        start.copy(),
-        np.zeros(columns, dtype=np.int64),
-        np.zeros(columns, dtype=np.int64),
-    )
+    # neighbours in a block should cross their knots together, so like is marched with like; the bits are the same
+    order = np.lexsort((which, forced_by))
+    temperature = np.full((columns, schedule.rows, nodes), np.nan)
+    heat = np.full((columns, schedule.rows), np.nan)
+    end = start[order]
+    status, stopped = np.zeros(columns, dtype=np.int64), np.zeros(columns, dtype=np.int64)
     count = np.zeros((columns, len(COUNTERS)), dtype=np.int64)
     run = march_columns_parallel if threads == "parallel" else march_columns
     run(
-        tables, which, schedule.dt, surfaces, forced_by, schedule.parts, schedule.row, base_flux, watch, tolerance,
-        block.end, block.temperature, block.heat, block.status, block.stopped, count,
+        tables, which[order], schedule.dt, surfaces, forced_by[order], schedule.parts, schedule.row, base_flux[order],
+        watch, tolerance, end, temperature, heat, status, stopped, count,
     )  # fmt: skip
+    back = np.argsort(order)
+    block = Block(temperature[back], heat[back], end[back], status[back], stopped[back])
     for column in range(columns):
         surface = surfaces[forced_by[column]]
         table = tables[which[column]]
