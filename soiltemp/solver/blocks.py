@@ -33,6 +33,7 @@ from soiltemp.solver.stage import (
     SOLVES,
     STEPS,
     W_FLUX,
+    door,
     flux_difference,
     health,
     middle_of,
@@ -465,7 +466,7 @@ def _make(fingerprint, mode):
                 out_temperature, out_heat, status, stopped, count, first, min(WIDTH, columns - first), width,
             )  # fmt: skip
 
-    return njit(cache=True, parallel=mode == "parallel", **OPTIONS)(march_columns)
+    return door(parallel=mode == "parallel")(march_columns)
 
 
 march_columns = _make(FINGERPRINT, "serial")

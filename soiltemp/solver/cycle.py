@@ -37,6 +37,12 @@ MOST_PERIODS = 60
 LEAST_SHARE = 1.0 / 16.0
 """Least share of a move that is made."""
 
+PATIENCE = 10
+"""Periods after which a move that does not help is followed by plain years."""
+
+RESTING = 2
+"""Plain years after a move that did not help."""
+
 
 @dataclass(frozen=True, eq=False)
 class Cycle:
@@ -138,21 +144,23 @@ def find_cycle(
     state = _steady(table, _mean_potential(table, schedule), base_flux)
     largest = np.inf
     worst = 0
-    share = 1.0
+    share, moved, rest = 1.0, False, 0
     for period in range(1, MOST_PERIODS + 1):
         run = march(table, schedule, state, base_flux=base_flux, watch=watch, tolerance=tolerance)
-        move = _move(
-            table,
-            run.temperature.mean(axis=0),
-            _stored(table, run.end) - _stored(table, state),
-            schedule.duration,
-        )
+        gain = _stored(table, run.end) - _stored(table, state)
+        move = _move(table, run.temperature.mean(axis=0), gain, schedule.duration)
         worst = int(np.argmax(np.abs(move)))
-        if abs(move[worst]) > 0.5 * largest:
-            # much latent heat at the edge of ground frozen all year makes whole moves swing to and fro
+        before, largest = largest, float(np.abs(move[worst]))
+        helped = largest <= (0.5 if period <= PATIENCE else 0.75) * before
+        if moved and not helped:
+            # latent heat at an edge of the frost makes moves swing to and fro: smaller ones, later with years between
             share = max(0.5 * share, LEAST_SHARE)
-        largest = float(np.abs(move[worst]))
-        state = run.end + share * move
+            rest = 0 if period <= PATIENCE else RESTING
+        elif not moved and helped:
+            rest = max(rest, 1)  # plain years get there by themselves
+        moved = rest == 0
+        rest = max(rest - 1, 0)
+        state = run.end + share * move if moved else run.end
         if largest <= SETTLED:
             # one plain year more: at the edge of ground frozen all year the last move may itself be a step too far
             run = march(table, schedule, state, base_flux=base_flux, watch=watch, tolerance=tolerance)

@@ -6,7 +6,6 @@ It never raises and never allocates in a step; `stage` explains the numerics.
 from __future__ import annotations
 
 import numpy as np
-from numba import njit
 
 from soiltemp.solver.careful import careful
 from soiltemp.solver.stage import (
@@ -17,7 +16,6 @@ from soiltemp.solver.stage import (
     FINGERPRINT,
     GAMMA,
     HI,
-    OPTIONS,
     STEPS,
     UA,
     VA,
@@ -26,6 +24,7 @@ from soiltemp.solver.stage import (
     B,
     U,
     V,
+    door,
     flux_difference,
     health,
     misses,
@@ -40,7 +39,7 @@ __all__ = ["march_one"]
 def _make(fingerprint):
     """Compile `march_one`; its disk cache is asked for by the fingerprint of all solver sources, see `stage`."""
 
-    @njit(cache=True, **OPTIONS)
+    @door()
     def march_one(
         table, bottom, dt, surface, base, parts, row, watch, tolerance, temperature, out_temperature,
         out_heat_in, out_heat_out, count,

@@ -38,6 +38,7 @@ __all__ = [
     "OPTIONS",
     "OUT_OF_RANGE",
     "PIECE_FIELDS",
+    "door",
     "estimate",
     "factor",
     "flux_difference",
@@ -85,6 +86,18 @@ E3 = -2.0 / 3.0
 FINGERPRINT = zlib.crc32(b"".join(path.read_bytes() for path in sorted(Path(__file__).parent.glob("*.py"))))
 
 OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "boundscheck": False}
+
+
+def door(**options: Any) -> Any:
+    """Compile a door of the kernel, with its code kept on disk where there is a place to keep it."""
+
+    def compiled(function: Any) -> Any:
+        try:
+            return njit(cache=True, **OPTIONS, **options)(function)
+        except RuntimeError:  # neither beside the source nor in the user's folder may be written to
+            return njit(**OPTIONS, **options)(function)
+
+    return compiled
 
 
 @njit(**OPTIONS)
@@ -226,7 +239,7 @@ def flux_difference(piece, surface_potential, t, flux):
 
 @njit(**OPTIONS)
 def settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, count):
-    """Solve one stage by layer 1; True when every node ended in its segment.
+    """Solve one stage, holding at knots; True when every node ended in its segment.
 
     `boundary` is c times the potential at the surface, `below` the potential below the base. `factored[0]` is c of
     the factors at hand, 0 where there are none.
