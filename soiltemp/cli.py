@@ -15,7 +15,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from types import TracebackType
-from typing import NoReturn, TextIO
+from typing import Any, NoReturn, TextIO
 
 import numpy as np
 import xarray as xr
@@ -135,6 +135,19 @@ def _command_line(found: str, allowed: str, remedy: str) -> str:
     return message("command line", found, allowed, remedy)
 
 
+class _Version(argparse.Action):
+    """Say the installed version; looked up only when asked for."""
+
+    def __call__(self, parser: argparse.ArgumentParser, *_: Any) -> None:
+        from importlib.metadata import PackageNotFoundError, version
+
+        try:
+            print(f"soiltemp {version('soiltemp')}")
+        except PackageNotFoundError:
+            print("soiltemp, not installed as a package")
+        parser.exit(0)
+
+
 def _parser() -> argparse.ArgumentParser:
     common = _Parser(add_help=False)
     common.add_argument(
@@ -147,6 +160,7 @@ def _parser() -> argparse.ArgumentParser:
         description="Ground temperature and frost depth in layered, freezing ground.",
         epilog=f"{_STATUS_HELP}. {CAUTION_SHORT}",
     )
+    parser.add_argument("--version", action=_Version, nargs=0, help="show the version and stop")
     commands = parser.add_subparsers(metavar="COMMAND", required=True, parser_class=_Parser)
     check = commands.add_parser(
         "check",

@@ -179,7 +179,8 @@ def _indices(series: xr.DataArray, units: Units) -> str:
     frost, thaw = (units.show(index(series), "freezing_index", 0) for index in (freezing_index, thawing_index))
     mean = units.show(float(series.mean()), "temperature")
     return (
-        f"mean {mean}, lowest {units.show(lowest, 'temperature')} on {on}; freezing index {frost}, thawing index {thaw}"
+        f"mean {mean}, lowest {units.show(lowest, 'temperature')} on {on}; sum over the whole time of degree-days "
+        f"below freezing {frost}, above {thaw}"
     )
 
 
@@ -198,18 +199,30 @@ def summary(site: Site, result: xr.Dataset, system: str) -> list[str]:
     units = Units(UNITS[system])
     times = result["time"].values
     span = f"{show_moment(times[0])} to {show_moment(times[-1])}"
-    lines = [f"{site.name}, {span}", f"  start of the run: {result.attrs['initial_state']}", ""]
+    lines = [f"{site.name}, {span}", f"  start of the run: {result.attrs['initial_state']}"]
+    if "n_factors" in result.attrs:
+        lines += _wrapped(f"n-factors: {result.attrs['n_factors']}")
+    if "quality_report" in result.attrs:
+        lines += _wrapped(f"record: {result.attrs['quality_report'].splitlines()[0]}")
+    lines.append("")
     zero = units.show(0.0, "temperature", 0)
-    rows = [["", "greatest depth", "on", "numerical error"]]
+    rows = [["", "greatest depth", "on", "numerical error, estimated"]]
+    to_base = float(result["frost_depth"].max()) >= site.profile.base * (1.0 - 1e-9)
     for name, text in (("frost_depth", f"frost ({zero})"), ("frozen_ground_depth", "frozen ground")):
         depth = result[name].values
         deepest = int(np.argmax(depth))
         on = show_moment(times[deepest]) if depth[deepest] > 0.0 else "never"
         error = units.show(float(result[f"{name}_error"]), "length", 3)
-        rows.append([text, units.show(float(depth[deepest]), "length"), on, error])
+        frozen_through = to_base and depth[deepest] >= site.profile.base * (1.0 - 1e-9)
+        value = units.show(float(depth[deepest]), "length")
+        rows.append([text, f"at least {value}" if frozen_through else value, on, "" if frozen_through else error])
     lines += ["Frost", *_table(rows, 0)]
-    if float(result["frost_depth"].max()) >= site.profile.base * (1.0 - 1e-9):
-        lines += _wrapped("The column is frozen to its base: the frost goes deeper than the ground described.")
+    if to_base:
+        thaw = units.show(float(result["thaw_depth"].max()), "length")
+        lines += _wrapped(
+            "The column is frozen to its base: the frost goes deeper than the ground described. "
+            f"Greatest thaw from above: {thaw}."
+        )
     lines += [
         *_coldest(site, result, units),
         "",
@@ -229,7 +242,16 @@ def _coldest(site: Site, result: xr.Dataset, units: Units) -> list[str]:
     places += [("", depth) for depth in site.study.depths or ()]
     if not places:
         return []
-    rows = [["", "depth", "coldest", "on", f"days below {units.show(0.0, 'temperature', 0)}", "numerical error"]]
+    rows = [
+        [
+            "",
+            "depth",
+            "coldest",
+            "on",
+            f"days below {units.show(0.0, 'temperature', 0)}, in all",
+            "numerical error, estimated",
+        ]
+    ]
     error = result["ground_temperature_error"]
     for place, depth in places:
         there = extremes(result, depth)
@@ -250,6 +272,10 @@ def _coldest(site: Site, result: xr.Dataset, units: Units) -> list[str]:
         where = (
             f"{units.show(abs(margin), 'length')} {'below the deepest frost' if margin >= 0.0 else 'inside the frost'}."
         )
+        if float(result["frost_depth"].max()) >= site.profile.base * (1.0 - 1e-9):
+            where = (
+                f"at {units.show(site.line.cover, 'length')}, inside ground that is frozen to the base of the column."
+            )
         if float(result["frost_depth"].max()) == 0.0:
             where = f"at {units.show(site.line.cover, 'length')}; no frost in the time studied."
         lines.append(f"  The crown of the line lies {where}")

@@ -322,8 +322,9 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
     frozen = [material.conductivity_frozen for material in materials]
     found[names[0]] = _attempt(
         lambda: layered_stefan_depth(thickness, frozen, latent, winter.index),
-        f"{when} Latent heat and frozen conductivity only; the heat stored in the ground, which is left out, makes the "
-        "numerical frost shallower, as a rule.",
+        f"{when} Latent heat and frozen conductivity only; to be set beside the frozen ground, which the heat stored "
+        "in the ground, left out here, makes shallower. The 0 degC line runs ahead of the ice where water freezes over "
+        "a range of temperatures, and may be the deeper one.",
         dry,
     )
     if not surface.years:
@@ -341,7 +342,8 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
     found[names[1]] = _attempt(
         berggren,
         f"{when} The whole winter as one step of temperature of {season / DAY:.0f} days, ground at the mean of the "
-        f"surface, {surface.mean:.1f} degC, means of frozen and thawed properties, all water freezing at 0 degC.",
+        f"surface, {surface.mean:.1f} degC, means of frozen and thawed properties, all water freezing at 0 degC: as a "
+        "rule shallower than the 0 degC line of soil that freezes over a range.",
         dry,
     )
     why = "What the stored heat leaves of Stefan's depth with these mean properties."

@@ -11,6 +11,7 @@ import hashlib
 import importlib.metadata
 import os
 import shutil
+import stat
 import tempfile
 import threading
 from datetime import UTC, datetime
@@ -426,11 +427,15 @@ def _check_content(place: Path, where: str) -> None:
     """Look at the bytes before the library does: a damaged file can end the process in there."""
     allowed = "a NetCDF file that save() wrote"
     try:
-        content = place.read_bytes()
+        mode = place.stat().st_mode
+        content = place.read_bytes() if stat.S_ISREG(mode) or stat.S_ISDIR(mode) else None  # a folder raises
     except (OSError, ValueError) as error:
         reason = str(getattr(error, "strerror", None) or error).lower()
         found = f'no readable file at "{place}" ({reason})'
         raise DataFileError(message(where, found, allowed, "check the path")) from error
+    if content is None:
+        found = f'a device, pipe or socket at "{place}"'
+        raise DataFileError(message(where, found, allowed, "choose a result file"))
     if not content.startswith(b"\x89HDF\r\n\x1a\n"):
         found = "a file of another kind" if content else "an empty file"
         raise DataFileError(message(where, found, allowed, "choose a result file"))

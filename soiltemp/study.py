@@ -11,6 +11,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from soiltemp.column import Column
+from soiltemp.constants import DAY, YEAR
 from soiltemp.errors import InputError, message
 from soiltemp.glossary import attributes
 from soiltemp.ground import Profile
@@ -235,17 +236,28 @@ def _with_errors(
         ground_temperature_error=(
             "depth", np.abs(difference[1:]).max(axis=0), attributes("ground_temperature_error"),
         ),
-        frost_depth_error=((), abs(float(fine.frost.max() - coarse.frost.max())), attributes("frost_depth_error")),
+        frost_depth_error=((), _largest_miss(fine.frost, coarse.frost), attributes("frost_depth_error")),
         frozen_ground_depth_error=(
-            (), abs(float(fine.frozen.max() - coarse.frozen.max())), attributes("frozen_ground_depth_error"),
+            (), _largest_miss(fine.frozen, coarse.frozen), attributes("frozen_ground_depth_error"),
         ),
     )  # fmt: skip
+
+
+def _largest_miss(fine: Floats, coarse: Floats) -> float:
+    """Largest difference of a depth between two runs while both are beyond half of their largest.
+
+    Not over all times: the day on which the last of the frost goes differs between grids, and with it the whole depth.
+    """
+    deep = (fine > 0.5 * fine.max()) & (coarse > 0.5 * coarse.max())
+    return float(np.abs(fine - coarse)[deep].max()) if deep.any() else abs(float(fine.max() - coarse.max()))
 
 
 def _initial_text(initial: Any, problem: Problem, answer: _Answer) -> str:
     if problem.cycle is not None:
         years = whole_years(float(problem.schedule.duration))
-        what = "the forcing" if years == 1 else f"the average year of the {years} whole years of the forcing"
+        what = f"the average year of the {years} whole years of the forcing"
+        if years == 1:
+            what = "the forcing" if problem.schedule.duration < YEAR + 2.0 * DAY else "the first year of the forcing"
         return f"periodic steady state of {what}, settled after {answer.periods} repeated years"
     return (
         "profile given by the user" if isinstance(initial, xr.DataArray) else f"{initial} throughout, given by the user"

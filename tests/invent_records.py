@@ -8,7 +8,7 @@ same.
 
 from __future__ import annotations
 
-import datetime
+import datetime as dt
 import math
 import pathlib
 import random
@@ -16,8 +16,8 @@ from collections.abc import Iterator
 
 FOLDER = pathlib.Path(__file__).resolve().parent.parent / "example_sites"
 
-DAY = datetime.timedelta(days=1)
-HOUR = datetime.timedelta(hours=1)
+DAY = dt.timedelta(days=1)
+HOUR = dt.timedelta(hours=1)
 
 
 def _normal(source: random.Random) -> float:
@@ -35,7 +35,7 @@ def _weather(source: random.Random, memory: float, spread: float) -> Iterator[fl
         yield state
 
 
-def _season(moment: datetime.datetime, coldest: datetime.datetime) -> float:
+def _season(moment: dt.datetime, coldest: dt.datetime) -> float:
     """Cosine of the annual wave: 1 at the coldest time, -1 half a year later."""
     return math.cos(2.0 * math.pi * ((moment - coldest) / DAY) / 365.25)
 
@@ -44,11 +44,11 @@ def wether_lane() -> str:
     """Daily means of six years, cold and continental; the winter of 2018-19 is the severe one."""
     source = random.Random(20150701)
     noise = _weather(source, memory=0.78, spread=1.0)
-    missing = {datetime.date(2016, 3, 8), datetime.date(2017, 11, 20), datetime.date(2017, 11, 21)}
-    missing |= {datetime.date(2019, 8, 3) + day * DAY for day in range(3)}
-    sentinels = {datetime.date(2016, 12, 29), datetime.date(2018, 6, 17), datetime.date(2020, 2, 10)}
-    doubled = datetime.date(2018, 4, 2)
-    severe = (datetime.datetime(2018, 12, 1), datetime.datetime(2019, 3, 20))
+    missing = {dt.date(2016, 3, 8), dt.date(2017, 11, 20), dt.date(2017, 11, 21)}
+    missing |= {dt.date(2019, 8, 3) + day * DAY for day in range(3)}
+    sentinels = {dt.date(2016, 12, 29), dt.date(2018, 6, 17), dt.date(2020, 2, 10)}
+    doubled = dt.date(2018, 4, 2)
+    severe = (dt.datetime(2018, 12, 1), dt.datetime(2019, 3, 20))
     lines = [
         "# Invented for demonstration by tests/invent_records.py; not a measurement",
         "# place: Wether Lane (invented), latitude 47.2, longitude -94.6",
@@ -56,9 +56,9 @@ def wether_lane() -> str:
         "# time_zone: local standard time (UTC-6)",
         "date,air_temperature_degC",
     ]
-    moment = datetime.datetime(2015, 7, 1)
-    while moment < datetime.datetime(2021, 7, 1):
-        season = _season(moment, datetime.datetime(2016, 1, 18))
+    moment = dt.datetime(2015, 7, 1)
+    while moment < dt.datetime(2021, 7, 1):
+        season = _season(moment, dt.datetime(2016, 1, 18))
         value = 4.2 - 17.0 * season + next(noise) * (4.6 + 2.2 * season)  # weather is rougher in winter
         if severe[0] <= moment < severe[1]:
             value -= 6.5
@@ -79,10 +79,10 @@ def kettle_yard() -> str:
     noise = _weather(source, memory=0.985, spread=1.0)
     flutter = random.Random(20200702)
     outages = (
-        (datetime.datetime(2020, 9, 14, 10), 3),
-        (datetime.datetime(2020, 12, 5, 22), 9),
-        (datetime.datetime(2021, 2, 17, 4), 1),
-        (datetime.datetime(2021, 5, 26, 13), 2),
+        (dt.datetime(2020, 9, 14, 10), 3),
+        (dt.datetime(2020, 12, 5, 22), 9),
+        (dt.datetime(2021, 2, 17, 4), 1),
+        (dt.datetime(2021, 5, 26, 13), 2),
     )
     missing = {first + hour * HOUR for first, hours in outages for hour in range(hours)}
     lines = [
@@ -92,9 +92,9 @@ def kettle_yard() -> str:
         "# time_zone: local standard time (UTC-9)",
         "time,t_air [degF]",
     ]
-    moment = datetime.datetime(2020, 7, 1)
-    while moment <= datetime.datetime(2021, 7, 1):
-        season = _season(moment, datetime.datetime(2021, 1, 16))
+    moment = dt.datetime(2020, 7, 1)
+    while moment <= dt.datetime(2021, 7, 1):
+        season = _season(moment, dt.datetime(2021, 1, 16))
         daily = (2.6 - 1.8 * season) * math.cos(2.0 * math.pi * (moment.hour - 5) / 24.0)
         celsius = 1.2 - 11.5 * season - daily + next(noise) * (3.4 + 2.0 * season) + 0.25 * _normal(flutter)
         if moment not in missing:

@@ -148,7 +148,7 @@ def test_check_of_other_forms_of_a_site(site_file: pathlib.Path, capsys: pytest.
     # mean of a cosine's part below freezing, by the integral: 17/pi (sin a - a cos a), cos a = 4/17, times 365 days
     a = np.arccos(4.0 / 17.0)
     index = 365.0 * 17.0 / np.pi * (np.sin(a) - a * np.cos(a))
-    found = [int(number) for number in re.findall(r"freezing index (\d+) K day", out)]
+    found = [int(number) for number in re.findall(r"below freezing (\d+) K day", " ".join(out.split()))]
     assert found == [pytest.approx(index, abs=1.5), pytest.approx(0.5 * index, abs=1.5)]
     site_file.write_text(TEXT.replace('[line]\ncover = "1.8 m"\noutside_diameter = "0.3 m"', ""))
     assert main(["check", str(site_file)]) == 0
@@ -575,3 +575,9 @@ def test_reader_that_closes_the_pipe(site_file: pathlib.Path) -> None:
     done = program(["check", str(site_file)], stdout=writer)
     os.close(writer)
     assert (done.returncode, done.stderr) == (141, "")
+
+
+def test_version(capsys: pytest.CaptureFixture[str]) -> None:
+    with pytest.raises(SystemExit, match="0"):  # as --help ends
+        main(["--version"])
+    assert said(capsys)[0].startswith("soiltemp")

@@ -124,6 +124,67 @@ def test_text_of_users_stays_text(tmp_path: Path) -> None:
     assert plain.count("</script>") == text.count("</script>")
 
 
+def with_inputs(result: xr.Dataset, *, name: str = "silt", source: str = "a data sheet") -> xr.Dataset:
+    """Two layers as `run` writes them: one that freezes from -0.5 to 0 degC with 100 MJ/m^3, a board that does not."""
+    gap = np.nan
+    between = 0.5 * (1.5e6 + 2.5e6) + 100e6 / 0.5
+    dims = ("input_layer", "input_piece")
+    site = 'surface = { cover = "grass & snow" }'
+    filled = np.array([0, 1, 1, 0], dtype=np.int8)
+    made = result.assign(
+        input_layer_name=("input_layer", np.array([name, "board"], dtype=object)),
+        input_layer_source=("input_layer", np.array([source, ""], dtype=object)),
+        input_layer_thickness=("input_layer", [6.096, 1.904]),
+        input_knot=(dims, [[-0.5, 0.0, gap], [gap] * 3]),
+        input_frozen_share=(dims, [[1.0, 0.0, gap], [gap] * 3]),
+        input_heat_capacity=(dims, [[1.5e6, between, 2.5e6], [45e3, gap, gap]]),
+        input_conductivity=(dims, [[2.0, 1.5, 1.0], [0.036, gap, gap]]),
+        input_site_file=((), site),
+        input_air_temperature=("input_time", np.zeros(4), {"time_zone": "UTC-6", "source_sha256": "af32"}),
+        input_air_temperature_filled=("input_time", filled),
+    )
+    made.attrs.update(n_factors="freezing 0.5; a table", quality_report="air.csv: 2 interpolated", elements="172")
+    return made
+
+
+def test_page_tells_what_it_stands_on(tmp_path: Path) -> None:
+    _, parts = saved(tmp_path, with_inputs(wave()))
+    words = [word.strip() for word in parts.words if word.strip()]
+    at = words.index("silt")
+    assert words[at : at + 10] == [
+        "silt", "0.00 m", "6.10 m", "1", "2", "2.5", "1.5", "100", "−0.5 to 0", "a data sheet",
+    ]  # fmt: skip
+    at = words.index("board")
+    assert words[at + 3 : at + 10] == ["0.036", "0.036", "0.045", "0.045", "0", "nothing freezes", "source not stated"]
+    facts = {words[n]: words[n + 1] for n in range(len(words) - 1)}
+    assert facts["Cover of the surface"] == "grass & snow"
+    assert facts["n-factors"] == "freezing 0.5; a table"
+    assert facts["Air temperature, SHA-256 of the file"] == "af32"
+    assert facts["Air temperature, time zone"] == "UTC-6"
+    assert facts["Air temperature, values used"] == "4, 2 of them interpolated"
+    assert facts["Quality report of the record"] == "air.csv: 2 interpolated"
+    assert facts["Elements of the column"] == "172"
+    assert words.index("Pictures") < words.index("What it stands on") < words.index("How far to trust these numbers")
+    # 1 W/(m K) = 0.5778 BTU/(h ft degF), 1 MJ/m^3 = 26.84 BTU/ft^3, 1 MJ/(m^3 K) = 14.91 BTU/(ft^3 degF): BTU (IT)
+    # 1055.056 J, foot 0.3048 m (NIST SP 811, 2008, App. B.8)
+    _, parts = saved(tmp_path, with_inputs(wave()), units="us")
+    words = [word.strip() for word in parts.words if word.strip()]
+    at = words.index("silt")
+    assert words[at + 2 : at + 9] == ["20.0 ft", "0.578", "1.16", "37.3", "22.4", "2684", "31.1 to 32"]
+
+
+def test_inputs_are_escaped_and_optional(tmp_path: Path) -> None:
+    text, parts = saved(tmp_path, with_inputs(wave(), name=ATTACK, source=ATTACK))
+    assert ATTACK not in text
+    assert "".join(parts.words).count(ATTACK) == 2
+    assert "img" not in parts.tags
+    text, parts = saved(tmp_path, wave())
+    assert "What it stands on" not in text
+    _, parts = saved(tmp_path, wave().assign_attrs(initial_state="5 degC everywhere"))
+    assert "5 degC everywhere" in parts.words
+    assert "Air temperature, values used" not in parts.words
+
+
 def test_cautions_and_site_name_without_a_title(tmp_path: Path) -> None:
     result = wave()
     result.attrs["site_name"] = "Wether Lane"
@@ -198,9 +259,28 @@ def test_no_frost_and_frost_to_the_base_are_said() -> None:
     assert warm["frost_time"] == "none"
     assert warm["line_margin"] == "the crown lies at 1.00 m; no frost in the time studied"
     cold = found(wave(mean=-10.0, amplitude=8.0), BuriedLine(1.0, 0.3))
-    assert "frozen to the base of the column, so the true depth is greater" in cold["maximum_frost_depth"]
+    assert cold["maximum_frost_depth"].startswith("at least 8.00 m: frozen to the base of the column; only a deeper")
+    assert "error" not in cold["maximum_frost_depth"]
+    assert cold["maximum_thaw_depth"] == "none: nothing thaws from above in the time studied"
+    assert "maximum_thaw_depth" not in warm
+    rows = {row[0]: row[1] for row in trust(wave(mean=-10.0, amplitude=8.0), SI)}
+    assert rows["Frost depth, numerical error"] == "not stated"
+    assert winter_rows(wave(mean=-10.0, amplitude=8.0), SI)[0][1] == "at least 8.00 m"
     assert cold["frost_time"].startswith("all the time, 2020-07-01 to ")
     assert cold["line_margin"] == "frost passes the crown at 1.00 m: the column is frozen to its base"
+
+
+def test_greatest_thaw_is_told_where_ground_stays_frozen() -> None:
+    # mean -5, amplitude 15: the warmest of the year is 0 degC where exp(-z / 2) = 5 / 15, at 2 ln 3 = 2.197 m; the
+    # straight lines over 0.1 m between depths leave less than a centimetre
+    result = wave(mean=-5.0)
+    said = found(result)["maximum_thaw_depth"]
+    assert re.fullmatch(r"2\.(19|20) m on 2020-\d\d-\d\d; the ground below stays frozen all year", said), said
+    given = found(result.assign(thaw_depth=("time", np.linspace(0.0, 1.5, result.sizes["time"]))))
+    assert given["maximum_thaw_depth"].startswith("1.50 m on 2021-07-01;")
+    # a winter alone is no year, and ground that thaws through has no such depth
+    assert "maximum_thaw_depth" not in found(wave(mean=-5.0, days=200))
+    assert "maximum_thaw_depth" not in found(wave())
 
 
 def test_winters_are_cut_where_there_is_least_frost() -> None:

@@ -1,6 +1,7 @@
 """Result files: read back as saved, and clean for CF checkers, GIS and other readers."""
 
 import hashlib
+import os
 import re
 import threading
 
@@ -441,3 +442,16 @@ def test_threads_take_turns(site, tmp_path):
     for thread in threads:
         thread.join()
     assert failures == []
+
+
+def test_devices_and_pipes_are_refused(tmp_path):
+    os.mkfifo(tmp_path / "pipe.nc")
+    (tmp_path / "zero.nc").symlink_to("/dev/zero")
+    for name in ("pipe.nc", "zero.nc"):
+        with pytest.raises(DataFileError, match=f'result "{name}": found a device, pipe or socket .*choose a result'):
+            open_result(tmp_path / name)
+
+
+def test_link_to_a_result_is_followed(site, site_file, tmp_path):
+    (tmp_path / "link.nc").symlink_to(site_file)
+    assert open_result(tmp_path / "link.nc")["frost_depth"].equals(site["frost_depth"])

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import re
 from typing import Any
 
@@ -21,9 +22,7 @@ def daily(values: Any, start: str = "2020-01-01", header: str = "date,t_air [deg
     return "\n".join([header, *(f"{first + k * DAY},{value}" for k, value in enumerate(values))]) + "\n"
 
 
-def hourly(
-    start: str, count: int, header: str = "time,t_air [degC]", drop: Any = (), double: Any = ()
-) -> str:
+def hourly(start: str, count: int, header: str = "time,t_air [degC]", drop: Any = (), double: Any = ()) -> str:
     """Text of an hourly record with some lines left out and some doubled (with another value)."""
     lines = [header]
     for k in range(count):
@@ -350,7 +349,7 @@ CASES: dict[str, tuple[str | bytes, dict[str, Any], type[SoilTempError], tuple[s
         DataFileError,
         ("3 rows without a number", "check the column"),
     ),
-    "one value": (daily(["", "1.0", ""]), {}, DataFileError, ("1 values", "at least two", "check")),
+    "one value": (daily(["", "1.0", ""]), {}, DataFileError, ("1 value", "at least two", "check")),
     "impossible cold": (
         daily([1.0, -120.0, 1.0, -121.0, 1.0, -122.0, 1.0, -123.0, 1.0]),
         {},
@@ -366,7 +365,7 @@ CASES: dict[str, tuple[str | bytes, dict[str, Any], type[SoilTempError], tuple[s
         daily(["1e308", "1.5"]),
         {},
         DataFileError,
-        ('column "t_air [degC]"', "1 values at 2 different times", "at least two values"),
+        ('column "t_air [degC]"', "1 value at 2 different times", "at least two values"),
     ),
     "overflow": (
         with_line(5, "2020-01-04,1e400"),
@@ -396,7 +395,50 @@ CASES: dict[str, tuple[str | bytes, dict[str, Any], type[SoilTempError], tuple[s
         daily([*WAVE[:20], *[4.4] * 9, *WAVE[20:60]]),
         {},
         DataFileError,
-        ("1 gap", "2020-01-21 to 2020-01-29", "3 days", "longest_gap"),
+        (
+            *("1 gap", "2020-01-21 to 2020-01-29", "9 equal values (4.4 degC", "2020-01-21 to 2020-01-29"),
+            *("stuck sensor", "3 days", "stuck_after", "longest_gap"),
+        ),
+    ),
+    "many stuck": (
+        "time,t [degC]\n"
+        + "".join(
+            f"{np.datetime64('2020-01-01T00') + np.timedelta64(k, 'h')}:00,{4.4 if k % 72 < 24 else 5 + k % 7 / 10}\n"
+            for k in range(40, 700)
+        ),
+        {},
+        DataFileError,
+        (
+            *("values missing (3", "24 equal values (4.4 degC", "2020-01-04 to", "more runs)"),
+            *("stuck sensor", "stuck_after"),
+        ),
+    ),
+    "stuck at the end, wanted": (
+        daily([*WAVE[:40], *[4.4] * 6]),
+        {"end": "2020-02-14"},
+        DataFileError,
+        (
+            *("to 2020-02-10", "equal values from 2020-02-10 to 2020-02-15", "stuck sensor", "covers"),
+            *("stuck_after", "choose start and end"),
+        ),
+    ),
+    "all stuck": (
+        daily([4.4] * 9),
+        {},
+        DataFileError,
+        ("0 values left", "equal values", "stuck sensor", "at least two", "stuck_after"),
+    ),
+    "gap of nothing stuck": (
+        daily([*WAVE[:20], *[""] * 2, *WAVE[22:60]]),
+        {"longest_gap": "1 day"},
+        DataFileError,
+        ("1 gap without good values: 2020-01-21 to 2020-01-22; allowed: gaps up to 1 day,", "interpolated; add values"),
+    ),
+    "gap of an hour": (
+        hourly("2020-01-01", 72, drop={"2020-01-02T05:00", "2020-01-02T06:00"}),
+        {"longest_gap": "1 h"},
+        DataFileError,
+        ("1 gap", "gaps up to 1 hour,"),
     ),
     # times as a whole
     "long gap": (
@@ -421,7 +463,7 @@ CASES: dict[str, tuple[str | bytes, dict[str, Any], type[SoilTempError], tuple[s
         "date,t [degC]\n" + "2020-01-01,1\n" * 5,
         {},
         DataFileError,
-        ("1 different times", "two"),
+        ("5 values at 1 different time;", "two"),
     ),
     "monthly": (
         "date,t [degC]\n2020-01-01,1\n2020-02-01,2\n2020-03-01,3\n2020-04-01,4\n",
@@ -436,8 +478,7 @@ CASES: dict[str, tuple[str | bytes, dict[str, Any], type[SoilTempError], tuple[s
         ("1 s apart", "1 minute", "average"),
     ),
     "irregular": (
-        "time,t [degC]\n"
-        + "".join(f"2020-01-01 {h:02d}:{m:02d},1\n" for h, m in ((0, 0), (1, 7), (3, 1), (3, 59))),
+        "time,t [degC]\n" + "".join(f"2020-01-01 {h:02d}:{m:02d},1\n" for h, m in ((0, 0), (1, 7), (3, 1), (3, 59))),
         {},
         DataFileError,
         ("changing intervals", "fixed interval", "first"),
@@ -489,7 +530,7 @@ CASES: dict[str, tuple[str | bytes, dict[str, Any], type[SoilTempError], tuple[s
         GOOD,
         {"start": "2020-01-03", "end": "2020-01-04"},
         DataFileError,
-        ("1 values", "at least two", "further apart"),
+        ("1 value", "at least two", "further apart"),
     ),
     "daily at seven": (
         "time,t [degC]\n" + "".join(f"2020-01-{d:02d} 07:00,{d}\n" for d in range(1, 9)),
@@ -624,9 +665,7 @@ def test_good_record_passes(tmp_path: Any) -> None:
     assert read_text(tmp_path, SHORT).values.tolist() == [1.5, 2.5]
 
 
-@pytest.mark.parametrize(
-    ("path", "part"), [("missing.csv", "no such file"), (".", "directory"), ("a\0b", "null")]
-)
+@pytest.mark.parametrize(("path", "part"), [("missing.csv", "no such file"), (".", "directory"), ("a\0b", "null")])
 def test_path_that_cannot_be_read(path: str, part: str, tmp_path: Any) -> None:
     """No file, a folder, and a name that no file can have."""
     with pytest.raises(DataFileError) as caught:
@@ -646,18 +685,14 @@ def netcdf(folder: Any, **changes: Any) -> Any:
     times = np.datetime64("2020-01-01", "ns") + np.arange(10) * np.timedelta64(24 * 3600 * 10**9, "ns")
     values = np.linspace(268.0, 277.0, 10)
     entry = xr.DataArray(values, dims="time", coords={"time": times}, attrs={"units": "K"})
-    dataset = xr.Dataset(
-        {"tas": entry.assign_attrs(changes.get("attrs", {})), "rain": entry.assign_attrs(units="mm")}
-    )
+    dataset = xr.Dataset({"tas": entry.assign_attrs(changes.get("attrs", {})), "rain": entry.assign_attrs(units="mm")})
     if "dims" in changes:
         dataset = dataset.expand_dims(changes["dims"])
     if "rename" in changes:
         dataset = dataset.rename(changes["rename"])
     if "extra" in changes:
         dataset["second"] = dataset["tas"]
-    encoding = (
-        {"time": {"units": "days since 2020-01-01", **changes.get("time", {})}} if "time" in dataset else {}
-    )
+    encoding = {"time": {"units": "days since 2020-01-01", **changes.get("time", {})}} if "time" in dataset else {}
     path = folder / "air.nc"
     dataset.to_netcdf(path, engine="netcdf4", encoding=encoding)
     return path
@@ -697,8 +732,101 @@ def test_netcdf_cut_short(share: float, tmp_path: Any) -> None:
     path = netcdf(tmp_path)
     data = path.read_bytes()
     path.write_bytes(data[: int(share * len(data))])
-    with pytest.raises(
-        DataFileError, match=r"^air\.nc: found a NetCDF file that cannot be read.*again\.$"
-    ) as caught:
+    with pytest.raises(DataFileError, match=r"^air\.nc: found a NetCDF file that cannot be read.*again\.$") as caught:
         read_record(path)
     assert_one_sentence(str(caught.value))
+
+
+@pytest.mark.parametrize(
+    ("header", "word"),
+    [
+        ("tmax_degC", "tmax"),
+        ("tmin", "tmin"),
+        ("TX", "TX"),
+        ("dailyMax [degC]", "dailyMax"),
+        ("AirTempMin [degC]", "AirTempMin"),
+        ("stationTempMin [degC]", "Min"),
+        ("t_air (min)", "min"),
+        ("dew_point_degC", "dew"),
+        ("Dewpoint [degF]", "Dewpoint"),
+        ("wet_bulb_degC", "wet"),
+        ("wind_chill_degC", "wind"),
+        ("feels_like_degC", "feels"),
+        ("apparent_temperature_degC", "apparent"),
+        ("soil_temperature_50cm_degC", "50cm"),
+        ("SoilTemp [degC]", "SoilTemp"),
+        ("ground_temp_degC", "ground"),
+        ("temp_20cm_degC", "20cm"),
+        ("humidity", "humidity"),
+        ("RH", "RH"),
+        ("water_temp_degC", "water"),
+        ("probe 3 [degC]", "probe"),
+        ("Bodentemperatur_C", "Bodentemperatur"),
+    ],
+)
+def test_other_quantity_is_read_only_by_name(header: str, word: str, tmp_path: Any) -> None:
+    """A lone column whose name tells another quantity is refused, and read where `column` names it."""
+    text = daily(WAVE[:60], header=f"date,{header}")
+    with pytest.raises(DataFileError) as caught:
+        read_text(tmp_path, text, **({} if "deg" in header or header.endswith("_C") else {"unit": "degC"}))
+    sentence = str(caught.value)
+    assert_one_sentence(sentence)
+    assert sentence.startswith("air.csv: found for the temperature only the column ")
+    assert f'"{header}", which "{word}" tells' in sentence
+    assert f'set column to "{header}"; else' in sentence
+    unit = "degF" if "degF" in header else "degC"
+    limits = (-90.0, 60.0)
+    assert read_text(tmp_path, text, column=header, unit=unit, allowed_range=limits).size == 60
+
+
+@pytest.mark.parametrize(
+    "header",
+    [
+        *("whatever", "sensor_1", "t", "Temp [degC]", "air temperature 2 m above ground [degC]", "t_mean", "outside"),
+        *("temperature_10min_mean", "temp_5 min avg", "Lufttemperatur (2 m) [degC]", "t_air_200cm", "TempAvg", "value"),
+        *("surface_temperature", "daily_mean", "Station 4021", "temperature_2m", "T1", "minnow_creek", "Highland_AP"),
+    ],
+)
+def test_neutral_names_are_read(header: str, tmp_path: Any) -> None:
+    """A lone column with a neutral name, or one of air temperature, needs no `column`."""
+    assert read_text(tmp_path, daily(WAVE[:60], header=f"date,{header}"), unit="degC").size == 60
+
+
+@pytest.mark.parametrize(
+    ("name", "attrs"),
+    [
+        ("tsl", {}),
+        ("dew_point", {}),
+        ("t1", {"standard_name": "soil_temperature"}),
+        ("tasmax", {"standard_name": "air_temperature", "cell_methods": "time: maximum"}),
+    ],
+)
+def test_other_quantity_in_netcdf(name: str, attrs: dict[str, str], tmp_path: Any) -> None:
+    """The same for the variables of NetCDF files, by name, standard_name and cell_methods (CF 1.11, appendix E)."""
+    days = np.datetime64("2020-01-01", "ns") + np.arange(60) * DAY
+    series = ("time", np.array(WAVE[:60]), {"units": "degC", **attrs})
+    xr.Dataset({name: series}, coords={"time": days}).to_netcdf(tmp_path / "a.nc")
+    with pytest.raises(DataFileError, match=r"tells is something else.*set column to"):
+        read_record(tmp_path / "a.nc")
+    assert read_record(tmp_path / "a.nc", column=name).size == 60
+
+
+def test_only_regular_files_of_a_bearable_size(tmp_path: Any) -> None:
+    """A device without an end, a pipe that nobody writes to and a huge file are refused before they are read."""
+    os.mkfifo(tmp_path / "pipe.csv")
+    (tmp_path / "zero.csv").symlink_to("/dev/zero")
+    with (tmp_path / "huge.csv").open("wb") as file:
+        file.truncate(1_000_000_001)  # a hole: takes no room on the disk
+    for name, words in (
+        ("pipe.csv", ("a device, pipe or socket", "regular", "1 GB")),
+        ("zero.csv", ("a device, pipe or socket", "regular", "1 GB")),
+        ("huge.csv", ("a file of 1 GB", "up to 1 GB", "cut the record")),
+    ):
+        with pytest.raises(DataFileError) as caught:
+            read_record(tmp_path / name)
+        assert_one_sentence(str(caught.value))
+        assert str(caught.value).startswith(f"{name}: ")
+        assert all(word in str(caught.value) for word in words)
+    (tmp_path / "good.csv").write_text(GOOD)
+    (tmp_path / "link.csv").symlink_to(tmp_path / "good.csv")
+    assert read_record(tmp_path / "link.csv").size == 10

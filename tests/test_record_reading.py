@@ -27,10 +27,7 @@ def write(folder: pathlib.Path, content: str | bytes, name: str = "air.csv") -> 
 def table(dates: list[str], values: list[Any], header: str = "date,t_air [degC]") -> str:
     """Text of a record with the delimiter of its header."""
     mark = next(letter for letter in header if letter in ",;\t")
-    return (
-        "\n".join([header, *(f"{date}{mark}{value}" for date, value in zip(dates, values, strict=True))])
-        + "\n"
-    )
+    return "\n".join([header, *(f"{date}{mark}{value}" for date, value in zip(dates, values, strict=True))]) + "\n"
 
 
 def kinds(checked: CheckedRecord) -> dict[str, Finding]:
@@ -69,9 +66,7 @@ def dotted(order: str) -> list[str]:
         (table(DAYS, [round(v * 1.8 + 32, 2) for v in VALUES], "date,t [F]"), {}),
         (table(DAYS, [round(v + 273.15, 2) for v in VALUES], "date,t [K]"), {}),
         (
-            table(["date", *DAYS], ["degC", *VALUES], "day,t_air")
-            .split("\n", 1)[1]
-            .replace("degC", "t_air [degC]"),
+            table(["date", *DAYS], ["degC", *VALUES], "day,t_air").split("\n", 1)[1].replace("degC", "t_air [degC]"),
             {},
         ),
         (table(["", *DAYS], ["degC", *VALUES], "date,t_air"), {}),
@@ -147,9 +142,7 @@ def test_hourly_points(tmp_path: Any) -> None:
 
 def test_clock_written_in_other_ways(tmp_path: Any) -> None:
     """Noon and midnight with AM and PM; four-digit clock; several offsets are brought to UTC, one is kept."""
-    halves = table(
-        ["1/13/2020 12:00 AM", "1/13/2020 12:00 PM", "1/14/2020 12:00 a.m."], [1, 2, 3], "time,t [degC]"
-    )
+    halves = table(["1/13/2020 12:00 AM", "1/13/2020 12:00 PM", "1/14/2020 12:00 a.m."], [1, 2, 3], "time,t [degC]")
     record = read_record(write(tmp_path, halves))
     assert record.time.dt.strftime("%d %H").values.tolist() == ["13 00", "13 12", "14 00"]
     lines = "date,time,t [degC]\n2020-01-01,2200,1\n2020-01-01,2300,2\n2020-01-02,0000,3\n"
@@ -164,9 +157,7 @@ def test_clock_written_in_other_ways(tmp_path: Any) -> None:
 
 def test_minimum_and_maximum(tmp_path: Any) -> None:
     """The mean of the two, only when both are named."""
-    path = write(
-        tmp_path, "date,tmin [degF],tmax [degF]\n2020-01-01,14,32\n2020-01-02,5,41\n2020-01-03,23,41\n"
-    )
+    path = write(tmp_path, "date,tmin [degF],tmax [degF]\n2020-01-01,14,32\n2020-01-02,5,41\n2020-01-03,23,41\n")
     record = read_record(path, column=("tmin", "tmax"))
     assert np.allclose(record.values, [-5.0, -5.0, 0.0], atol=1e-12)
     assert record.attrs["cell_methods"] == "time: mean"
@@ -183,9 +174,7 @@ def days(count: int = 60, first: str = "2020-01-01") -> list[str]:
     return [str(np.datetime64(first, "D") + k) for k in range(count)]
 
 
-@pytest.mark.parametrize(
-    "number", [-9999, -999.0, -99.9, 9999, 999.9, -7999, 7999, 6999, -6999, 99.9, -9999.9]
-)
+@pytest.mark.parametrize("number", [-9999, -999.0, -99.9, 9999, 999.9, -7999, 7999, 6999, -6999, 99.9, -9999.9])
 def test_sentinel_is_missing(number: float, tmp_path: Any) -> None:
     """Numbers that stand for no value are counted, taken out, and interpolated."""
     values: list[Any] = wave()
@@ -257,9 +246,7 @@ def test_all_long_gaps_are_named(tmp_path: Any) -> None:
     values: list[Any] = wave()
     for first in (5, 20, 40):
         values[first : first + 4] = [""] * 4
-    with pytest.raises(
-        ValueError, match=r"3 gaps.*2020-01-06 to 2020-01-09, 2020-01-21 to 2020-01-24, 2020-02-10"
-    ):
+    with pytest.raises(ValueError, match=r"3 gaps.*2020-01-06 to 2020-01-09, 2020-01-21 to 2020-01-24, 2020-02-10"):
         read_record(write(tmp_path, table(days(), values)))
 
 
@@ -365,9 +352,7 @@ def test_summer_time_hour_in_utc_record_is_no_fault(tmp_path: Any) -> None:
     """One hour missing in one spring alone is a gap like any other, and so is an hour of another night."""
     for lost in ("2020-03-08T02:00", "2020-03-11T02:00"):
         hours = [str(np.datetime64("2020-03-01T00", "h") + k) + ":00" for k in range(400)]
-        lines = [
-            line for line in table(hours, wave(400), "time,t [degC]").splitlines(True) if lost not in line
-        ]
+        lines = [line for line in table(hours, wave(400), "time,t [degC]").splitlines(True) if lost not in line]
         assert int(read_record(write(tmp_path, "".join(lines))).filled.sum()) == 1
 
 
@@ -444,3 +429,43 @@ def test_netcdf_by_standard_name_and_bounds(tmp_path: Any) -> None:
     assert np.allclose(record.values, wave(), atol=1e-9)
     assert record.attrs["time_zone"] == "UTC"
     assert record.attrs["cell_methods"] == "time: mean"
+
+
+@pytest.mark.parametrize(
+    ("content", "options", "line"),
+    [
+        (table(DAYS, VALUES), {}, 'column "t_air [degC]" in degC, as stated by the header "t_air [degC]"'),
+        ("# unit: degC\n" + table(DAYS, VALUES, "date,x"), {}, 'column "x" in degC, as stated by the comments'),
+        (table(DAYS, VALUES, "date,x"), {"unit": "degF"}, 'column "x" in degF, as stated by the argument unit'),
+        (
+            table(["", *DAYS], ["K", *(value + 273.15 for value in VALUES)], "date,t"),
+            {},
+            'column "t" in K, as stated by the line below the header',
+        ),
+    ],
+)
+def test_report_says_what_was_read(content: str, options: dict[str, Any], line: str, tmp_path: Any) -> None:
+    """The second line of the report names the column, its unit and where the unit stands, whatever else is found."""
+    checked = read_checked(write(tmp_path, content), **options)
+    assert checked.report.table()[1] == f"read: {line}"
+    assert checked.temperature.attrs["quality_report"].split("\n")[1] == f"read: {line}"
+
+
+def test_report_says_which_variable_was_read(tmp_path: Any) -> None:
+    """The same for NetCDF files."""
+    air = read_record(write(tmp_path, table(days(), wave())), time_zone="UTC")
+    air.rename("tas").drop_vars("filled").to_netcdf(tmp_path / "a.nc")
+    report = read_checked(tmp_path / "a.nc").report
+    assert report.table()[1] == 'read: column "tas" in degC, as stated by the attribute units'
+
+
+def test_equal_values_at_the_edges_are_named(tmp_path: Any) -> None:
+    """Equal values at the end of a record that are left out: the report says why, which, and what to set."""
+    values = [*wave(), *[4.4] * 6]
+    checked = read_checked(write(tmp_path, table(days(66), values)))
+    (edge,) = checked.report.of_kind("missing_edge")
+    assert (edge.count, edge.when()) == (6, "2020-03-01 to 2020-03-06")
+    assert "equal values at the end, taken for a stuck sensor" in edge.text
+    assert "stuck_after" in edge.action
+    assert checked.report.samples == 60
+    assert read_record(write(tmp_path, table(days(66), values)), stuck_after="never").size == 66

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from soiltemp.climate.moments import interval_text, show_moment
+from soiltemp.climate.moments import counted, interval_text, show_moment
 from soiltemp.climate.quality import Finding
 from soiltemp.errors import DataFileError, message
 
@@ -78,7 +78,7 @@ def regular_series(
     doubled = np.unique(seconds[~first_of])
     unique = seconds[first_of]
     if unique.size < 2 or np.isfinite(values).sum() < 2:
-        found = f"{int(np.isfinite(values).sum())} values at {unique.size} different times"
+        found = f"{counted(int(np.isfinite(values).sum()), 'value')} at {counted(unique.size, 'different time')}"
         remedy = "check the column, and start and end"
         raise DataFileError(message(where, found, "at least two values at two times", remedy))
     interval = _interval(unique, where)

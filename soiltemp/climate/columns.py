@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
+from soiltemp.climate.column_names import check_name
 from soiltemp.climate.dates import has_date_shape
 from soiltemp.climate.moments import show_value
 from soiltemp.climate.table import TextTable, is_number
@@ -269,7 +270,7 @@ def find_temperature(
         The file.
     column : str or sequence of two str, optional
         Name of the column, or the names of minimum and maximum. Without it: the one column with a usual name
-        for air temperature, else the one column of numbers.
+        for air temperature, else the one column of numbers; neither may say in its name that it is something else.
     time_indices : tuple of int
         Columns already taken by the time.
 
@@ -281,7 +282,7 @@ def find_temperature(
     Raises
     ------
     DataFileError
-        None or several candidates, or the named one missing.
+        None or several candidates, one whose name tells another quantity, or the named one missing.
     InputError
         `column` is no name or pair of names.
     """
@@ -303,6 +304,7 @@ def find_temperature(
     numeric = [index for index in others if _is_numeric(table, index)]
     candidates = known or numeric
     if len(candidates) == 1:
+        check_name(table.header[candidates[0]], table.source, "column", _listed(table))
         return (candidates[0],)
     found = f"{len(candidates) or 'no'} columns that may be the temperature"
     remedy = f"set column to one of {_listed(table)}"
@@ -316,8 +318,8 @@ def _is_numeric(table: TextTable, index: int) -> bool:
     return sum(is_number(cell) for cell in cells) > 0.5 * len(cells)
 
 
-def settle_unit(statements: Sequence[tuple[str, str | None]], source: str, column: str) -> str:
-    """One unit from all that state it (argument, header, comments); none or two are an error."""
+def settle_unit(statements: Sequence[tuple[str, str | None]], source: str, column: str) -> tuple[str, str]:
+    """One unit from all that state it (argument, header, comments), and where; none or two are an error."""
     stated = [(place, unit) for place, unit in statements if unit is not None]
     where = f'{source}, column "{column}"'
     if not stated:
@@ -326,4 +328,4 @@ def settle_unit(statements: Sequence[tuple[str, str | None]], source: str, colum
     if len({unit for _, unit in stated}) > 1:
         found = " but ".join(f"{unit} by {place}" for place, unit in stated)
         raise UnitError(message(where, found, "one unit", "correct the one that is wrong"))
-    return str(stated[0][1])
+    return str(stated[0][1]), " and ".join(place for place, _ in stated)

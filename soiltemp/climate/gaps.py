@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 import numpy.typing as npt
 
-from soiltemp.climate.moments import interval_text, show_moment
+from soiltemp.climate.moments import counted, interval_text, show_moment
 from soiltemp.climate.quality import Finding
 from soiltemp.errors import DataFileError, message
 
@@ -20,7 +22,13 @@ Times = npt.NDArray[np.datetime64]
 
 
 def fill_gaps(
-    times: Times, celsius: Floats, interval: float, longest: float, where: str
+    times: Times,
+    celsius: Floats,
+    interval: float,
+    longest: float,
+    where: str,
+    *,
+    stuck: Sequence[Finding] = (),
 ) -> tuple[Floats, Flags, tuple[Finding, ...]]:
     """Interpolate linearly over gaps up to `longest`; refuse longer ones.
 
@@ -36,6 +44,8 @@ def fill_gaps(
         Longest gap that may be filled [s]; a gap lasts as many intervals as there are missing values.
     where : str
         Place, for messages.
+    stuck : sequence of Finding
+        Runs of equal values that were taken out as those of a stuck sensor, for messages.
 
     Returns
     -------
@@ -71,15 +81,18 @@ def fill_gaps(
     if long.size:
         shown = [f"{show_moment(times[first[k]])} to {show_moment(times[after[k] - 1])}" for k in long[:5]]
         more = f" and {long.size - 5} more" if long.size > 5 else ""
-        found = f"{long.size} gap{'s' if long.size > 1 else ''} without good values: {', '.join(shown)}{more}"
+        found = f"{counted(long.size, 'gap')} without good values: {', '.join(shown)}{more}"
         allowed = f"gaps up to {_length(longest)}, which are interpolated"
         remedy = "add values from a station nearby, choose start and end between gaps, or raise longest_gap"
-        raise DataFileError(message(where, found, allowed, remedy))
+        inside = _within(stuck, times[first[long]], times[after[long] - 1])
+        raise DataFileError(message(where, found + _told(inside), allowed, _remedy(inside) + remedy))
     share = float(missing.mean())
     if share > MOST_FILLED:
         found = f"{int(missing.sum())} of {missing.size} values missing ({100 * share:.0f} %), in short gaps"
         allowed = f"up to {100 * MOST_FILLED:g} % interpolated"
-        raise DataFileError(message(where, found, allowed, "use a more complete record, or choose start and end"))
+        remedy = "use a more complete record, or choose start and end"
+        inside = _within(stuck, times[first], times[after - 1])
+        raise DataFileError(message(where, found + _told(inside), allowed, _remedy(inside) + remedy))
     index = np.arange(celsius.size)
     filled = celsius.copy()
     filled[missing] = np.interp(index[missing], index[~missing], celsius[~missing])
@@ -98,4 +111,27 @@ def fill_gaps(
 
 
 def _length(seconds: float) -> str:
-    return interval_text(seconds).replace(" D", " days").replace(" h", " hours") if seconds else "none"
+    """A length of time in words."""
+    for size, noun in ((86400.0, "day"), (3600.0, "hour")):
+        if seconds >= size and seconds % size == 0.0:
+            return counted(int(seconds / size), noun)
+    return interval_text(seconds) if seconds else "none"
+
+
+def _within(stuck: Sequence[Finding], begins: Times, ends: Times) -> list[Finding]:
+    """Runs that lie in one of the gaps, whole or in part."""
+    edges = np.array([(run.first, run.last) for run in stuck], dtype="datetime64[s]").reshape(-1, 2)
+    return [run for run, (first, last) in zip(stuck, edges, strict=True) if np.any((begins <= last) & (ends >= first))]
+
+
+def _told(stuck: Sequence[Finding]) -> str:
+    """That, and which, equal values were taken out."""
+    if not stuck:
+        return ""
+    run = stuck[0]
+    more = f" (and {counted(len(stuck) - 1, 'more run')})" if len(stuck) > 1 else ""
+    return f"; of these, {run.count} equal values ({run.text}) from {run.when()}{more} were taken for a stuck sensor"
+
+
+def _remedy(stuck: Sequence[Finding]) -> str:
+    return 'if the equal values are true, set stuck_after to a longer time or "never"; else ' if stuck else ""

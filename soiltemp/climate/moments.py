@@ -14,6 +14,7 @@ from soiltemp.units import to_si
 __all__ = [
     "EARLIEST",
     "LATEST",
+    "counted",
     "interval_text",
     "read_duration",
     "read_moment",
@@ -168,6 +169,17 @@ def show_name(name: str, width: int = 60) -> str:
     """
     clean = "".join(letter if letter.isprintable() else "?" for letter in name[: width + 1])
     return f"{clean[:width]}..." if len(clean) > width else clean
+
+
+def counted(number: int, noun: str) -> str:
+    """Number and noun, the noun in the plural where the number asks for it.
+
+    Examples
+    --------
+    >>> counted(1, "value"), counted(2, "different time")
+    ('1 value', '2 different times')
+    """
+    return f"{number} {noun}" + ("" if number == 1 else "s")
 
 
 def interval_text(seconds: float) -> str:

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import os
+import re
 from typing import Any
 
 import numpy as np
 import xarray as xr
 
+from soiltemp.climate.column_names import check_name
 from soiltemp.climate.columns import read_unit
 from soiltemp.climate.dates import zone_name
 from soiltemp.climate.moments import EARLIEST, LATEST, show_name, show_value
@@ -73,7 +75,8 @@ def raw_from_netcdf(
     Raises
     ------
     DataFileError, UnitError, InputError
-        Damaged file, no or several such variables, no times, more than one place, no unit.
+        Damaged file, no or several such variables, one whose name tells another quantity, no times, more than one
+        place, no unit.
     """
     try:
         with xr.open_dataset(path, decode_times=xr.coders.CFDatetimeCoder(use_cftime=None)) as opened:
@@ -110,6 +113,7 @@ def raw_from_netcdf(
         values=(values,),
         lines=None,
         unit=wanted,
+        unit_place="the attribute units" if unit is None else "the argument unit",
         date_only=bool(np.all(times == times.astype("datetime64[D]"))),
         time_zone=zone or zone_name(0),
         meaning=meaning,
@@ -135,7 +139,12 @@ def _choose(dataset: xr.Dataset, column: Any, source: str) -> xr.DataArray:
         found = f"{len(candidates) or 'no'} variables that may be the temperature"
         allowed = 'one with standard_name "air_temperature" or a unit of temperature'
         raise DataFileError(message(source, found, allowed, f"set column to one of {listed}"))
-    return candidates[0]
+    chosen = candidates[0]
+    methods = str(chosen.attrs.get("cell_methods", ""))
+    extreme = [word for word in ("maximum", "minimum") if re.search(rf"\b{word}\b", methods)]
+    further = (str(chosen.attrs.get("standard_name", "")), *extreme)
+    check_name(str(chosen.name), source, "variable", listed, *further)
+    return chosen
 
 
 def _times_of(variable: xr.DataArray, time_column: Any, where: str) -> xr.DataArray:

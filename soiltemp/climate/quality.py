@@ -19,6 +19,7 @@ from soiltemp.errors import DataFileError, message
 __all__ = [
     "IMPOSSIBLE",
     "SENTINELS",
+    "TAKEN_OUT",
     "Finding",
     "QualityReport",
     "check_unit_plausible",
@@ -45,6 +46,9 @@ SENTINELS = (
 MOST_IMPOSSIBLE = 0.01
 """Largest share of impossible values taken for single faults; above it unit, column or sensor is wrong."""
 
+TAKEN_OUT = "treated as missing"
+"""What is done about values that cannot be used."""
+
 _RESOLUTION_COARSE = 0.4  # K; a record rounded to half or whole degrees repeats itself more often
 _KELVIN = (200.0, 350.0)  # no air temperature in degC or degF, every one in K
 _FEW = 3  # so many impossible values are single faults in any record
@@ -63,6 +67,13 @@ class Finding:
     text: str
     action: str
 
+    def when(self) -> str:
+        """Its time, or first and last; empty where it has none."""
+        if self.first is None:
+            return ""
+        later = "" if self.last is None or self.last == self.first else f" to {show_moment(self.last)}"
+        return f"{show_moment(self.first)}{later}"
+
 
 @dataclass(frozen=True, slots=True)
 class QualityReport:
@@ -75,13 +86,15 @@ class QualityReport:
     samples: int
     filled: int
     findings: tuple[Finding, ...]
+    reading: str = ""
+    """Which column was read, in which unit, and where the unit is stated."""
 
     def of_kind(self, kind: str) -> tuple[Finding, ...]:
         """Findings of one kind."""
         return tuple(finding for finding in self.findings if finding.kind == kind)
 
     def table(self) -> tuple[str, ...]:
-        """Lines of text: a summary, then one line a finding.
+        """Lines of text: a summary, the column that was read, then one line a finding.
 
         Returns
         -------
@@ -92,7 +105,7 @@ class QualityReport:
             f"{self.source}: {self.samples} values every {interval_text(self.interval)}, "
             f"{show_moment(self.first)} to {show_moment(self.last)}, {self.filled} interpolated"
         )
-        lines = [_ascii(head)]
+        lines = [_ascii(head), *([_ascii(self.reading)] if self.reading else [])]
         if not self.findings:
             lines.append("nothing to report")
         shown: dict[str, int] = {}
@@ -100,10 +113,7 @@ class QualityReport:
             shown[finding.kind] = shown.get(finding.kind, 0) + 1
             if shown[finding.kind] > _MOST_SHOWN:
                 continue
-            when = "" if finding.first is None else show_moment(finding.first)
-            if finding.last is not None and finding.last != finding.first:
-                when += f" to {show_moment(finding.last)}"
-            parts = (finding.kind.replace("_", " "), str(finding.count), when, finding.text, finding.action)
+            parts = (finding.kind.replace("_", " "), str(finding.count), finding.when(), finding.text, finding.action)
             lines.append(_ascii("{:<18} {:>6}  {:<36} {}; {}".format(*parts)))
         for kind, count in shown.items():
             if count > _MOST_SHOWN:
@@ -304,7 +314,7 @@ def mask_stuck(
         value = celsius[begin]
         near_zero = abs(value) <= _ZERO_CURTAIN
         text = f"{value:.4g} degC all the time"
-        action = "kept, as ground at 0 degC may stay there" if near_zero else "treated as missing"
+        action = "kept, as ground at 0 degC may stay there" if near_zero else TAKEN_OUT
         findings.append(Finding("stuck", times[begin], times[end], int(end - begin + 1), text, action))
         if not near_zero:
             result[begin : end + 1] = np.nan

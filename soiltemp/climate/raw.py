@@ -60,6 +60,8 @@ class RawRecord:
     """One array, or two: daily minimum and maximum."""
     lines: tuple[int, ...] | None
     unit: str
+    unit_place: str
+    """Where the unit is stated."""
     date_only: bool
     time_zone: str | None
     meaning: str | None
@@ -115,7 +117,7 @@ def raw_from_text(
         (f'the header "{name}"', header_unit(table.header[index])[1])
         for name, index in zip(names, indices, strict=True)
     ]
-    settled = settle_unit([*statements, ("the line below the header", row_unit)], source, label)
+    settled, place = settle_unit([*statements, ("the line below the header", row_unit)], source, label)
     time_names = [show_name(table.header[index]) for index in time_indices]
     entries = table.column(time_indices[0])
     if len(time_indices) > 1:
@@ -131,6 +133,7 @@ def raw_from_text(
         values=values,
         lines=table.lines,
         unit=settled,
+        unit_place=place,
         date_only=dates.date_only,
         time_zone=zone,
         meaning=_comment_meaning(table),

@@ -5,6 +5,7 @@ from __future__ import annotations
 import hashlib
 import os
 import pathlib
+import stat
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
@@ -16,11 +17,12 @@ import xarray as xr
 from soiltemp.climate.axis import regular_series
 from soiltemp.climate.columns import to_celsius
 from soiltemp.climate.gaps import fill_gaps
-from soiltemp.climate.moments import interval_text, show_moment, show_value
+from soiltemp.climate.moments import counted, interval_text, show_moment, show_value
 from soiltemp.climate.netcdf_record import is_netcdf, raw_from_netcdf
 from soiltemp.climate.options import STAMPS, ReadingKeywords, ReadingOptions
 from soiltemp.climate.quality import (
     IMPOSSIBLE,
+    TAKEN_OUT,
     Finding,
     QualityReport,
     check_unit_plausible,
@@ -38,6 +40,7 @@ if TYPE_CHECKING:
 __all__ = ["CheckedRecord", "read_checked", "read_record"]
 
 _MOST_SWAPPED = 0.01
+_MOST_BYTES = 1_000_000_000  # a year of minutes takes about 15 MB as text
 
 Floats = npt.NDArray[np.float64]
 
@@ -112,7 +115,8 @@ def read_checked(
         (CF).
     column : str or (str, str), optional
         Column or variable of the temperature; two names are the daily minimum and maximum, whose mean is
-        taken. Without it there must be one candidate only.
+        taken. Without it there must be one candidate only, whose name does not tell that it is something else
+        (maximum, dew point, soil...).
     unit : {"degC", "degF", "K"}, optional
         Unit, where neither the header (``t_air [degF]``, ``temp_C``), a comment (``# unit: degC``) nor the
         attributes state it. A unit is never assumed.
@@ -203,11 +207,21 @@ def _load(path: Any) -> tuple[bytes, str]:
     source = show_value(place.name or str(place), 80).strip('"')
     allowed = "a CSV or NetCDF file that can be read"
     try:
-        return place.read_bytes(), source
+        status = place.stat()
+        usable = stat.S_ISREG(status.st_mode) and status.st_size <= _MOST_BYTES
+        data = place.read_bytes() if usable or stat.S_ISDIR(status.st_mode) else None  # a folder raises
     except (OSError, ValueError) as error:
         reason = getattr(error, "strerror", None) or str(error)
         found = f"no readable file at {show_value(place, 200)} ({str(reason).lower()})"
         raise DataFileError(message(source, found, allowed, "check the path, and that it is a file")) from error
+    if data is not None:
+        return data, source
+    if stat.S_ISREG(status.st_mode):
+        found, remedy = f"a file of {status.st_size / 1e9:.4g} GB", "cut the record to the years and columns you need"
+        raise DataFileError(message(source, found, f"a record of up to {_MOST_BYTES / 1e9:g} GB", remedy))
+    found = f"a device, pipe or socket at {show_value(place, 200)}"
+    allowed = f"a regular CSV or NetCDF file of up to {_MOST_BYTES / 1e9:g} GB"
+    raise DataFileError(message(source, found, allowed, "give the path of such a file"))
 
 
 def _check(raw: RawRecord, options: ReadingOptions, sha256: str) -> CheckedRecord:
@@ -226,16 +240,19 @@ def _check(raw: RawRecord, options: ReadingOptions, sha256: str) -> CheckedRecor
         found = f'stamp_at "{options.stamp_at}" with point values'
         raise InputError(message("stamp_at", found, "means over an interval", 'leave it out, or state values="mean"'))
     stuck_free, stuck = mask_stuck(times, series.celsius, interval, options.stuck_after)
+    out = tuple(run for run in stuck if run.action == TAKEN_OUT)
     jumps = find_jumps(times, stuck_free, interval)
     low, high, trimmed = _window(times, stuck_free, interval, meaning, options, where)
     good = np.flatnonzero(np.isfinite(stuck_free))
     before, after = int(good[good <= low][-1]), int(good[good >= high][0])
     reach = slice(before, after + 1)  # a gap across start or end is filled from both its sides, then cut
-    filled, flags, gaps = fill_gaps(times[reach], stuck_free[reach], interval, options.longest_gap, where)
+    filled, flags, gaps = fill_gaps(times[reach], stuck_free[reach], interval, options.longest_gap, where, stuck=out)
     inside = slice(low - before, high - before + 1)
     times, filled, flags = times[low : high + 1], filled[inside], flags[inside]
     everything = (*notes, *assumed, *findings, *series.findings, *stuck, *trimmed, *jumps, *gaps)
-    report = QualityReport(raw.source, times[0], times[-1], interval, filled.size, int(flags.sum()), everything)
+    reading = f'read: column "{raw.column}" in {raw.unit}, as stated by {raw.unit_place}'
+    count = int(flags.sum())
+    report = QualityReport(raw.source, times[0], times[-1], interval, filled.size, count, everything, reading)
     return CheckedRecord(_label(raw, times, filled, flags, interval, meaning, report, sha256), report)
 
 
@@ -260,6 +277,7 @@ def _select(raw: RawRecord, options: ReadingOptions, where: str) -> RawRecord:
         values=tuple(array[keep] for array in raw.values),
         lines=lines,
         unit=raw.unit,
+        unit_place=raw.unit_place,
         date_only=raw.date_only,
         time_zone=raw.time_zone,
         meaning=raw.meaning,
@@ -348,19 +366,26 @@ def _window(
     """First and last index to use: from start to end, which the good values must cover."""
     good = np.flatnonzero(np.isfinite(celsius))
     if good.size < 2:
-        found = f"{good.size} values left after the checks"
-        raise DataFileError(message(where, found, "at least two", "look at the values and at stuck_after"))
+        found = f"{counted(good.size, 'value')} left after equal values were taken for a stuck sensor"
+        remedy = 'if the equal values are true, set stuck_after to a longer time or "never"; else use another record'
+        raise DataFileError(message(where, found, "at least two", remedy))
     low, high = int(good[0]), int(good[-1])
     findings: tuple[Finding, ...] = ()
-    if low > 0 or high < celsius.size - 1:
-        text = "no good value at the beginning or the end"
-        cut = low + celsius.size - 1 - high
-        findings = (Finding("missing_edge", times[0], times[-1], cut, text, "left out"),)
+    # the series begins and ends with numbers: what is missing there now was taken out as stuck
+    for place, edge in (("beginning", times[:low]), ("end", times[high + 1 :])):
+        if edge.size:
+            text = f"equal values at the {place}, taken for a stuck sensor"
+            action = 'left out; if they are true, set stuck_after to a longer time or "never"'
+            findings += (Finding("missing_edge", edge[0], edge[-1], edge.size, text, action),)
     reach = np.timedelta64(round(interval) if meaning == "mean" else 0, "s")
     first, last = times[low], times[high] + reach
     if (options.start is not None and options.start < first) or (options.end is not None and options.end > last):
         found = f"values from {show_moment(first)} to {show_moment(last)}"
         remedy = "choose start and end inside, or add the missing time"
+        if findings:
+            runs = " and ".join(edge.when() for edge in findings)
+            found += f"; equal values from {runs} were taken for a stuck sensor"
+            remedy = f'if the equal values are true, set stuck_after to a longer time or "never"; else {remedy}'
         raise DataFileError(message(where, found, f"a record that covers {_span(options)}", remedy))
     keep = np.zeros(times.size, dtype=bool)
     keep[low : high + 1] = True

@@ -18,12 +18,16 @@ from soiltemp.figures.reading import (
     reaches_base,
     surface_of,
     temperature_there,
+    thawed_depth,
 )
 from soiltemp.frost import days_below, heat_balance
 
 __all__ = ["Answer", "answers", "depth_rows", "trust", "winter_rows"]
 
 DAY = 86400e3  # ms
+
+SHORTEST_YEAR = 360.0
+"""Span of output times [day] that counts as a year: outputs some days apart can miss both its ends."""
 
 TABLE_DEPTHS = {
     "m": (0.0, 0.3, 0.6, 0.9, 1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 7.5, 10.0),
@@ -67,6 +71,7 @@ def answers(result: xr.Dataset, shown: Display, line: BuriedLine | None) -> tupl
     if frozen is not None:
         text = _greatest(result, shown, frozen, "frozen_ground_depth")
         found.append(Answer("maximum_frozen_ground_depth", "Greatest depth of frozen ground (ice)", text))
+    found += _greatest_thaw(result, shown, frost)
     found.append(Answer("frost_time", "Frost in the ground", _frost_time(times, frost)))
     surface = surface_of(result)
     if surface is not None:
@@ -85,15 +90,31 @@ def _greatest(result: xr.Dataset, shown: Display, curve: Floats, name: str) -> s
     at = int(np.argmax(curve))
     if curve[at] <= 0.0:
         return "none: nothing freezes in the time studied"
+    if reaches_base(result, float(curve[at])):
+        # the coarser problem ends at the same base: a difference of nought would pass for accuracy
+        return (
+            f"at least {shown.depth_text(curve[at])}: frozen to the base of the column; only a deeper column tells "
+            "how much more"
+        )
     error = result.get(f"{name}_error")
     doubt = "" if error is None else f"; numerical error {shown.error_text(float(error), 'length')}"
-    when = f"on {date(result['time'].values[at])}{doubt}"
-    if reaches_base(result, float(curve[at])):
-        return (
-            f"{shown.depth_text(curve[at])} {when}: frozen to the base of the column, so the true depth is greater; "
-            "make the column deeper"
-        )
-    return f"{shown.depth_text(curve[at])} {when}"
+    return f"{shown.depth_text(curve[at])} on {date(result['time'].values[at])}{doubt}"
+
+
+def _greatest_thaw(result: xr.Dataset, shown: Display, frost: Floats) -> list[Answer]:
+    """How deep ground thaws that is never without frost below, where the result reaches over a year."""
+    times = result["time"].values
+    if float(frost.min()) <= 0.0 or (times[-1] - times[0]) / np.timedelta64(1, "D") < SHORTEST_YEAR:
+        return []
+    thaw = thawed_depth(result)
+    if thaw is None:
+        return []
+    if np.isfinite(thaw).any():
+        at = int(np.nanargmax(thaw))
+        text = f"{shown.depth_text(float(thaw[at]))} on {date(times[at])}; the ground below stays frozen all year"
+    else:
+        text = "none: nothing thaws from above in the time studied"
+    return [Answer("maximum_thaw_depth", "Greatest thaw depth", text)]
 
 
 def _frost_time(times: Any, frost: Floats) -> str:
@@ -163,8 +184,15 @@ def winter_rows(result: xr.Dataset, shown: Display) -> list[tuple[str, ...]]:
             rows.append((f"{year}", "no frost", "", "", ""))
             continue
         at = inside[int(np.argmax(frost[inside]))]
+        least = "at least " if reaches_base(result, float(frost[at])) else ""
         rows.append(
-            (f"{year}", shown.depth_text(frost[at]), date(times[at]), date(times[frosty[0]]), date(times[frosty[-1]]))
+            (
+                f"{year}",
+                least + shown.depth_text(frost[at]),
+                date(times[at]),
+                date(times[frosty[0]]),
+                date(times[frosty[-1]]),
+            )
         )
     return rows
 
@@ -201,8 +229,11 @@ def trust(result: xr.Dataset, shown: Display) -> list[tuple[str, str, str]]:
     """What speaks for and against the numbers: what, how much, and what it means."""
     found: list[tuple[str, str, str]] = []
     coarse = "largest difference to the same problem on a grid and a step twice as coarse"
-    for name, text in (("frost_depth", "Frost depth"), ("frozen_ground_depth", "Depth of frozen ground")):
-        if f"{name}_error" in result:
+    names = ("frost_depth", "Frost depth"), ("frozen_ground_depth", "Depth of frozen ground")
+    for (name, text), curve in zip(names, frost_curves(result), strict=True):
+        if curve is not None and reaches_base(result, float(curve.max())):
+            found.append((f"{text}, numerical error", "not stated", "frozen to the base of the column"))
+        elif f"{name}_error" in result:
             value = shown.error_text(float(result[f"{name}_error"]), "length")
             found.append((f"{text}, numerical error", value, coarse))
     if "ground_temperature_error" in result:
@@ -225,14 +256,6 @@ def trust(result: xr.Dataset, shown: Display) -> list[tuple[str, str, str]]:
         and not str(name).startswith("input_")
         and value.dtype.kind in "fiu"
     ]
-    for name, text in (
-        ("initial_state", "Start of the run"),
-        ("longest_step", "Longest time step"),
-        ("tolerance", "Error allowed in one step"),
-        ("elements", "Elements of the column"),
-    ):
-        if name in result.attrs:
-            found.append((text, str(result.attrs[name]), ""))
     times = milliseconds(result["time"])
     if times.size > 1:
         days = float(times[1] - times[0]) / DAY

@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import importlib.metadata
 import os
+import tomllib
+from dataclasses import dataclass
 from functools import cache
 from typing import Any
 
@@ -23,6 +26,7 @@ from soiltemp.figures.page_text import STYLE, TEMPLATE
 from soiltemp.figures.reading import BuriedLine, layers_of, line_of
 from soiltemp.figures.temperatures import make_temperatures
 from soiltemp.figures.time_depth import make_time_depth
+from soiltemp.units import from_si
 from soiltemp.whole_file import file_place, write_whole
 
 __all__ = ["save_page"]
@@ -35,6 +39,31 @@ LONGEST_TITLE = 200
 FROST_CAPTION = (
     "Dashed: how deep the pore water is ice. Dash-dot: how far the ground has thawed from above while frozen ground "
     "lies below."
+)
+
+MATERIAL_UNITS = {
+    "si": {"conductivity": "W/(m K)", "heat_capacity": "MJ/(m^3 K)", "latent_heat": "MJ/m^3", "heat_flux": "W/m^2"},
+    "us": {
+        "conductivity": "BTU/(hour ft delta_degF)",
+        "heat_capacity": "BTU/(ft^3 delta_degF)",
+        "latent_heat": "BTU/ft^3",
+        "heat_flux": "BTU/(hour ft^2)",
+    },
+}
+
+RUN_FACTS = (
+    ("initial_state", "Start of the run"),
+    ("longest_step", "Longest time step"),
+    ("tolerance", "Error allowed in one step"),
+    ("elements", "Elements of the column"),
+)
+
+RECORD_FACTS = (
+    ("source_file", "file of the record"),
+    ("source_sha256", "SHA-256 of the file"),
+    ("time_zone", "time zone"),
+    ("interval", "interval"),
+    ("cell_methods", "meaning of a value"),
 )
 
 PICTURE_DEPTHS = {"m": (0.5, 1.0, 1.5, 2.0, 3.0), "ft": (1.0, 3.0, 5.0, 7.0, 10.0)}
@@ -94,6 +123,7 @@ def _page(result: xr.Dataset, shown: Display, units: str, title: str, line: Any,
     buried, strata = line_of(result, line), layers_of(result, layers)
     key_answers = answers(result, shown, buried)  # first, for it checks the result
     pictures = _pictures(result, shown, units, buried, strata)
+    materials = _materials(result, shown, units)
     times = result["time"].values
     texts = {
         "style": STYLE,
@@ -104,7 +134,13 @@ def _page(result: xr.Dataset, shown: Display, units: str, title: str, line: Any,
         "depths": depth_rows(result, shown),
         "trust": trust(result, shown),
         "closed_forms": "\n".join(closed_form_lines(result, units=units)),
-        "layers": [
+        "material_heads": _material_heads(shown, units),
+        "materials": materials,
+        "facts": _facts(result, units),
+        "quality_report": str(result.attrs.get("quality_report", "")),
+        "layers": []
+        if materials and layers is None
+        else [
             (layer.name, *map(shown.depth_text, (layer.top, layer.bottom, layer.bottom - layer.top)))
             for layer in strata
         ],
@@ -121,6 +157,127 @@ def _page(result: xr.Dataset, shown: Display, units: str, title: str, line: Any,
         template=_template(),
         template_variables=texts,
     )
+
+
+@dataclass(frozen=True)
+class _Material:
+    """A layer as solved: the cells of its row, and where its values come from."""
+
+    cells: tuple[str, ...]
+    source: str
+
+
+def _written(unit: str) -> str:
+    return (
+        unit.replace("delta_degF", "°F")
+        .replace("hour", "h")
+        .replace("^3", "³")
+        .replace("^2", "²")
+        .replace(" ", "\N{NO-BREAK SPACE}")
+    )
+
+
+def _material_heads(shown: Display, units: str) -> tuple[str, ...]:
+    named = {kind: _written(unit) for kind, unit in MATERIAL_UNITS[units].items()}
+    return (
+        "layer",
+        "from",
+        "thickness",
+        f"conductivity thawed [{named['conductivity']}]",
+        "frozen",
+        f"heat capacity thawed [{named['heat_capacity']}]",
+        "frozen",
+        f"latent heat [{named['latent_heat']}]",
+        f"freezes over [{shown.temperature_unit}]",
+    )
+
+
+def _materials(result: xr.Dataset, shown: Display, units: str) -> list[_Material]:
+    """Thawed and frozen values of each layer, read off the curves that were solved."""
+    curves = ("input_conductivity", "input_heat_capacity", "input_knot", "input_frozen_share")
+    if not {"input_layer_name", "input_layer_thickness", *curves} <= set(result.variables):
+        return []
+    sources = result["input_layer_source"].values if "input_layer_source" in result else None
+    rows: list[_Material] = []
+    for number, layer in enumerate(layers_of(result)):
+        k, c, knots, shares = (_pieces(result[name].values[number]) for name in curves)
+        latent = 0.0
+        if knots.size:
+            # the heat capacity of a piece, less what it would be by its mean share of ice, is latent heat
+            ice = 0.5 * (shares[:-1] + shares[1:])
+            latent = float(np.sum((c[1:-1] - c[-1] + ice * (c[-1] - c[0])) * np.diff(knots)))
+        values = ((k[-1], "conductivity"), (k[0], "conductivity"), (c[-1], "heat_capacity"), (c[0], "heat_capacity"))
+        cells = [_number(float(value), kind, units) for value, kind in values]
+        cells.append(_number(latent, "latent_heat", units))
+        ends = (
+            [f"{float(shown.temperature(knot)):.3g}".replace("-", "−") for knot in (knots[0], knots[-1])]
+            if (knots.size)
+            else []
+        )
+        name_and_place = (layer.name, shown.depth_text(layer.top), shown.depth_text(layer.bottom - layer.top))
+        source = str(sources[number]) if sources is not None and str(sources[number]) else "source not stated"
+        rows.append(_Material((*name_and_place, *cells, " to ".join(ends) or "nothing freezes"), source))
+    return rows
+
+
+def _pieces(row: Any) -> Any:
+    return row[np.isfinite(row)]
+
+
+def _number(value: float, kind: str, units: str) -> str:
+    shown = from_si(value, kind, MATERIAL_UNITS[units][kind])
+    return f"{shown:.0f}" if abs(shown) >= 1000.0 else f"{shown:.3g}"
+
+
+def _facts(result: xr.Dataset, units: str) -> list[tuple[str, str]]:
+    """Surface, record and run: what the result tells of them."""
+    found: list[tuple[str, str]] = []
+    cover = _cover(result)
+    if cover:
+        found.append(("Cover of the surface", cover))
+    if "n_factors" in result.attrs:
+        found.append(("n-factors", str(result.attrs["n_factors"])))
+    for name in ("input_air_temperature", "input_surface_temperature"):
+        if name not in result:
+            continue
+        what, labels = name.removeprefix("input_").replace("_", " ").capitalize(), result[name].attrs
+        found += [(f"{what}, {text}", str(labels[key])) for key, text in RECORD_FACTS if key in labels]
+        count = f"{result[name].size}"
+        if f"{name}_filled" in result:
+            count += f", {int(result[f'{name}_filled'].sum())} of them interpolated"
+        found.append((f"{what}, values used", count))
+    flux = result.get("base_heat_flux")
+    if flux is not None and flux.size and float(flux.max()) == float(flux.min()):
+        unit = _written(MATERIAL_UNITS[units]["heat_flux"])
+        # positive downward inside; a reader knows the heat of the earth as upward
+        amount = _number(abs(float(flux[0])), "heat_flux", units)
+        way = "none" if float(flux[0]) == 0.0 else f"{amount} {unit} {'upward' if float(flux[0]) < 0.0 else 'downward'}"
+        found.append(("Heat through the base", way))
+    found += [(text, str(result.attrs[name])) for name, text in RUN_FACTS if name in result.attrs]
+    if "software_version" in result.attrs:
+        found.append(("Solved by", f"soiltemp {result.attrs['software_version']}"))
+    version = _version()
+    if found and version:
+        found.append(("Page written by", f"soiltemp {version}"))
+    return found
+
+
+def _version() -> str:
+    try:
+        return importlib.metadata.version("soiltemp")
+    except importlib.metadata.PackageNotFoundError:
+        return ""
+
+
+def _cover(result: xr.Dataset) -> str:
+    """The cover that the site file names; the numbers do not depend on it, so that the result has no variable of it."""
+    if "input_site_file" not in result:
+        return ""
+    try:
+        surface = tomllib.loads(str(result["input_site_file"].item())).get("surface")
+    except tomllib.TOMLDecodeError:
+        return ""  # a text that no site was made of: it is shown below as it is
+    return str(surface.get("cover", "")) if isinstance(surface, dict) else ""
 
 
 @cache

@@ -10,10 +10,18 @@ STYLE = """
 body { margin: 0; color: var(--ink); background: #fff; font: 15px/1.5 Arial, "Liberation Sans", Helvetica, sans-serif; }
 main { width: 100%; max-width: 996px; margin: 0 auto; padding: 0 16px 48px; }
 header { border-bottom: 6px solid var(--soil); padding: 24px 0 12px; margin-bottom: 18px; }
+.layers tbody { break-inside: avoid; }
+.layers th { overflow-wrap: normal; }
+.layers th:first-child { width: 16%; }
+.layers .numbers td:not(:first-child) { overflow-wrap: normal; white-space: nowrap; }
+.layers .numbers td { border-bottom: 0; padding-bottom: 0; }
+.layers .source td { color: var(--quiet); padding-top: 0; }
 .trust td:first-child { width: 32%; }
 .trust td:nth-child(2) { width: 26%; }
 h1 { font-size: 26px; line-height: 1.25; margin: 0 0 4px; overflow-wrap: anywhere; }
 h2 { font-size: 19px; margin: 34px 0 10px; }
+h3 { font-size: 15px; margin: 20px 0 8px; }
+#inputs dd { font-weight: normal; }
 header p { margin: 0; color: var(--quiet); }
 .caution { background: var(--pale); border-left: 6px solid var(--soil); padding: 10px 14px; margin: 0 0 18px; }
 dl { display: grid; grid-template-columns: 270px 1fr; margin: 0; border-top: 1px solid var(--rule); }
@@ -43,6 +51,7 @@ summary { cursor: pointer; }
   body { font-size: 10.5pt; }
   main { display: block; max-width: none; padding: 0; }
   header { padding-top: 0; }
+  h3 { break-after: avoid; }
   h2 { break-after: avoid; margin-top: 20px; }
   figure, tr, dl > *, .caution, li { break-inside: avoid; }
   figure { margin-bottom: 14px; }
@@ -115,16 +124,43 @@ Object.defineProperty(window, "devicePixelRatio", { value: Math.max(2, window.de
 <p>The result holds one depth only: there is no map through time and depth.</p>
 {% endif %}
 </section>
+{% if materials or facts or layers %}
+<section class="wide" id="inputs">
+<h2>What it stands on</h2>
+{% if materials %}
+<div class="scroll"><table class="layers">
+<caption>Layers of the ground, as solved</caption>
+<thead><tr>{% for name in material_heads %}<th>{{ name }}</th>{% endfor %}</tr></thead>
+{% for row in materials %}
+<tbody>
+<tr class="numbers">{% for cell in row.cells %}<td>{{ cell }}</td>{% endfor %}</tr>
+<tr class="source"><td colspan="{{ material_heads | length }}">{{ row.source }}</td></tr>
+</tbody>
+{% endfor %}
+</table></div>
+{% endif %}
 {% if layers %}
-<section class="wide">
-<h2>Layers of the ground</h2>
 <div class="scroll"><table>
+<caption>Layers as drawn in the pictures</caption>
 <thead><tr><th>layer</th><th>from</th><th>to</th><th>thickness</th></tr></thead>
 <tbody>
 {% for row in layers %}
 <tr>{% for cell in row %}<td>{{ cell }}</td>{% endfor %}</tr>
 {% endfor %}
 </tbody></table></div>
+{% endif %}
+{% if facts %}
+<h3>Surface, record and run</h3>
+<dl>
+{% for name, text in facts %}
+<dt>{{ name }}</dt><dd>{{ text }}</dd>
+{% endfor %}
+</dl>
+{% endif %}
+{% if quality_report %}
+<h3>Quality report of the record</h3>
+<pre>{{ quality_report }}</pre>
+{% endif %}
 </section>
 {% endif %}
 <section class="wide">
