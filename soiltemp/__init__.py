@@ -3,7 +3,7 @@
 from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
-from soiltemp.climate import periodic_surface, read_record
+from soiltemp.climate.periodic import periodic_surface
 from soiltemp.frost import envelope, frost_depth
 from soiltemp.ground import Layer, Profile
 from soiltemp.materials import Material, Soil, library_materials, material
@@ -11,6 +11,7 @@ from soiltemp.study import solve
 
 if TYPE_CHECKING:
     from soiltemp import closed_form
+    from soiltemp.climate import read_record
     from soiltemp.netcdf import open_result, save
     from soiltemp.site import Site, read_site
     from soiltemp.site_run import run
@@ -39,6 +40,7 @@ __all__ = [
 _LATER = {
     "Site": "soiltemp.site",
     "open_result": "soiltemp.netcdf",
+    "read_record": "soiltemp.climate",
     "read_site": "soiltemp.site",
     "run": "soiltemp.site_run",
     "save": "soiltemp.netcdf",

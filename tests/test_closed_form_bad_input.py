@@ -36,9 +36,7 @@ PROFILE = SimpleNamespace(layers=(SimpleNamespace(thickness=10.0, material=MATER
 NO_MATERIAL = SimpleNamespace(layers=(*PROFILE.layers, SimpleNamespace(thickness=1.0)))
 NAN_MATERIAL = SimpleNamespace(
     layers=(
-        SimpleNamespace(
-            thickness=1.0, material=SimpleNamespace(conductivity_thawed=NAN, heat_capacity_thawed=2e6)
-        ),
+        SimpleNamespace(thickness=1.0, material=SimpleNamespace(conductivity_thawed=NAN, heat_capacity_thawed=2e6)),
     )
 )
 
@@ -243,9 +241,7 @@ CASES = {
         CHECK,
     ),
     "diffusivity per day, bare": (
-        lambda: kusuda_achenbach_temperature(
-            1.0, 0.0, mean=10.0, amplitude=15.0, coldest=0.0, diffusivity=0.05
-        ),
+        lambda: kusuda_achenbach_temperature(1.0, 0.0, mean=10.0, amplitude=15.0, coldest=0.0, diffusivity=0.05),
         InputError,
         "diffusivity: found 0.05 m^2/s;",
         CHECK,
@@ -369,9 +365,7 @@ def test_single_values_in_arrays_are_read_as_numbers():
     registry = pint.get_application_registry()
     expected = damping_depth(0.6e-6, YEAR)
     assert damping_depth(np.array(0.6e-6), np.float64(YEAR)) == expected
-    assert damping_depth(registry.Quantity(0.6, "mm^2/s"), registry.Quantity(365, "day")) == pytest.approx(
-        expected
-    )
+    assert damping_depth(registry.Quantity(0.6, "mm^2/s"), registry.Quantity(365, "day")) == pytest.approx(expected)
     assert damping_depth(xr.DataArray(0.6, attrs={"units": "mm^2/s"}), YEAR) == pytest.approx(expected)
     fahrenheit = xr.DataArray(14.0, attrs={"units": "degF"})
     assert step_change_depth(15.0, fahrenheit, 0.0, 0.15e-6, 90 * DAY) == pytest.approx(

@@ -200,17 +200,13 @@ CASES = {
         CHECK,
     ),
     "layered heat capacities missing": (
-        lambda: layered_modified_berggren_depth(
-            [1.0, 9.0], [2.0, 1.5], [2e6], [1e8, 1e8], 800 * DAY, **SEASON
-        ),
+        lambda: layered_modified_berggren_depth([1.0, 9.0], [2.0, 1.5], [2e6], [1e8, 1e8], 800 * DAY, **SEASON),
         InputError,
         "layers: found 1 heat capacities for 2 thicknesses;",
         "lists equally long.",
     ),
     "layered frost through": (
-        lambda: layered_modified_berggren_depth(
-            [0.1, 0.2], [2.0, 1.5], [2e6, 2e6], [1e8, 1e8], 800 * DAY, **SEASON
-        ),
+        lambda: layered_modified_berggren_depth([0.1, 0.2], [2.0, 1.5], [2e6, 2e6], [1e8, 1e8], 800 * DAY, **SEASON),
         InputError,
         "layers: found frost through all 0.3 m;",
         "last layer thicker, or infinite.",

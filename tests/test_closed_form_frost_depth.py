@@ -93,9 +93,7 @@ def test_partial_indices_of_the_regression():
     section = _si(SECTIONS["silt in three parts"][0])
     assert layered_stefan_depth(*section, 59.21 * F_DAY) / FOOT == pytest.approx(1.0, abs=1e-4)
     assert layered_stefan_depth(*section, (59.21 + 473.68) * F_DAY) / FOOT == pytest.approx(3.0, abs=1e-4)
-    assert layered_stefan_depth(*_si(SECTIONS["base"][0]), 46.96 * F_DAY) / FOOT == pytest.approx(
-        2.0, abs=2e-4
-    )
+    assert layered_stefan_depth(*_si(SECTIONS["base"][0]), 46.96 * F_DAY) / FOOT == pytest.approx(2.0, abs=2e-4)
 
 
 @pytest.mark.parametrize("split", [[5.0], [0.2, 4.8], [0.3, 0.3, 0.3, 4.0], [1.2, math.inf], [0.01] * 400])
@@ -168,11 +166,7 @@ def test_lambda_grid(alpha):
 @pytest.mark.parametrize("mu", [1e-4, 0.01, 0.3, 2.0, 10.0, 50.0])
 def test_lambda_against_the_relation_as_printed(alpha, mu):
     def relation(g):
-        return (
-            math.exp(-g * g) / math.erf(g)
-            - alpha * math.exp(-g * g) / math.erfc(g)
-            - math.sqrt(math.pi) * g / mu
-        )
+        return math.exp(-g * g) / math.erf(g) - alpha * math.exp(-g * g) / math.erfc(g) - math.sqrt(math.pi) * g / mu
 
     g = brentq(relation, 1e-9, 5.0, xtol=1e-16, rtol=1e-14)
     assert modified_berggren_lambda(alpha, mu) == pytest.approx(g * math.sqrt(2 / mu), rel=1e-9)
@@ -185,17 +179,13 @@ def test_lambda_limits():
     # whose next term is sqrt(2 mu / pi) = 8e-4 of the pull, here 0.08
     assert 1 - modified_berggren_lambda(0.0, 1e-6) == pytest.approx(1e-6 / 6, rel=1e-3)
     pull = 100.0 * math.sqrt(2e-6 / math.pi)
-    assert modified_berggren_lambda(100.0, 1e-6) == pytest.approx(
-        (math.sqrt(pull**2 + 4) - pull) / 2, rel=1e-4
-    )
+    assert modified_berggren_lambda(100.0, 1e-6) == pytest.approx((math.sqrt(pull**2 + 4) - pull) / 2, rel=1e-4)
     # overwhelming warmth: sqrt(pi) / 2 = alpha g
     assert modified_berggren_lambda(1e9, 0.5) == pytest.approx(math.sqrt(math.pi) / 2 / 1e9 * 2, rel=1e-6)
 
 
 def test_lambda_falls_with_both_arguments():
-    grid = np.array(
-        [[modified_berggren_lambda(a, m) for m in np.geomspace(1e-6, 50, 25)] for a in (0, 0.1, 1, 10)]
-    )
+    grid = np.array([[modified_berggren_lambda(a, m) for m in np.geomspace(1e-6, 50, 25)] for a in (0, 0.1, 1, 10)])
     assert np.all(np.diff(grid, axis=0) < 0)
     assert np.all(np.diff(grid, axis=1) < 0)
     assert np.all((grid > 0) & (grid <= 1))
@@ -247,9 +237,9 @@ def test_depth_is_that_of_the_steps_and_tends_to_stefan():
     assert modified_berggren_depth(800 * DAY, **winter, **ground) < 0.9 * stefan
     # ground at its freezing point that stores almost nothing: lambda = 1 - mu / 6, mu = 6.7 * 1e5 / 3.3e8
     still = {"conductivity": 1.5, "heat_capacity": 1e5, "latent_heat": 3.3e8}
-    assert modified_berggren_depth(
-        800 * DAY, season_length=120 * DAY, mean_temperature=0.0, **still
-    ) == pytest.approx(stefan_depth(800 * DAY, 1.5, 3.3e8), rel=4e-4)
+    assert modified_berggren_depth(800 * DAY, season_length=120 * DAY, mean_temperature=0.0, **still) == pytest.approx(
+        stefan_depth(800 * DAY, 1.5, 3.3e8), rel=4e-4
+    )
 
 
 def test_without_frost():
@@ -274,9 +264,7 @@ WINTER = {"season_length": 150 * DAY, "mean_temperature": 5.0}
 @pytest.mark.parametrize("split", [[9.0], [0.2, 8.8], [0.3, 0.3, 0.3, 8.0], [1.0, math.inf]])
 def test_splitting_a_layer_changes_nothing_with_stored_heat(split):
     n = len(split)
-    whole = modified_berggren_steps(
-        900 * DAY, **WINTER, conductivity=1.6, heat_capacity=2.3e6, latent_heat=90e6
-    )
+    whole = modified_berggren_steps(900 * DAY, **WINTER, conductivity=1.6, heat_capacity=2.3e6, latent_heat=90e6)
     parts = layered_modified_berggren_steps(split, [1.6] * n, [2.3e6] * n, [90e6] * n, 900 * DAY, **WINTER)
     for field in ("latent_heat", "heat_capacity", "thermal_ratio", "fusion_parameter", "stefan_depth"):
         assert getattr(parts, field) == pytest.approx(getattr(whole, field), rel=1e-12), field
@@ -324,13 +312,9 @@ def test_layered_by_the_hand_method_of_the_manual():
 @pytest.mark.parametrize(("mean", "capacity", "latent"), [(0.0, 1.2e5, 3.0e8), (40.0, 6e6, 4e6)])
 def test_layered_reaches_both_ends_of_lambda(mean, capacity, latent):
     winter = {"season_length": 150 * DAY, "mean_temperature": mean}
-    whole = modified_berggren_steps(
-        400 * DAY, **winter, conductivity=1.6, heat_capacity=capacity, latent_heat=latent
-    )
+    whole = modified_berggren_steps(400 * DAY, **winter, conductivity=1.6, heat_capacity=capacity, latent_heat=latent)
     assert whole.lambda_coefficient > 0.999 or whole.lambda_coefficient < 0.05
-    parts = layered_modified_berggren_depth(
-        [0.01, 30.0], [1.6] * 2, [capacity] * 2, [latent] * 2, 400 * DAY, **winter
-    )
+    parts = layered_modified_berggren_depth([0.01, 30.0], [1.6] * 2, [capacity] * 2, [latent] * 2, 400 * DAY, **winter)
     assert parts == pytest.approx(whole.depth, rel=1e-10)
 
 
@@ -362,9 +346,7 @@ def test_layered_depth_never_falls_as_winters_grow():
         [2.0e6, 1.9e6, 1.6e6, 2.5e6],
         [0.0, 36e6, 0.0, 110e6],
     )
-    depths = np.array(
-        [layered_modified_berggren_depth(*rubble, n * DAY, **WINTER) for n in range(1, 1000, 7)]
-    )
+    depths = np.array([layered_modified_berggren_depth(*rubble, n * DAY, **WINTER) for n in range(1, 1000, 7)])
     assert np.all(np.diff(depths) >= -1e-9)
     # for a span of winters frost ends in the dry rubble: the method has no depth there, its base is given
     assert not np.any((depths > 0.5 + 1e-6) & (depths < 1.0 - 1e-9))

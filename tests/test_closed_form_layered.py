@@ -154,9 +154,7 @@ def test_flux_leads_the_surface_by_an_eighth_of_a_period_in_deep_uniform_ground(
 def test_thick_ground_under_a_daily_wave_is_nought_and_not_nan():
     with np.errstate(all="raise", under="ignore"):
         z = np.array([0.0, 1.0, 100.0, 999.0, 1000.0])
-        ratio = layered_periodic_ratio(
-            [0.3, 2.0, 0.03, 1.5], [1.3e6, 2e6, 4e4, 3e6], [1, 500, 99, 400], DAY, z
-        )
+        ratio = layered_periodic_ratio([0.3, 2.0, 0.03, 1.5], [1.3e6, 2e6, 4e4, 3e6], [1, 500, 99, 400], DAY, z)
         flux = layered_periodic_flux_ratio([0.3], [1.3e6], [1000.0], DAY, z)
     assert ratio[0] == pytest.approx(1.0, rel=1e-14)
     assert np.all(np.isfinite(ratio))
@@ -204,9 +202,7 @@ def test_profile_gives_its_thawed_or_frozen_properties():
 
 
 def test_labels_survive():
-    depth = xr.DataArray(
-        [0.0, 30.0, 200.0], dims="depth", coords={"depth": [0, 30, 200]}, attrs={"units": "cm"}
-    )
+    depth = xr.DataArray([0.0, 30.0, 200.0], dims="depth", coords={"depth": [0, 30, 200]}, attrs={"units": "cm"})
     ratio = layered_periodic(_profile(FOUR), YEAR, depth)
     assert ratio.dims == ("depth",)
     assert ratio.attrs["units"] == "1"

@@ -35,9 +35,7 @@ PEAT = SILT | {
 }
 DRY_SAND = SILT | {"conductivity_frozen": 1.0, "conductivity_thawed": 1.3, "latent_heat": 4e6}
 SALTY = SILT | {"freezing_point": -1.5, "initial": 2.0}
-GROUNDS = pytest.mark.parametrize(
-    "ground", [SILT, PEAT, DRY_SAND, SALTY], ids=["silt", "peat", "dry sand", "salty"]
-)
+GROUNDS = pytest.mark.parametrize("ground", [SILT, PEAT, DRY_SAND, SALTY], ids=["silt", "peat", "dry sand", "salty"])
 
 
 @GROUNDS
@@ -78,9 +76,7 @@ def test_heat_equation_in_both_phases(ground, share):
     diffusivity = ground[f"conductivity_{phase}"] / ground[f"heat_capacity_{phase}"]
     low, here, high = neumann_temperature(z + dz * np.array([-1.0, 0.0, 1.0]), t, **ground)
     before, after = neumann_temperature(z, t + dt * np.array([-1.0, 1.0]), **ground)
-    assert (after - before) / (2 * dt) == pytest.approx(
-        diffusivity * (low - 2 * here + high) / dz**2, rel=2e-4
-    )
+    assert (after - before) / (2 * dt) == pytest.approx(diffusivity * (low - 2 * here + high) / dz**2, rel=2e-4)
 
 
 @GROUNDS
@@ -98,9 +94,7 @@ def test_heat_drawn_through_the_surface_is_what_the_ground_gave(ground):
     frozen = ground["heat_capacity_frozen"] * np.trapezoid(above, z)
     z = np.linspace(front, front + 30.0, 60001)
     below = ground["initial"] - neumann_temperature(z, t, **ground)
-    thawed = ground["heat_capacity_thawed"] * (
-        np.trapezoid(below, z) + (ground["initial"] - freezing) * front
-    )
+    thawed = ground["heat_capacity_thawed"] * (np.trapezoid(below, z) + (ground["initial"] - freezing) * front)
     assert drawn == pytest.approx(frozen + thawed + ground["latent_heat"] * front, rel=1e-5)
 
 
@@ -137,9 +131,7 @@ def test_without_latent_heat_and_with_equal_phases_it_is_a_step_change():
     t, a = 90 * DAY, 1.4 / 2.8e6
     assert neumann_front(t, **ground) == pytest.approx(step_change_depth(6.0, -9.0, 0.0, a, t), rel=1e-12)
     z = np.linspace(0, 6, 25)
-    assert neumann_temperature(z, t, **ground) == pytest.approx(
-        step_change_temperature(6.0, -9.0, z, a, t), abs=1e-11
-    )
+    assert neumann_temperature(z, t, **ground) == pytest.approx(step_change_temperature(6.0, -9.0, z, a, t), abs=1e-11)
 
 
 def test_equal_phases_give_the_lambda_of_modified_berggren():

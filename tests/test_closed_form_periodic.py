@@ -44,9 +44,7 @@ def test_damping_depth_of_oke_table_2_1(name):
 
 
 def test_damping_depth_of_a_year_is_root_365_of_that_of_a_day():
-    assert damping_depth(0.5e-6, YEAR) / damping_depth(0.5e-6, DAY) == pytest.approx(
-        math.sqrt(365), rel=1e-12
-    )
+    assert damping_depth(0.5e-6, YEAR) / damping_depth(0.5e-6, DAY) == pytest.approx(math.sqrt(365), rel=1e-12)
 
 
 # W. R. van Wijk and D. A. de Vries, in Physics of Plant Environment, North-Holland 1963: daily damping

@@ -20,16 +20,12 @@ def test_extremes_stand_on_their_dates() -> None:
     later."""
     surface = periodic_surface(4.0, 17.0, "01-20", "2019-07-01", 1)
     assert str(surface.time.values[0]) == "2019-07-01T00:00:00.000000000"
-    assert (
-        str(surface.time.values[-1]) == "2020-06-30T00:00:00.000000000"
-    )  # 365 d, though 2020 is a leap year
+    assert str(surface.time.values[-1]) == "2020-06-30T00:00:00.000000000"  # 365 d, though 2020 is a leap year
     assert surface.sizes["time"] == 365 * 24 + 1
     # The phase refers to 20 January 2019; 365 days later is 20 January 2020.
     assert str(surface.time.values[np.argmin(surface.values)])[:13] == "2020-01-20T00"
     assert float(surface.sel(time="2019-07-21T12:00")) == pytest.approx(21.0, abs=1e-12)
-    assert float(surface.sel(time="2019-10-20T18:00")) == pytest.approx(
-        4.0, abs=1e-12
-    )  # 273.75 d after the coldest
+    assert float(surface.sel(time="2019-10-20T18:00")) == pytest.approx(4.0, abs=1e-12)  # 273.75 d after the coldest
     assert float(surface.min()) == pytest.approx(-13.0, abs=1e-12)
 
 

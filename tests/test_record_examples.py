@@ -40,8 +40,7 @@ def test_wether_lane() -> None:
     assert checked.report.of_kind("duplicate_times")[0].count == 1
     assert abs(float(air.mean()) - 4.2) < 0.5
     winters = [
-        freezing_index(air.sel(time=slice(f"{year}-07-01", f"{year + 1}-06-30"))) / 86400
-        for year in range(2015, 2021)
+        freezing_index(air.sel(time=slice(f"{year}-07-01", f"{year + 1}-06-30"))) / 86400 for year in range(2015, 2021)
     ]
     assert int(np.argmax(winters)) == 3
     assert winters[3] > 1.15 * sorted(winters)[-2]
@@ -83,14 +82,9 @@ def test_recorded_temperatures(station: str, column: str) -> None:
         longest_gap="20 days",
         time_zone="local standard time",
     )
-    expected = {
-        row["lst_date"]: float(row[column]) for row in rows(path) if row[column] not in ("", "-9999.0")
-    }
+    expected = {row["lst_date"]: float(row[column]) for row in rows(path) if row[column] not in ("", "-9999.0")}
     measured = checked.temperature[checked.temperature.filled.values == 0]
-    got = {
-        str(time)[:10]: float(value)
-        for time, value in zip(measured.time.values, measured.values, strict=True)
-    }
+    got = {str(time)[:10]: float(value) for time, value in zip(measured.time.values, measured.values, strict=True)}
     assert got == expected
     assert checked.temperature.sizes["time"] == checked.report.samples <= 366
     assert checked.temperature.attrs["cell_methods"] == "time: mean"
@@ -102,9 +96,7 @@ def test_station_file_asks_for_column_and_unit() -> None:
     path = next(STATIONS.glob("94081_*.csv"))
     with pytest.raises(DataFileError, match=r"columns that may be the temperature.*set column to one of"):
         read_record(path)
-    with pytest.raises(
-        ValueError, match=r'column "t_daily_avg": found no unit of temperature.*give unit="degC"'
-    ):
+    with pytest.raises(ValueError, match=r'column "t_daily_avg": found no unit of temperature.*give unit="degC"'):
         read_record(path, column="t_daily_avg")
 
 
@@ -112,8 +104,6 @@ def test_station_file_asks_for_column_and_unit() -> None:
 def test_ground_at_zero_is_not_a_stuck_sensor() -> None:
     """Kenai: weeks at 0 degC at 20 cm depth are ground that freezes and thaws, and are kept."""
     path = next(STATIONS.glob("26563_*.csv"))
-    checked = read_checked(
-        path, column="soil_temp_20_daily", unit="degC", stuck_after="5 days", longest_gap="30 days"
-    )
+    checked = read_checked(path, column="soil_temp_20_daily", unit="degC", stuck_after="5 days", longest_gap="30 days")
     kept = [finding for finding in checked.report.of_kind("stuck") if finding.action.startswith("kept")]
     assert sum(finding.count for finding in kept) > 20

@@ -134,9 +134,7 @@ def test_any_pieces(text: str, unit: str | None) -> None:
 @given(st.data())
 def test_any_cells(data: st.DataObject) -> None:
     """A table of the right shape with cells of any kind."""
-    header = data.draw(
-        st.sampled_from(["date,t_air [degC]", "time;t [degF]", "date,hour,t_air [K]", "date\tx [degC]"])
-    )
+    header = data.draw(st.sampled_from(["date,t_air [degC]", "time;t [degF]", "date,hour,t_air [K]", "date\tx [degC]"]))
     mark = next(letter for letter in header if letter in ",;\t")
     width = header.count(mark) + 1
     rows = data.draw(st.lists(st.lists(PIECES, min_size=width, max_size=width), min_size=1, max_size=12))

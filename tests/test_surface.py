@@ -30,13 +30,9 @@ TABLE_4_1 = [
 ]
 
 
-def series(
-    values: Any, method: str | None = "time: mean", step: Literal["D", "h"] = "D", **attrs: Any
-) -> xr.DataArray:
+def series(values: Any, method: str | None = "time: mean", step: Literal["D", "h"] = "D", **attrs: Any) -> xr.DataArray:
     """Temperatures from 1 January 2020 on."""
-    times = (np.datetime64("2020-01-01") + np.arange(len(values)) * np.timedelta64(1, step)).astype(
-        "datetime64[ns]"
-    )
+    times = (np.datetime64("2020-01-01") + np.arange(len(values)) * np.timedelta64(1, step)).astype("datetime64[ns]")
     if method is not None:
         attrs["cell_methods"] = method
     return xr.DataArray(np.asarray(values), dims="time", coords={"time": times}, attrs=attrs)
@@ -126,9 +122,7 @@ def test_surface_from_air() -> None:
     st.floats(0, 2.3),
     st.sampled_from(["time: mean", "time: point"]),
 )
-def test_n_factor_is_the_ratio_of_the_indices(
-    values: list[float], below: float, above: float, method: str
-) -> None:
+def test_n_factor_is_the_ratio_of_the_indices(values: list[float], below: float, above: float, method: str) -> None:
     """Definition of the n-factor (TM 5-852-4): index of the surface over index of the air.
 
     For means exact to rounding. For points only where no line crosses 0 degC: the bend of the factor at 0
@@ -241,9 +235,7 @@ FAULTS: list[tuple[Any, type[SoilTempError], tuple[str, ...]]] = [
 
 @pytest.mark.parametrize(("surface", "error", "parts"), FAULTS)
 @pytest.mark.parametrize("function", [forcing_knots, freezing_index])
-def test_series_refused(
-    function: Any, surface: Any, error: type[SoilTempError], parts: tuple[str, ...]
-) -> None:
+def test_series_refused(function: Any, surface: Any, error: type[SoilTempError], parts: tuple[str, ...]) -> None:
     """A series that cannot be integrated is refused with one sentence, wherever it goes in."""
     with pytest.raises(SoilTempError) as caught:
         function(surface)
@@ -271,9 +263,7 @@ def test_indices_add_up_to_the_integral(values: list[float], method: str) -> Non
     total = sum(values) * DAY if method == "time: mean" else float(np.trapezoid(values)) * DAY
     assert freezing_index(air) >= 0.0
     assert thawing_index(air) - freezing_index(air) == pytest.approx(total, abs=1e-9 * DAY * len(values))
-    assert thawing_index((-air).assign_attrs(air.attrs)) == pytest.approx(
-        freezing_index(air), rel=1e-12, abs=1e-9
-    )
+    assert thawing_index((-air).assign_attrs(air.attrs)) == pytest.approx(freezing_index(air), rel=1e-12, abs=1e-9)
 
 
 def test_points_on_a_fine_grid_converge_to_the_same_index() -> None:
