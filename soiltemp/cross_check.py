@@ -15,7 +15,7 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
-from soiltemp.climate.moments import show_moment
+from soiltemp.climate.moments import show_moment, whole_years
 from soiltemp.closed_form import (
     ModifiedBerggrenSteps,
     amplitude_ratio,
@@ -149,7 +149,7 @@ def closed_forms_beside(profile: Profile, surface_temperature: xr.DataArray, res
 
 def _read_surface(surface_temperature: xr.DataArray) -> _Surface:
     seconds, celsius, start = forcing_knots(surface_temperature)
-    years = int((seconds[-1] + DAY) // YEAR)  # a year that lacks less than a day counts, as it does for the solver
+    years = whole_years(float(seconds[-1]))
     mean, wave = _fit(seconds, celsius, float(seconds[-1]), years) if years else (np.nan, complex(np.nan))
     return _Surface(seconds, celsius, start, years, mean, wave)
 

@@ -12,7 +12,7 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
-from soiltemp.climate.moments import read_duration
+from soiltemp.climate.moments import read_duration, whole_years
 from soiltemp.column import Column, build_column
 from soiltemp.constants import DAY, YEAR
 from soiltemp.errors import InputError, UnitError, message
@@ -21,7 +21,7 @@ from soiltemp.solver.march import Schedule, make_schedule
 from soiltemp.surface import forcing_knots
 from soiltemp.units import to_si
 
-__all__ = ["Problem", "coarsened", "is_cycle", "read_problem", "whole_years"]
+__all__ = ["Problem", "coarsened", "is_cycle", "read_problem"]
 
 Floats = NDArray[np.float64]
 
@@ -148,11 +148,6 @@ def read_problem(
 def is_cycle(initial: Any) -> bool:
     """Whether a study starts from the periodic steady state."""
     return isinstance(initial, str) and initial == "cycle"
-
-
-def whole_years(seconds: float) -> int:
-    """Whole years in a span of time; one that lacks less than a day counts."""
-    return int((seconds + DAY) // YEAR)
 
 
 def _frost_zone(profile: Profile, seconds: Floats, surface: Floats) -> float:

@@ -13,7 +13,7 @@ from typing import Any
 
 import numpy as np
 
-from soiltemp.climate.moments import read_moment, show_moment, show_name, show_value
+from soiltemp.climate.moments import read_moment, show_moment, show_name, show_value, whole_years
 from soiltemp.climate.options import ReadingOptions
 from soiltemp.climate.periodic import periodic_surface
 from soiltemp.climate.quality import IMPOSSIBLE
@@ -426,7 +426,7 @@ def _initial(table: Table, profile: Profile, length: float) -> str | float | tup
     place = table.at("initial")
     value = table.values.get("initial", "cycle")
     if value == "cycle":
-        if length < 364 * 86400.0:  # as the solver counts: a year less a day still holds a year of daily values
+        if whole_years(length) < 1:
             remedy = 'study a whole year, or give initial = "4 degC", or measured temperatures by depth'
             found = f'"cycle" for a study of {length / 86400.0:.4g} days'
             raise InputError(message(place, found, "a study of a year or more", remedy))

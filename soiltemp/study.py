@@ -10,13 +10,14 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
+from soiltemp.climate.moments import whole_years
 from soiltemp.column import Column
 from soiltemp.constants import DAY, YEAR
 from soiltemp.errors import InputError, message
 from soiltemp.glossary import attributes
 from soiltemp.ground import Profile
 from soiltemp.isotherm import deepest_frost, ice_depth, thaw_from_above
-from soiltemp.problem import Problem, coarsened, read_problem, whole_years
+from soiltemp.problem import Problem, coarsened, read_problem
 from soiltemp.solver.cycle import find_cycle
 from soiltemp.solver.march import March, march
 

@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 
+from soiltemp.constants import DAY, YEAR
 from soiltemp.errors import InputError, message
 from soiltemp.units import to_si
 
@@ -21,6 +22,7 @@ __all__ = [
     "show_moment",
     "show_name",
     "show_value",
+    "whole_years",
 ]
 
 EARLIEST = np.datetime64("1750-01-01", "s")
@@ -194,3 +196,14 @@ def interval_text(seconds: float) -> str:
         if seconds >= size and seconds % size == 0.0:
             return f"{seconds / size:g} {unit}"
     return f"{seconds:g} s"
+
+
+def whole_years(seconds: float) -> int:
+    """Whole years of 365 days in a span of time; one that lacks less than a day counts.
+
+    Examples
+    --------
+    >>> whole_years(364.5 * 86400.0), whole_years(2 * 365 * 86400.0)
+    (1, 2)
+    """
+    return int((seconds + DAY) // YEAR)
