@@ -50,10 +50,11 @@ WIDTH = 16
 # Rows that are used together stand together.
 UA, U, VA, V = (np.uintp(row * WIDTH) for row in range(4))  # the piece in force, see `stage.PIECE_FIELDS`
 F, P, K, Z, E, A, B = (np.uintp(row * WIDTH) for row in range(4, 11))  # factors, constant part, substitution
-T, LO, HI, WORST = (np.uintp(row * WIDTH) for row in range(11, 15))  # result; worst up to this node, see _make_outward
-R1, S, GAP, R2, S_NEW = (np.uintp(row * WIDTH) for row in range(15, 20))  # right sides, heat, error estimate so far
+LO, HI, WORST = (np.uintp(row * WIDTH) for row in range(11, 14))  # bounds; worst up to this node, see _make_outward
+R1, S, GAP, R2, S_NEW = (np.uintp(row * WIDTH) for row in range(14, 19))  # right sides, heat, error estimate so far
 PIECE_ROWS = (A, B, UA, U, VA, V, LO, HI)
-FIELDS = 20
+FIELDS = 19
+T = Z  # on the way back from the middle the substitution is replaced by the temperature
 ESCAPED = 1e140  # no error estimate is as large [K]; its square is finite
 NEXT = np.uintp(FIELDS * WIDTH)
 
