@@ -27,6 +27,7 @@ from soiltemp.solver.stage import (
     FACTORS,
     FINGERPRINT,
     GAMMA,
+    INVERSE_B1,
     KNOT_SLACK,
     MAX_HOLDS,
     OPTIONS,
@@ -50,12 +51,14 @@ WIDTH = 16
 # Rows that are used together stand together.
 UA, U, VA, V = (np.uintp(row * WIDTH) for row in range(4))  # the piece in force, see `stage.PIECE_FIELDS`
 F, P, K, Z, E, A, B = (np.uintp(row * WIDTH) for row in range(4, 11))  # factors, constant part, substitution
-LO, HI, WORST = (np.uintp(row * WIDTH) for row in range(11, 14))  # bounds; worst up to this node, see _make_outward
-R1, S, GAP, R2, S_NEW = (np.uintp(row * WIDTH) for row in range(14, 19))  # right sides, heat, error estimate so far
+LO, HI, WORST = (np.uintp(row * WIDTH) for row in range(11, 14))  # bounds; worst up to this node
+# Heat and right side, each in two rows that change places from step to step: of the state and its stage 1, and of the
+# step's end and stage 2.
+HEAT = (np.uintp(14 * WIDTH), np.uintp(15 * WIDTH))
+SIDE = (np.uintp(16 * WIDTH), np.uintp(17 * WIDTH))
 PIECE_ROWS = (A, B, UA, U, VA, V, LO, HI)
-FIELDS = 19
+FIELDS = 18
 T = Z  # on the way back from the middle the substitution is replaced by the temperature
-ESCAPED = 1e140  # no error estimate is as large [K]; its square is finite
 NEXT = np.uintp(FIELDS * WIDTH)
 
 
@@ -123,24 +126,22 @@ def _inward(x, n, right, boundary, width):
         x[q + Z] = x[q + P] * (x[q + right] + x[q + K]) + x[q + F] * x[q + Z - NEXT] + x[q + E] * x[q + Z + NEXT]
 
 
-def _make_outward(stage_number, step):
+def _make_outward(stage_number, step, turn):
     """Compile the way back from the middle: upward (`step` -1), downward (1), or the middle node itself (0).
 
-    Fills temperatures and stored heat of the stage; in stage 1 also the right side of stage 2 and the first
-    part of the error estimate. The row WORST carries the worst from node to node: in stage 1 how far a
-    node is outside its segment [K]; in stage 2 the error estimate [K], or, where a node is outside by more than the
-    slack, a number beyond `ESCAPED`.
+    Fills temperatures, and in stage 1 the right side of stage 2, in stage 2 the heat at the end of the step. The row
+    WORST carries from node to node how far any of them is outside its segment [K].
     """
     stage_1 = stage_number == 1
     middle = step == 0
     stride = 1 if middle else step
     back = np.uintp((-step * int(NEXT)) % 2**64)  # the record before: unsigned numbers wrap, so this goes either way
+    s, s_new, r2 = HEAT[turn], HEAT[1 - turn], SIDE[1 - turn]
 
     @njit(**OPTIONS)
-    def outward(x, first, last, watch, width):
+    def outward(x, first, last, width):
         for i in range(first, last, stride):
             o = uintp(i) * NEXT
-            weight = 1.0 if i >= watch else 0.0
             for j in range(width):
                 q = o + uintp(j)
                 if middle:
@@ -152,22 +153,58 @@ def _make_outward(stage_number, step):
                 over = value - x[q + HI]
                 worst = under if under > over else over
                 x[q + T] = value
-                if stage_1:
-                    right, old = x[q + R1], x[q + S]
-                    x[q + GAP] = E1 * (right - old) + E2 * (heat - right)
-                    x[q + R2] = B1 * heat - B2 * old
-                else:
-                    x[q + S_NEW] = heat
-                    worst = (worst - KNOT_SLACK) * (ESCAPED * ESCAPED)
-                    estimate = abs(x[q + GAP] + E3 * (heat - x[q + R2])) * x[q + P] * weight
-                    worst = estimate if estimate > worst else worst
                 x[q + WORST] = worst if worst > before else before
+                if stage_1:
+                    x[q + r2] = B1 * heat - B2 * x[q + s]
+                else:
+                    x[q + s_new] = heat
 
     return outward
 
 
-_up_1, _middle_1, _down_1 = _make_outward(1, -1), _make_outward(1, 0), _make_outward(1, 1)
-_up_2, _middle_2, _down_2 = _make_outward(2, -1), _make_outward(2, 0), _make_outward(2, 1)
+def _make_way_back(stage_number, turn):
+    """Compile the whole way back from the middle node of a stage."""
+    up, own, down = (_make_outward(stage_number, step, turn) for step in (-1, 0, 1))
+
+    @njit(**OPTIONS)
+    def way_back(x, n, m, width):
+        own(x, m, m + 1, width)
+        up(x, m - 1, 0, width)
+        down(x, m + 1, n, width)
+
+    return way_back
+
+
+_back_1, _back_2 = _make_way_back(1, 0), _make_way_back(2, 0)
+_back_1_turned, _back_2_turned = _make_way_back(1, 1), _make_way_back(2, 1)
+
+
+def _make_accept(turn):
+    """Compile the end of a step: the right side of the next one's stage 1, in place of that of stage 2.
+
+    On the way down the row WORST carries the largest error estimate [K]. The state at the start of the step is left as
+    it is, for lanes that have to do the step again.
+    """
+    s, s_new, r1, r2 = HEAT[turn], HEAT[1 - turn], SIDE[turn], SIDE[1 - turn]
+
+    @njit(**OPTIONS)
+    def accept(x, n, watch, width):
+        for i in range(1, n):
+            o = uintp(i) * NEXT
+            weight = 1.0 if i >= watch else 0.0
+            for j in range(width):
+                q = o + uintp(j)
+                heat, side, old, right = x[q + s_new], x[q + r2], x[q + s], x[q + r1]
+                gap = E1 * (right - old) + E2 * ((side + B2 * old) * INVERSE_B1 - right) + E3 * (heat - side)
+                error = abs(gap) * x[q + P] * weight
+                before = x[q + WORST - NEXT]
+                x[q + WORST] = error if error > before else before
+                x[q + r2] = heat + (heat - side)
+
+    return accept
+
+
+_accept, _accept_turned = _make_accept(0), _make_accept(1)
 
 
 @njit(**OPTIONS)
@@ -192,32 +229,32 @@ def _hold(x, tables, which, segment, i, j):
 
 
 @njit(**OPTIONS)
-def _settle(x, n, tables, table_of, segment, c, stage_number, boundary, watch, factored, lost, count, width):
+def _settle(x, n, tables, table_of, segment, c, stage_number, turn, boundary, factored, lost, count, width):
     """`stage.settle` in every lane; mark in `lost` the lanes that did not settle."""
     m = middle_of(n)
     top, base = 1, n - 1
-    limit = KNOT_SLACK if stage_number == 1 else ESCAPED
+    right = SIDE[turn] if stage_number == 1 else SIDE[1 - turn]
     for hold in range(MAX_HOLDS):
         if factored[0] != c:
             _factor(x, n, c, top, base, width)
             factored[0] = c
             count[FACTORS] += 1
+        _inward(x, n, right, boundary, width)
         if stage_number == 1:
-            _inward(x, n, R1, boundary, width)
-            _middle_1(x, m, m + 1, watch, width)
-            _up_1(x, m - 1, 0, watch, width)
-            _down_1(x, m + 1, n, watch, width)
+            if turn == 0:
+                _back_1(x, n, m, width)
+            else:
+                _back_1_turned(x, n, m, width)
+        elif turn == 0:
+            _back_2(x, n, m, width)
         else:
-            _inward(x, n, R2, boundary, width)
-            _middle_2(x, m, m + 1, watch, width)
-            _up_2(x, m - 1, 0, watch, width)
-            _down_2(x, m + 1, n, watch, width)
+            _back_2_turned(x, n, m, width)
         count[SOLVES] += 1
         moved = False
         top, base = m, m
         for j in range(width):
             lane = uintp(j)
-            if _worst(x, n, j) <= limit or lost[j]:
+            if _worst(x, n, j) <= KNOT_SLACK or lost[j]:
                 continue
             if hold == MAX_HOLDS - 1:
                 lost[j] = True
@@ -225,12 +262,12 @@ def _settle(x, n, tables, table_of, segment, c, stage_number, boundary, watch, f
             moved = True
             # WORST grows from the middle outward: no node beyond the first that is within the limit has left
             for i in range(1, m + 1):
-                if x[uintp(i) * NEXT + WORST + lane] <= limit:
+                if x[uintp(i) * NEXT + WORST + lane] <= KNOT_SLACK:
                     break
                 if _hold(x, tables, table_of[j], segment, i, j):
                     top, base = min(top, max(1, i - 1)), max(base, min(n - 1, i + 1))
             for i in range(n - 1, m, -1):
-                if x[uintp(i) * NEXT + WORST + lane] <= limit:
+                if x[uintp(i) * NEXT + WORST + lane] <= KNOT_SLACK:
                     break
                 if _hold(x, tables, table_of[j], segment, i, j):
                     top, base = min(top, max(1, i - 1)), max(base, min(n - 1, i + 1))
@@ -240,36 +277,25 @@ def _settle(x, n, tables, table_of, segment, c, stage_number, boundary, watch, f
 
 
 @njit(**OPTIONS)
-def _prepare(x, n, c, before, width):
+def _prepare(x, n, c, before, heat, side, width):
     """Right side of stage 1 for steps of another length; `before` is c of the steps so far."""
     for i in range(1, n):
         o = uintp(i) * NEXT
         for j in range(width):
             q = o + uintp(j)
-            flux = (x[q + R1] - x[q + S]) / before
-            x[q + R1] = x[q + S] + c * flux
+            flux = (x[q + side] - x[q + heat]) / before
+            x[q + side] = x[q + heat] + c * flux
 
 
 @njit(**OPTIONS)
-def _accept(x, n, width):
-    """Take the results of stage 2 as the new state in all lanes, with the right side of the next stage 1."""
-    for i in range(1, n):
-        o = uintp(i) * NEXT
-        for j in range(width):
-            q = o + uintp(j)
-            heat = x[q + S_NEW]
-            x[q + S] = heat
-            x[q + R1] = heat + (heat - x[q + R2])
-
-
-@njit(**OPTIONS)
-def _put_lane(x, j, piece, segment, lane_segment, t, s, flux, c):
+def _put_lane(x, j, turn, piece, segment, lane_segment, t, s, flux, c):
     """Write one column into lane `j`: pieces and state, ready for a stage 1."""
+    heat, side = HEAT[turn], SIDE[turn]
     for i in range(1, t.size):
         q = uintp(i) * NEXT + uintp(j)
         for field in range(8):
             x[q + PIECE_ROWS[field]] = piece[field, i]
-        x[q + T], x[q + S], x[q + R1] = t[i], s[i], s[i] + c * flux[i]
+        x[q + T], x[q + heat], x[q + side] = t[i], s[i], s[i] + c * flux[i]
         segment[i, j] = lane_segment[i]
 
 
@@ -310,7 +336,7 @@ def _march_block(
         np.zeros(n, dtype=np.int64),
         np.zeros(1),
     )
-    t, flux, kept = np.zeros(n), np.zeros((WIDTH, n)), np.zeros((WIDTH, n))
+    t, s, flux = np.zeros(n), np.zeros(n), np.zeros(n)
     heat, begin, change, base = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
     phi_1, phi_2, b_1, b_2 = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
     q_0, q_1, q_2 = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
@@ -319,6 +345,8 @@ def _march_block(
     tops = np.zeros((WIDTH, tables.shape[2], 3))
     bottom = np.zeros((1, 3))
     bottom[0, 1], bottom[0, 2] = 1.0, np.inf  # the base value is a heat flux
+    end = uintp(n - 1) * NEXT
+    turn = 0
     prepared = C_STAGE * dt[0] / parts[0]
     for j in range(WIDTH):
         column = first + min(j, lanes - 1)  # spare lanes repeat the last column and are not looked at
@@ -334,10 +362,10 @@ def _march_block(
         t[0] = surfaces[force_of[j], 0]
         place(table, piece, lane_segment, t)
         for i in range(1, n):
-            kept[j, i] = piece[stage.A, i] + piece[stage.B, i] * t[i]
+            s[i] = piece[stage.A, i] + piece[stage.B, i] * t[i]
         phi_2[j] = potential(tops[j], t[0])
-        flux_difference(piece, phi_2[j], t, flux[j])
-        _put_lane(x, j, piece, segment, lane_segment, t, kept[j], flux[j], prepared)
+        flux_difference(piece, phi_2[j], t, flux)
+        _put_lane(x, j, 0, piece, segment, lane_segment, t, s, flux, prepared)
         q_2[j] = _flux_in(x, j, phi_2[j])
         if row[0] >= 0 and j < lanes:
             out_temperature[column, row[0], :] = t
@@ -357,38 +385,35 @@ def _march_block(
                 b_2[j] = c * phi_2[j]
                 lost[j] = dead[j] or j >= lanes
             if prepared != c:
-                _prepare(x, n, c, prepared, width)
+                _prepare(x, n, c, prepared, HEAT[turn], SIDE[turn], width)
                 prepared = c
-            _settle(x, n, tables, table_of, segment, c, 1, b_1, watch, factored, lost, count[first], width)
+            _settle(x, n, tables, table_of, segment, c, 1, turn, b_1, factored, lost, count[first], width)
             for j in range(WIDTH):
                 q_1[j] = _flux_in(x, j, phi_1[j])
-            _settle(x, n, tables, table_of, segment, c, 2, b_2, watch, factored, lost, count[first], width)
-            any_lost = False
+            _settle(x, n, tables, table_of, segment, c, 2, turn, b_2, factored, lost, count[first], width)
+            if turn == 0:
+                _accept(x, n, watch, width)
+            else:
+                _accept_turned(x, n, watch, width)
+            old_heat, old_side = HEAT[turn], SIDE[turn]
+            turn = 1 - turn
             for j in range(lanes):
                 if dead[j]:
                     continue
-                if not lost[j] and _worst(x, n, j) <= tolerance:
+                if not lost[j] and x[end + WORST + uintp(j)] <= tolerance:
                     q_2[j] = _flux_in(x, j, phi_2[j])
                     heat[j] += h * (W_FLUX * q_0[j] + W_FLUX * q_1[j] + C_STAGE * q_2[j])
                     count[first + j, STEPS] += 1
                     continue
-                lost[j] = True
-                any_lost = True
-                for i in range(1, n):  # the state is about to be overwritten
+                for i in range(1, n):
                     q = uintp(i) * NEXT + uintp(j)
-                    kept[j, i] = x[q + S]
-                    flux[j, i] = (x[q + R1] - x[q + S]) / c
-            _accept(x, n, width)
-            if not any_lost:
-                continue
-            for j in range(lanes):
-                if not lost[j] or dead[j]:
-                    continue
+                    s[i] = x[q + old_heat]
+                    flux[i] = (x[q + old_side] - x[q + old_heat]) / c
                 code, gained, _ = careful(
                     tables[table_of[j]], tops[j], bottom, piece, lane_segment, h, begin[j], begin[j] + change[j],
-                    base[j], base[j], watch, tolerance, t, kept[j], flux[j], work, alone, count[first + j],
+                    base[j], base[j], watch, tolerance, t, s, flux, work, alone, count[first + j],
                 )  # fmt: skip
-                _put_lane(x, j, piece, segment, lane_segment, t, kept[j], flux[j], c)
+                _put_lane(x, j, turn, piece, segment, lane_segment, t, s, flux, c)
                 factored[0] = 0.0
                 heat[j] += gained
                 q_2[j] = _flux_in(x, j, phi_2[j])

@@ -170,7 +170,7 @@ def careful(
             good = _stage(table, piece, segment, c, r2, c * phi_2, psi_2, t1, work, t, s2, factored, count)
         if good:
             for i in range(watch, n):
-                error = max(error, estimate(i, work[0], s, r1, s1, r2, s2))
+                error = max(error, estimate(i, work[0], s, r1, r2, s2))
         if not good or (error > tolerance and level < ACCURACY_HALVINGS):
             if level == MAX_HALVINGS:
                 return NOT_CONVERGED, heat_in, heat_out

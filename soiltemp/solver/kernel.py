@@ -134,7 +134,7 @@ def _make(fingerprint):
                     for i in range(1, n):
                         r2[i] = B1 * s1[i] - B2 * s[i]
                     good = settle(table, piece, segment, c, r2, c * phi_2, psi_2, work, t, s2, factored, count)
-                if good and misses(tolerance, watch, work[0], s, r1, s1, r2, s2) == 0:
+                if good and misses(tolerance, watch, work[0], s, r1, r2, s2) == 0:
                     q_2 = phi_2 - (piece[UA, 1] + piece[U, 1] * t[1])
                     o_2 = piece[VA, last] + piece[V, last] * t[last] - psi_2
                     heat_in += h * (W_FLUX * q_0 + W_FLUX * q_1 + C_STAGE * q_2)

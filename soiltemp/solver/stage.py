@@ -74,6 +74,7 @@ GAMMA = 2.0 - math.sqrt(2.0)
 C_STAGE = 1.0 - math.sqrt(2.0) / 2.0
 B1 = (math.sqrt(2.0) + 1.0) / 2.0
 B2 = (math.sqrt(2.0) - 1.0) / 2.0
+INVERSE_B1 = 1.0 / B1
 W_FLUX = math.sqrt(2.0) / 4.0
 # Third-order embedded weights less our own (Hosea & Shampine 1996, eq. 26), over C_STAGE because F comes as cF.
 E1 = (1.0 - 4.0 * W_FLUX) / 3.0 / C_STAGE
@@ -278,17 +279,20 @@ def settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, c
 
 
 @njit(**OPTIONS)
-def estimate(i, p, s, r1, s1, r2, s2):
-    """Embedded error estimate of a step at node `i` [K]; the pivot turns heat into temperature."""
-    return abs(E1 * (r1[i] - s[i]) + E2 * (s1[i] - r1[i]) + E3 * (s2[i] - r2[i])) * p[i]
+def estimate(i, p, s, r1, r2, s2):
+    """Embedded error estimate of a step at node `i` [K]; the pivot turns heat into temperature.
+
+    The heat of stage 1 is read back from the right side of stage 2, so that it need not be kept.
+    """
+    return abs(E1 * (r1[i] - s[i]) + E2 * ((r2[i] + B2 * s[i]) * INVERSE_B1 - r1[i]) + E3 * (s2[i] - r2[i])) * p[i]
 
 
 @njit(**OPTIONS)
-def misses(limit, watch, p, s, r1, s1, r2, s2):
+def misses(limit, watch, p, s, r1, r2, s2):
     """How many nodes from `watch` down have an error estimate beyond `limit`."""
     count = 0
     for i in range(1, s.size):  # from a fixed start and without a branch, so that the loop vectorises
-        error = abs(E1 * (r1[i] - s[i]) + E2 * (s1[i] - r1[i]) + E3 * (s2[i] - r2[i])) * p[i]
+        error = abs(E1 * (r1[i] - s[i]) + E2 * ((r2[i] + B2 * s[i]) * INVERSE_B1 - r1[i]) + E3 * (s2[i] - r2[i])) * p[i]
         count += int(error > limit) * int(i >= watch)
     return count
 
