@@ -169,8 +169,8 @@ def _make_way_back(stage_number, turn):
     @njit(**OPTIONS)
     def way_back(x, n, m, width):
         own(x, m, m + 1, width)
+        down(x, m + 1, n, width)  # first, as the way in ended below the middle: what was touched last is still at hand
         up(x, m - 1, 0, width)
-        down(x, m + 1, n, width)
 
     return way_back
 
