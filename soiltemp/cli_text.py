@@ -17,6 +17,7 @@ from soiltemp.cross_check import closed_form_lines
 from soiltemp.frost import days_below, extremes, heat_balance
 from soiltemp.problem import DEFAULT_MAX_STEP, DEFAULT_TOLERANCE
 from soiltemp.site import Periodic, Site
+from soiltemp.surface import PUBLISHED_FREEZING
 from soiltemp.units import from_si
 
 __all__ = ["summary", "understood"]
@@ -104,6 +105,11 @@ def understood(site: Site, climate: xr.DataArray, surface: xr.DataArray, system:
     else:
         lines += _wrapped(f"n-factors: freezing {factors.freezing:g}, thawing {factors.thawing:g} ({factors.source})")
         lines.append(f"  {_indices(surface, units)}")
+        if not PUBLISHED_FREEZING[0] <= factors.freezing <= PUBLISHED_FREEZING[1]:
+            lines += _wrapped(
+                f"Note: published n-factors of freezing lie between {PUBLISHED_FREEZING[0]:g} and "
+                f"{PUBLISHED_FREEZING[1]:g}; {factors.freezing:g} decides the depth of frost, so say why."
+            )
         if np.diff(temperature_series(climate).seconds).max() < DAY:
             lines += _wrapped(
                 "The factors act on every value: hours below freezing on mild days count as freezing, while published "

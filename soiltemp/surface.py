@@ -24,6 +24,7 @@ from soiltemp.units import to_si
 
 __all__ = [
     "FREEZING_RANGE",
+    "PUBLISHED_FREEZING",
     "THAWING_RANGE",
     "NFactorEntry",
     "NFactors",
@@ -35,6 +36,9 @@ __all__ = [
 
 FREEZING_RANGE = (0.0, 1.5)
 """n-factors of freezing that are accepted [1]; published ones reach from 0.25 to 1.0."""
+
+PUBLISHED_FREEZING = (0.25, 1.0)
+"""n-factors of freezing that tables give [1]: 0.25 to 1.0 (Lunardini 1978, value from memory)."""
 
 THAWING_RANGE = (0.0, 3.0)
 """n-factors of thawing that are accepted [1]; published ones reach from 0.37 to 2.3."""

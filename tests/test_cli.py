@@ -581,3 +581,11 @@ def test_version(capsys: pytest.CaptureFixture[str]) -> None:
     with pytest.raises(SystemExit, match="0"):  # as --help ends
         main(["--version"])
     assert said(capsys)[0].startswith("soiltemp")
+
+
+def test_check_notes_an_unusual_n_factor(site_file: pathlib.Path, capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["check", str(site_file)]) == 0
+    assert "published n-factors of freezing" not in said(capsys)[0]
+    site_file.write_text(TEXT.replace("freezing_n_factor = 0.5", "freezing_n_factor = 0.1"))
+    assert main(["check", str(site_file)]) == 0
+    assert "published n-factors of freezing lie between 0.25 and 1" in " ".join(said(capsys)[0].split())
