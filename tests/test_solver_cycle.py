@@ -166,3 +166,15 @@ def test_cycle_of_several_years_is_that_of_their_average():
     # the grids differ with the colder year: linear reading between nodes
     np.testing.assert_allclose(deep_1, deep_2, rtol=0, atol=0.03)
     assert "average year of the 2 whole years" in first.attrs["initial_state"]
+
+
+@pytest.mark.parametrize(("ratio", "latent", "mean"), [(1.25, 133e6, 4.0), (1.25, 133e6, 3.0), (1.67, 50e6, 2.0)])
+def test_sharp_freezing_settles(ratio, latent, mean):
+    """A freezing range of 1e-4 K, the least allowed, in 10 m of ground: moves alone swing to and fro in the first two,
+    which plain years settle. Twenty more years change nothing beyond 0.01 K."""
+    sharp = Material("sharp", 2.0, 2.0 * ratio, 2.8e6, 2.0e6, latent, freezing_range=1e-4)
+    column = build_column(uniform(sharp, 10.0), frost_zone=3.0)
+    schedule = year_of(mean, 20.0, 12 * 3600.0)
+    cycle = find_cycle(column.table, schedule, base_flux=0.0, watch=1, tolerance=0.2)
+    later = years_after(column, schedule, cycle.temperature, 0.0, 20)
+    np.testing.assert_allclose(later, cycle.temperature, rtol=0, atol=0.01)

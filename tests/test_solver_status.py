@@ -113,3 +113,19 @@ def test_many_thin_layers():
     profile = Profile([Layer(board if n % 2 else silt, 0.001) for n in range(200)])
     result = solve(profile, constant(-5.0, 20), initial=5.0, numerical_error="left out")
     assert float(result.ground_temperature.isel(time=-1, depth=-1)) < 4.0
+
+
+def test_no_place_for_compiled_code(monkeypatch):
+    """Where neither the package nor the user's folder may be written to, numba refuses to cache: compile without."""
+    asked = []
+
+    def refusing(**options):
+        asked.append(options)
+        if options.get("cache"):
+            raise RuntimeError("cannot cache function 'door': no locator available for file 'x.py'")
+        return lambda function: function
+
+    monkeypatch.setattr(stage, "njit", refusing)
+    assert stage.door(parallel=True)(len) is len
+    assert [options.get("cache", False) for options in asked] == [True, False]
+    assert all(options["parallel"] for options in asked)

@@ -37,6 +37,12 @@ MOST_PERIODS = 60
 LEAST_SHARE = 1.0 / 16.0
 """Least share of a move that is made."""
 
+REMAINDER = 0.005
+"""Largest sum of the changes still to come, by the last two years, when a cycle counts as settled [K]."""
+
+STILL = 1e-5
+"""Change in a year that is nothing, whatever the year before did [K]."""
+
 PATIENCE = 10
 """Periods after which a move that does not help is followed by plain years."""
 
@@ -144,8 +150,9 @@ def find_cycle(
     state = _steady(table, _mean_potential(table, schedule), base_flux)
     largest = np.inf
     worst = 0
-    share, moved, rest = 1.0, False, 0
+    share, moved, rest, years = 1.0, False, 0, 0
     for period in range(1, MOST_PERIODS + 1):
+        years += 1
         run = march(table, schedule, state, base_flux=base_flux, watch=watch, tolerance=tolerance)
         gain = _stored(table, run.end) - _stored(table, state)
         move = _move(table, run.temperature.mean(axis=0), gain, schedule.duration)
@@ -162,9 +169,15 @@ def find_cycle(
         rest = max(rest - 1, 0)
         state = run.end + share * move if moved else run.end
         if largest <= SETTLED:
-            # one plain year more: at the edge of ground frozen all year the last move may itself be a step too far
-            run = march(table, schedule, state, base_flux=base_flux, watch=watch, tolerance=tolerance)
-            return Cycle(run.end, period + 1, largest)
+            # Two plain years more. The last move may itself have been a step too far, and where latent heat bends the
+            # way the changes from year to year tell what is left better than the move does: a geometric series.
+            first = march(table, schedule, state, base_flux=base_flux, watch=watch, tolerance=tolerance).end
+            second = march(table, schedule, first, base_flux=base_flux, watch=watch, tolerance=tolerance).end
+            years += 2
+            change, next_change = float(np.abs(first - state).max()), float(np.abs(second - first).max())
+            state, moved, rest = second, False, RESTING
+            if next_change**2 <= REMAINDER * (change - next_change) or next_change <= STILL:
+                return Cycle(state, years, largest)
         if progress is not None:
             progress(min(0.95, period / MOST_PERIODS + 0.1))
     place = f"node {worst}" if depths is None else f"{depths[worst]:.2f} m"
