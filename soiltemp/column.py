@@ -7,6 +7,7 @@ its thickness, which is exact in steady state for any conductivity.
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -135,12 +136,17 @@ class Column:
     def heat_content(self, temperature: Floats) -> Floats:
         """Heat stored above 0 degC, latent heat included [J m-2], summed over the last axis (node)."""
         total = np.zeros(temperature.shape[:-1])
+        for curves, nodes, volume in self._layers():
+            total += curves.enthalpy(temperature[..., nodes]) @ volume
+        return total
+
+    def _layers(self) -> Iterator[tuple[Curves, slice, Floats]]:
+        """Curves of each layer, its nodes, and the part of each node's volume that lies in it [m]."""
         for index, curves in enumerate(self.curves):
             elements = np.flatnonzero(self.layer == index)
             half = 0.5 * self.thickness[elements]
-            total += curves.enthalpy(temperature[..., elements]) @ half
-            total += curves.enthalpy(temperature[..., elements + 1]) @ half
-        return total
+            nodes = slice(int(elements[0]), int(elements[-1]) + 2)
+            yield curves, nodes, np.append(half, 0.0) + np.append(0.0, half)
 
     def frozen_share(self, temperature: Floats) -> Floats:
         """Share of each node's volume that is frozen, 0 to 1, shape of `temperature`.
@@ -148,16 +154,13 @@ class Column:
         A material without water counts as frozen below 0 degC.
         """
         share = np.zeros(temperature.shape)
-        volume = np.zeros(self.depths.size)
-        for index, curves in enumerate(self.curves):
-            elements = np.flatnonzero(self.layer == index)
-            half = 0.5 * self.thickness[elements]
-            for nodes in (elements, elements + 1):
-                local = temperature[..., nodes]
-                frozen = curves.frozen(local) if curves.knots else (local < 0.0).astype(np.float64)
-                share[..., nodes] += frozen * half
-                volume[nodes] += half
-        return np.asarray(np.clip(share / volume, 0.0, 1.0))
+        whole = np.zeros(self.depths.size)
+        for curves, nodes, volume in self._layers():
+            local = temperature[..., nodes]
+            frozen = curves.frozen(local) if curves.knots else (local < 0.0).astype(np.float64)
+            share[..., nodes] += frozen * volume
+            whole[nodes] += volume
+        return np.asarray(np.clip(share / whole, 0.0, 1.0))
 
     def at(self, temperature: Floats, depths: Floats) -> Floats:
         """Temperature at `depths` by straight lines between nodes; the last axis (node) becomes depth."""

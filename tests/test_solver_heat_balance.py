@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 
 from soiltemp.errors import SolverError
-from tests.helpers.wild import march_wild, wild_base, wild_case
+from tests.helpers.wild import march_wild, wild_base, wild_case, wild_resistance
 
 # 1e-9 is what the project promises. What is lost is rounding: a heat content of 1e9 J/m2 has 16 digits, and a node may
 # stand 2e-13 K beyond a knot, which at a freezing range of 1e-4 K and pure water is 0.7 J/m3.
@@ -15,18 +15,26 @@ LIMIT = 1e-9
 
 # The embedded error judges every node of ground whose surface jumps by up to 180 K in a step, so nearly every step is
 # cut; that is the point: sub-steps, paths and the way back are all walked.
-SETTINGS = {"no limit on the error": (np.inf, False), "tolerance": (0.5, False), "base temperature": (np.inf, True)}
+SETTINGS = {
+    "no limit on the error": (np.inf, ""),
+    "tolerance": (0.5, ""),
+    "base temperature": (np.inf, "base"),
+    "resistance above": (np.inf, "resistance"),
+    "resistance above, tolerance": (0.5, "resistance"),
+}
 
 
-def run_sample(seeds, tolerance, base):
+def run_sample(seeds, tolerance, given):
     """Worst heat balance error of a sample, the failures to converge, and what the kernel went through."""
     worst, failures, counters = 0.0, [], {}
     for seed in seeds:
         case = wild_case(seed)
-        if base and case.column.layer.size < 4:
+        if given == "base" and case.column.layer.size < 4:
             continue  # two or three nodes, of which both ends are given
+        base = wild_base(case, seed) if given == "base" else None
+        resistance = wild_resistance(case, seed) if given == "resistance" else None
         try:
-            run, error = march_wild(case, tolerance, wild_base(case, seed) if base else None)
+            run, error = march_wild(case, tolerance, base, resistance)
         except SolverError as stopped:
             failures.append((seed, str(stopped)))
             continue
@@ -40,8 +48,8 @@ def run_sample(seeds, tolerance, base):
 
 @pytest.mark.parametrize("setting", SETTINGS)
 def test_sample(setting):
-    tolerance, base = SETTINGS[setting]
-    worst, failures, counters = run_sample(range(300), tolerance, base)
+    tolerance, given = SETTINGS[setting]
+    worst, failures, counters = run_sample(range(300), tolerance, given)
     assert failures == []
     assert worst < LIMIT
     # the sample does go through what it is meant to try
@@ -52,8 +60,8 @@ def test_sample(setting):
 @pytest.mark.long
 @pytest.mark.parametrize("setting", SETTINGS)
 def test_ten_thousand(setting):
-    tolerance, base = SETTINGS[setting]
-    worst, failures, _ = run_sample(range(10_000), tolerance, base)
+    tolerance, given = SETTINGS[setting]
+    worst, failures, _ = run_sample(range(10_000), tolerance, given)
     assert failures == []
     assert worst < LIMIT
 

@@ -263,3 +263,19 @@ def test_published_numbers():
     sand = Soil("120 lb/ft^3", 0.05, "coarse").material("kersten_1949")
     assert sand.conductivity_frozen == pytest.approx(1.7, abs=0.06)
     assert sand.conductivity_thawed == pytest.approx(2.0, abs=0.06)
+
+
+def test_resistance_that_jumps_keeps_the_heat_balance():
+    """Snow that comes, goes and is cleared at once, over ground that freezes: heat in is heat stored to 1e-10 of the
+    heat exchanged, and in the end, under steady air, the surface lies where the resistances in series say."""
+    column = column_of(Profile([Layer(SILT, 0.5)]), np.linspace(0.0, 0.5, 11))
+    seconds = DAY * np.array([0.0, 1.0, 2.0, 3.0, 4.0, 5.0, 6.0, 400.0])
+    air = np.array([4.0, -12.0, -12.0, 5.0, -9.0, -9.0, -9.0, -9.0])
+    resistance = np.array([0.05, 0.05, 4.0, 4.0, 0.05, 1.0, 0.2, 0.2])
+    schedule = make_schedule(seconds, air, seconds, max_step=6 * HOUR, resistance=resistance)
+    run = march(column.table, schedule, np.full(11, 1.0), base_flux=10.0, watch=1, tolerance=np.inf)
+    stored = column.heat_content(run.temperature)
+    exchanged = np.abs(np.diff(run.heat)).sum()
+    assert np.abs(stored - stored[0] - (run.heat - run.heat_out)).max() < 1e-10 * exchanged
+    assert run.temperature[:, 0].min() < -2.0
+    assert run.temperature[-1, 0] == pytest.approx(-9.0 + 10.0 * 0.2, abs=1e-3)

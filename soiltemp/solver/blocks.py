@@ -48,15 +48,15 @@ WIDTH = 16
 """Columns abreast: two vectors of eight doubles. Wider blocks gain little a node and solve more lanes again for one."""
 
 # Distances within a record, unsigned: a signed index may be negative, and code that looks for it does not vectorise.
-# Rows that are used together stand together.
-UA, U, VA, V = (np.uintp(row * WIDTH) for row in range(4))  # the piece in force, see `stage.PIECE_FIELDS`
-F, P, K, Z, E, A, B = (np.uintp(row * WIDTH) for row in range(4, 11))  # factors, constant part, substitution
-LO, HI, WORST = (np.uintp(row * WIDTH) for row in range(11, 14))  # bounds; worst up to this node
+# A step is bound by how many rows pass between the caches, so what every step needs stands together.
+Z, E, F, P, K, A, B = (np.uintp(row * WIDTH) for row in range(7))  # substitution, factors, constant part, heat curve
 # Heat and right side, each in two rows that change places from step to step: of the state and its stage 1, and of the
 # step's end and stage 2.
-HEAT = (np.uintp(14 * WIDTH), np.uintp(15 * WIDTH))
-SIDE = (np.uintp(16 * WIDTH), np.uintp(17 * WIDTH))
-PIECE_ROWS = (A, B, UA, U, VA, V, LO, HI)
+HEAT = (np.uintp(7 * WIDTH), np.uintp(8 * WIDTH))
+SIDE = (np.uintp(9 * WIDTH), np.uintp(10 * WIDTH))
+WORST = np.uintp(11 * WIDTH)  # largest error estimate down to this node
+UA, U, VA, V, LO, HI = (np.uintp(row * WIDTH) for row in range(12, 18))  # the rest of the piece in force
+PIECE_ROWS = (A, B, UA, U, VA, V, LO, HI)  # in the order of `stage.PIECE_FIELDS`
 FIELDS = 18
 T = Z  # on the way back from the middle the substitution is replaced by the temperature
 NEXT = np.uintp(FIELDS * WIDTH)
@@ -103,84 +103,85 @@ def _factor(x, n, c, top, base, width):
         x[q + K] = c * (x[q + VA - NEXT] - x[q + UA] - x[q + VA] + x[q + UA + NEXT]) - x[q + A]
 
 
-@njit(**OPTIONS)
-def _inward(x, n, right, boundary, width):
-    """Substitute from both ends; the middle node is left with its temperature in Z. `right` is R1 or R2."""
-    m = middle_of(n)
-    for j in range(width):
-        q = NEXT + uintp(j)
-        x[q + Z] = x[q + P] * (x[q + right] + x[q + K]) + x[q + P] * boundary[j]
-    for i in range(2, m):
-        o = uintp(i) * NEXT
-        for j in range(width):
-            q = o + uintp(j)
-            x[q + Z] = x[q + P] * (x[q + right] + x[q + K]) + x[q + F] * x[q + Z - NEXT]
-    for i in range(n - 1, m, -1):
-        o = uintp(i) * NEXT
-        for j in range(width):
-            q = o + uintp(j)
-            x[q + Z] = x[q + P] * (x[q + right] + x[q + K]) + x[q + F] * x[q + Z + NEXT]
-    o = uintp(m) * NEXT
-    for j in range(width):
-        q = o + uintp(j)
-        x[q + Z] = x[q + P] * (x[q + right] + x[q + K]) + x[q + F] * x[q + Z - NEXT] + x[q + E] * x[q + Z + NEXT]
+def _make_inward(right, state=None):
+    """Compile the substitution from both ends; the middle node is left with its temperature in Z.
 
-
-def _make_outward(stage_number, step, turn):
-    """Compile the way back from the middle: upward (`step` -1), downward (1), or the middle node itself (0).
-
-    Fills temperatures, and in stage 1 the right side of stage 2, in stage 2 the heat at the end of the step. The row
-    WORST carries from node to node how far any of them is outside its segment [K].
+    `right` is the row of the right side. With the row `state` of the heat at the start of the step, it is the way in
+    of stage 2 that follows on stage 1: its right side is made from the temperatures as they are replaced.
     """
-    stage_1 = stage_number == 1
-    middle = step == 0
-    stride = 1 if middle else step
-    back = np.uintp((-step * int(NEXT)) % 2**64)  # the record before: unsigned numbers wrap, so this goes either way
-    s, s_new, r2 = HEAT[turn], HEAT[1 - turn], SIDE[1 - turn]
 
     @njit(**OPTIONS)
-    def outward(x, first, last, width):
-        for i in range(first, last, stride):
+    def source(x, q):
+        if state is not None:
+            x[q + right] = B1 * (x[q + A] + x[q + B] * x[q + T]) - B2 * x[q + state]
+        return x[q + P] * (x[q + right] + x[q + K])
+
+    @njit(**OPTIONS)
+    def inward(x, n, boundary, width):
+        m = middle_of(n)
+        for j in range(width):
+            q = NEXT + uintp(j)
+            x[q + Z] = source(x, q) + x[q + P] * boundary[j]
+        for i in range(2, m):
             o = uintp(i) * NEXT
             for j in range(width):
                 q = o + uintp(j)
-                if middle:
-                    value, before = x[q + Z], 0.0
-                else:
-                    value, before = x[q + Z] + x[q + E] * x[q + T + back], x[q + WORST + back]
-                heat = x[q + A] + x[q + B] * value
-                under = x[q + LO] - value
-                over = value - x[q + HI]
-                worst = under if under > over else over
-                x[q + T] = value
-                x[q + WORST] = worst if worst > before else before
-                if stage_1:
-                    x[q + r2] = B1 * heat - B2 * x[q + s]
-                else:
-                    x[q + s_new] = heat
+                x[q + Z] = source(x, q) + x[q + F] * x[q + Z - NEXT]
+        for i in range(n - 1, m, -1):
+            o = uintp(i) * NEXT
+            for j in range(width):
+                q = o + uintp(j)
+                x[q + Z] = source(x, q) + x[q + F] * x[q + Z + NEXT]
+        o = uintp(m) * NEXT
+        for j in range(width):
+            q = o + uintp(j)
+            x[q + Z] = source(x, q) + x[q + F] * x[q + Z - NEXT] + x[q + E] * x[q + Z + NEXT]
+
+    return inward
+
+
+# By the row of the right side; the latter two for the first time in stage 2.
+_inward, _inward_turned = _make_inward(SIDE[0]), _make_inward(SIDE[1])
+_inward_2, _inward_2_turned = _make_inward(SIDE[1], HEAT[0]), _make_inward(SIDE[0], HEAT[1])
+
+
+def _make_outward(step):
+    """Compile the way back from the middle: upward (`step` -1), downward (1), or the middle node itself (0).
+
+    Fills temperatures, and in `outside` how many lanes of each node may have left their segments. The bounds that all
+    lanes of a node have in common, `low` and `high`, save two rows; where they have none their own are looked at.
+    """
+    middle = step == 0
+    stride = 1 if middle else step
+    back = np.uintp((-step * int(NEXT)) % 2**64)  # the record before: unsigned numbers wrap, so this goes either way
+
+    @njit(**OPTIONS)
+    def outward(x, first, last, low, high, outside, width):
+        for i in range(first, last, stride):
+            o = uintp(i) * NEXT
+            lo, hi, number = low[i], high[i], 0
+            if lo < hi:
+                for j in range(width):
+                    q = o + uintp(j)
+                    value = x[q + Z] if middle else x[q + Z] + x[q + E] * x[q + T + back]
+                    x[q + T] = value
+                    number += int((value < lo) | (value > hi))
+            else:
+                for j in range(width):
+                    q = o + uintp(j)
+                    value = x[q + Z] if middle else x[q + Z] + x[q + E] * x[q + T + back]
+                    x[q + T] = value
+                    number += int((value < x[q + LO]) | (value > x[q + HI]))
+            outside[i] = number
 
     return outward
 
 
-def _make_way_back(stage_number, turn):
-    """Compile the whole way back from the middle node of a stage."""
-    up, own, down = (_make_outward(stage_number, step, turn) for step in (-1, 0, 1))
-
-    @njit(**OPTIONS)
-    def way_back(x, n, m, width):
-        own(x, m, m + 1, width)
-        down(x, m + 1, n, width)  # first, as the way in ended below the middle: what was touched last is still at hand
-        up(x, m - 1, 0, width)
-
-    return way_back
-
-
-_back_1, _back_2 = _make_way_back(1, 0), _make_way_back(2, 0)
-_back_1_turned, _back_2_turned = _make_way_back(1, 1), _make_way_back(2, 1)
+_up, _middle, _down = (_make_outward(step) for step in (-1, 0, 1))
 
 
 def _make_accept(turn):
-    """Compile the end of a step: the right side of the next one's stage 1, in place of that of stage 2.
+    """Compile the end of a step: its heat, and the right side of the next one's stage 1 in place of that of stage 2.
 
     On the way down the row WORST carries the largest error estimate [K]. The state at the start of the step is left as
     it is, for lanes that have to do the step again.
@@ -194,11 +195,12 @@ def _make_accept(turn):
             weight = 1.0 if i >= watch else 0.0
             for j in range(width):
                 q = o + uintp(j)
-                heat, side, old, right = x[q + s_new], x[q + r2], x[q + s], x[q + r1]
+                heat, side, old, right = x[q + A] + x[q + B] * x[q + T], x[q + r2], x[q + s], x[q + r1]
                 gap = E1 * (right - old) + E2 * ((side + B2 * old) * INVERSE_B1 - right) + E3 * (heat - side)
                 error = abs(gap) * x[q + P] * weight
                 before = x[q + WORST - NEXT]
                 x[q + WORST] = error if error > before else before
+                x[q + s_new] = heat
                 x[q + r2] = heat + (heat - side)
 
     return accept
@@ -208,9 +210,13 @@ _accept, _accept_turned = _make_accept(0), _make_accept(1)
 
 
 @njit(**OPTIONS)
-def _worst(x, n, j):
-    """What the row WORST of lane `j` came to at the ends."""
-    return max(x[NEXT + WORST + uintp(j)], x[uintp(n - 1) * NEXT + WORST + uintp(j)])
+def _agree(x, first, last, low, high):
+    """Find the bounds that all lanes of a node have in common; where there are none, `low` is not below `high`."""
+    for i in range(first, last):
+        low[i], high[i] = -np.inf, np.inf
+        for j in range(WIDTH):
+            q = uintp(i) * NEXT + uintp(j)
+            low[i], high[i] = max(low[i], x[q + LO]), min(high[i], x[q + HI])
 
 
 @njit(**OPTIONS)
@@ -229,48 +235,42 @@ def _hold(x, tables, which, segment, i, j):
 
 
 @njit(**OPTIONS)
-def _settle(x, n, tables, table_of, segment, c, stage_number, turn, boundary, factored, lost, count, width):
+def _settle(
+    x, n, tables, table_of, segment, c, stage_number, turn, boundary, factored, low, high, outside, lost, count, width
+):
     """`stage.settle` in every lane; mark in `lost` the lanes that did not settle."""
     m = middle_of(n)
     top, base = 1, n - 1
-    right = SIDE[turn] if stage_number == 1 else SIDE[1 - turn]
     for hold in range(MAX_HOLDS):
         if factored[0] != c:
             _factor(x, n, c, top, base, width)
             factored[0] = c
             count[FACTORS] += 1
-        _inward(x, n, right, boundary, width)
-        if stage_number == 1:
+        if stage_number == 2 and hold == 0:
             if turn == 0:
-                _back_1(x, n, m, width)
+                _inward_2(x, n, boundary, width)
             else:
-                _back_1_turned(x, n, m, width)
-        elif turn == 0:
-            _back_2(x, n, m, width)
+                _inward_2_turned(x, n, boundary, width)
+        elif (stage_number == 1) == (turn == 0):
+            _inward(x, n, boundary, width)
         else:
-            _back_2_turned(x, n, m, width)
+            _inward_turned(x, n, boundary, width)
+        _middle(x, m, m + 1, low, high, outside, width)
+        _down(x, m + 1, n, low, high, outside, width)  # first, as the way in ended below the middle
+        _up(x, m - 1, 0, low, high, outside, width)
         count[SOLVES] += 1
         moved = False
         top, base = m, m
-        for j in range(width):
-            lane = uintp(j)
-            if _worst(x, n, j) <= KNOT_SLACK or lost[j]:
+        for i in range(1, n):
+            if outside[i] == 0:
                 continue
-            if hold == MAX_HOLDS - 1:
-                lost[j] = True
-                continue
-            moved = True
-            # WORST grows from the middle outward: no node beyond the first that is within the limit has left
-            for i in range(1, m + 1):
-                if x[uintp(i) * NEXT + WORST + lane] <= KNOT_SLACK:
-                    break
-                if _hold(x, tables, table_of[j], segment, i, j):
+            low[i], high[i] = np.inf, -np.inf  # after a false alarm each lane's own bounds count, until one moves here
+            for j in range(width):
+                if not lost[j] and _hold(x, tables, table_of[j], segment, i, j):
+                    moved = True
+                    lost[j] = hold == MAX_HOLDS - 1
                     top, base = min(top, max(1, i - 1)), max(base, min(n - 1, i + 1))
-            for i in range(n - 1, m, -1):
-                if x[uintp(i) * NEXT + WORST + lane] <= KNOT_SLACK:
-                    break
-                if _hold(x, tables, table_of[j], segment, i, j):
-                    top, base = min(top, max(1, i - 1)), max(base, min(n - 1, i + 1))
+                    _agree(x, i, i + 1, low, high)
         if not moved:
             return
         factored[0] = 0.0
@@ -330,13 +330,10 @@ def _march_block(
     x = raw[shift : shift + (n + 1) * FIELDS * WIDTH]
     segment, factored = np.zeros((n, WIDTH), dtype=np.int64), np.zeros(1)
     # one column alone, for `careful`
-    work, piece, lane_segment, alone = (
-        np.zeros((14, n + 1)),
-        np.zeros((8, n + 1)),
-        np.zeros(n, dtype=np.int64),
-        np.zeros(1),
-    )
+    work, piece, alone = np.zeros((14, n + 1)), np.zeros((8, n + 1)), np.zeros(2)
+    lane_segment = np.zeros(n, dtype=np.int64)
     t, s, flux = np.zeros(n), np.zeros(n), np.zeros(n)
+    low, high, outside = np.zeros(n), np.zeros(n), np.zeros(n, dtype=np.int64)
     heat, begin, change, base = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
     phi_1, phi_2, b_1, b_2 = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
     q_0, q_1, q_2 = np.zeros(WIDTH), np.zeros(WIDTH), np.zeros(WIDTH)
@@ -370,6 +367,7 @@ def _march_block(
         if row[0] >= 0 and j < lanes:
             out_temperature[column, row[0], :] = t
             out_heat[column, row[0]] = 0.0
+    _agree(x, 1, n, low, high)
     for interval in range(dt.size):
         h = dt[interval] / parts[interval]
         c = C_STAGE * h
@@ -387,10 +385,16 @@ def _march_block(
             if prepared != c:
                 _prepare(x, n, c, prepared, HEAT[turn], SIDE[turn], width)
                 prepared = c
-            _settle(x, n, tables, table_of, segment, c, 1, turn, b_1, factored, lost, count[first], width)
+            _settle(
+                x, n, tables, table_of, segment, c, 1, turn, b_1, factored, low, high, outside, lost, count[first],
+                width,
+            )  # fmt: skip
             for j in range(WIDTH):
                 q_1[j] = _flux_in(x, j, phi_1[j])
-            _settle(x, n, tables, table_of, segment, c, 2, turn, b_2, factored, lost, count[first], width)
+            _settle(
+                x, n, tables, table_of, segment, c, 2, turn, b_2, factored, low, high, outside, lost, count[first],
+                width,
+            )  # fmt: skip
             if turn == 0:
                 _accept(x, n, watch, width)
             else:
@@ -411,9 +415,10 @@ def _march_block(
                     flux[i] = (x[q + old_side] - x[q + old_heat]) / c
                 code, gained, _ = careful(
                     tables[table_of[j]], tops[j], bottom, piece, lane_segment, h, begin[j], begin[j] + change[j],
-                    base[j], base[j], watch, tolerance, t, s, flux, work, alone, count[first + j],
+                    0.0, 0.0, base[j], base[j], watch, tolerance, t, s, flux, work, alone, count[first + j],
                 )  # fmt: skip
                 _put_lane(x, j, turn, piece, segment, lane_segment, t, s, flux, c)
+                _agree(x, 1, n, low, high)
                 factored[0] = 0.0
                 heat[j] += gained
                 q_2[j] = _flux_in(x, j, phi_2[j])

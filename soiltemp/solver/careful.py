@@ -45,6 +45,8 @@ from soiltemp.solver.stage import (
     potential,
     settle,
     solve,
+    stage_conductances,
+    surface_potential,
 )
 
 __all__ = ["careful"]
@@ -55,7 +57,7 @@ ACCURACY_HALVINGS = 6  # for accuracy alone an interval is cut into at most 64
 
 
 @njit(**OPTIONS)
-def _follow_path(table, piece, segment, c, r, boundary, t, work):
+def _follow_path(table, piece, segment, c, r, boundary, conductance, t, work):
     """Katzenelson's path from the temperatures `t`, which lie in their segments; True when the end was reached."""
     n = t.size
     p, f, e, k, z, residual, step, unused = (
@@ -98,33 +100,38 @@ def _follow_path(table, piece, segment, c, r, boundary, t, work):
         segment[first] += 1 if upward else -1
         for field in range(8):
             piece[field, first] = table[first, segment[first], field]
+        if conductance > 0.0:
+            piece[U, 1] = conductance
     return False
 
 
 @njit(**OPTIONS)
-def _stage(table, piece, segment, c, r, boundary, below, start, work, t, s, factored, count):
+def _stage(table, piece, segment, c, r, boundary, conductance, below, start, work, t, s, factored, count):
     """One stage by layers 1 and 2, the path beginning at the temperatures `start`."""
-    if settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, count):
+    if settle(table, piece, segment, c, r, boundary, conductance, below, work, t, s, factored, count):
         return True
     count[PATHS] += 1
     t[:] = start
     place(table, piece, segment, t)
+    if conductance > 0.0:
+        piece[U, 1] = conductance
     factored[0] = 0.0
-    if not _follow_path(table, piece, segment, c, r, boundary, t, work):
+    if not _follow_path(table, piece, segment, c, r, boundary, conductance, t, work):
         return False
     # The path ends within rounding of the answer: one whole solve in its segments makes it exact, or shows it is not.
-    return settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, count)
+    return settle(table, piece, segment, c, r, boundary, conductance, below, work, t, s, factored, count)
 
 
 @njit(**OPTIONS)
 def careful(
-    table, top, bottom, piece, segment, dt, surface_0, surface_1, base_0, base_1, watch, tolerance,
-    t, s, flux, work, factored, count,
+    table, top, bottom, piece, segment, dt, surface_0, surface_1, resistance_0, resistance_1, base_0, base_1,
+    watch, tolerance, t, s, flux, work, factored, count,
 ):  # fmt: skip
     """Cross one step of a column with sub-steps and layers 1 to 3; return (status, heat in at the top, heat out below).
 
     `top` and `bottom` are the curves of the potentials at the ends; `s` and `flux` hold the state at the start and are
-    replaced, with `t`, by the state at the end. Positions are counted in whole units of 2**-MAX_HALVINGS of the step,
+    replaced, with `t`, by the state at the end, the flux under the conductances that `stage_conductances` gives for the
+    ends of the whole step. Positions are counted in whole units of 2**-MAX_HALVINGS of the step,
     so that the sub-steps land on its end exactly.
     """
     n = t.size
@@ -136,6 +143,7 @@ def careful(
     last = n - 1
     start, r1, s1 = work[8, :n], work[9, :n], work[10, :n]
     r2, s2, t1 = work[11, :n], work[12, :n], work[13, :n]
+    conductance, _, whole = stage_conductances(resistance_0, resistance_1)
     t[0] = surface_0
     place_by_heat(table, piece, segment, s, t)
     start[:] = t
@@ -147,27 +155,35 @@ def careful(
         c = C_STAGE * h
         begin = surface_0 + (surface_1 - surface_0) * (position / units)
         rise = (surface_1 - surface_0) * (size / units)
+        g_0, g_1, g_2 = stage_conductances(
+            resistance_0 + (resistance_1 - resistance_0) * (position / units),
+            resistance_0 + (resistance_1 - resistance_0) * ((position + size) / units),
+        )
+        flux[1] += (g_0 - conductance) * (begin - start[1])
+        conductance = g_0
         base = base_0 + (base_1 - base_0) * (position / units)
         base_rise = (base_1 - base_0) * (size / units)
-        phi_1 = potential(top, begin + GAMMA * rise)
-        phi_2 = potential(top, begin + rise)
+        phi_1 = surface_potential(top, g_1, begin + GAMMA * rise)
+        phi_2 = surface_potential(top, g_2, begin + rise)
         psi_1 = potential(bottom, base + GAMMA * base_rise)
         psi_2 = potential(bottom, base + base_rise)
-        q_0 = potential(top, begin) - (piece[UA, 1] + piece[U, 1] * start[1])
+        if g_0 > 0.0:
+            piece[U, 1] = g_0
+        q_0 = surface_potential(top, g_0, begin) - (piece[UA, 1] + piece[U, 1] * start[1])
         o_0 = piece[VA, last] + piece[V, last] * start[last] - potential(bottom, base)
         q_1 = 0.0
         o_1 = 0.0
         error = 0.0
         for i in range(1, n):
             r1[i] = s[i] + c * flux[i]
-        good = _stage(table, piece, segment, c, r1, c * phi_1, psi_1, start, work, t1, s1, factored, count)
+        good = _stage(table, piece, segment, c, r1, c * phi_1, g_1, psi_1, start, work, t1, s1, factored, count)
         if good:
             q_1 = phi_1 - (piece[UA, 1] + piece[U, 1] * t1[1])
             o_1 = piece[VA, last] + piece[V, last] * t1[last] - psi_1
             for i in range(1, n):
                 r2[i] = B1 * s1[i] - B2 * s[i]
             t1[0] = begin + GAMMA * rise
-            good = _stage(table, piece, segment, c, r2, c * phi_2, psi_2, t1, work, t, s2, factored, count)
+            good = _stage(table, piece, segment, c, r2, c * phi_2, g_2, psi_2, t1, work, t, s2, factored, count)
         if good:
             for i in range(watch, n):
                 error = max(error, estimate(i, work[0], s, r1, r2, s2))
@@ -189,6 +205,7 @@ def careful(
         for i in range(1, n):
             flux[i] = (s2[i] - r2[i]) / c
             s[i] = s2[i]
+        conductance = g_2
         t[0] = begin + rise
         start[:] = t
         count[STEPS] += 1
@@ -196,4 +213,5 @@ def careful(
         while level > 1 and position % (2 * size) == 0 and error <= 0.25 * tolerance:
             level -= 1
             size *= 2
+    flux[1] += (whole - conductance) * (surface_1 - t[1])
     return CONVERGED, heat_in, heat_out

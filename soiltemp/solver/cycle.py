@@ -19,7 +19,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from soiltemp.errors import SolverError
-from soiltemp.solver.march import Schedule, march
+from soiltemp.solver.march import Schedule, exposed, march
 from soiltemp.solver.stage import PIECE_FIELDS
 
 __all__ = ["SETTLED", "Cycle", "find_cycle"]
@@ -92,7 +92,9 @@ def _steady(table: Floats, mean_potential: float, base_flux: float) -> Floats:
 
 
 def _mean_potential(table: Floats, schedule: Schedule) -> float:
-    """Mean over the period of the potential at the surface, over the first element's thickness [W m-2]."""
+    """Mean over the period of the potential above the column, over what lies between [W m-2]."""
+    if schedule.resistance is not None:
+        return float(np.trapezoid(schedule.surface / schedule.resistance, schedule.seconds) / schedule.duration)
     piece = _pieces_at(np.broadcast_to(table[0], (schedule.surface.size, *table[0].shape)), schedule.surface)
     values = piece[:, _VA] + piece[:, _V] * schedule.surface
     return float(np.trapezoid(values, schedule.seconds) / schedule.duration)
@@ -147,7 +149,10 @@ def find_cycle(
         If the state has not settled after `MOST_PERIODS` periods (deep ground that hovers at its freezing point may
         need centuries), or the kernel stopped.
     """
-    state = _steady(table, _mean_potential(table, schedule), base_flux)
+    # behind a resistance the mean flux belongs to the mean conductance and the mean of what lies beyond it
+    whole = exposed(table, schedule)
+    beyond = np.zeros(whole.shape[0] - table.shape[0])
+    state = _steady(whole, _mean_potential(table, schedule), base_flux)[beyond.size :]
     largest = np.inf
     worst = 0
     share, moved, rest, years = 1.0, False, 0, 0
@@ -155,7 +160,8 @@ def find_cycle(
         years += 1
         run = march(table, schedule, state, base_flux=base_flux, watch=watch, tolerance=tolerance)
         gain = _stored(table, run.end) - _stored(table, state)
-        move = _move(table, run.temperature.mean(axis=0), gain, schedule.duration)
+        mean = np.concatenate([beyond, run.temperature.mean(axis=0)])
+        move = _move(whole, mean, np.concatenate([beyond, gain]), schedule.duration)[beyond.size :]
         worst = int(np.argmax(np.abs(move)))
         before, largest = largest, float(np.abs(move[worst]))
         helped = largest <= (0.5 if period <= PATIENCE else 0.75) * before

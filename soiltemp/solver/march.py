@@ -16,7 +16,7 @@ from soiltemp.solver.blocks import march_columns, march_columns_parallel
 from soiltemp.solver.kernel import march_one
 from soiltemp.solver.stage import COUNTERS, NON_FINITE, NOT_CONVERGED, OUT_OF_RANGE, PIECE_FIELDS
 
-__all__ = ["STATUS_MEANING", "Block", "March", "Schedule", "make_schedule", "march", "march_block"]
+__all__ = ["STATUS_MEANING", "Block", "March", "Schedule", "exposed", "make_schedule", "march", "march_block"]
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -35,12 +35,16 @@ WINDOW = 20_000
 
 @dataclass(frozen=True, eq=False)
 class Schedule:
-    """Time as the kernel sees it; fields as in `kernel.march_one`, and the interval bounds in seconds."""
+    """Time as the kernel sees it; fields as in `kernel.march_one`, and the interval bounds in seconds.
+
+    Without a `resistance` the surface itself has the temperature `surface`.
+    """
 
     seconds: Floats
     surface: Floats
     parts: Integers
     row: Integers
+    resistance: Floats | None = None
 
     @property
     def dt(self) -> Floats:
@@ -59,7 +63,13 @@ class Schedule:
 
 
 def make_schedule(
-    seconds: Floats, surface: Floats, outputs: Floats, *, max_step: float, also: Floats | None = None
+    seconds: Floats,
+    surface: Floats,
+    outputs: Floats,
+    *,
+    max_step: float,
+    resistance: Floats | None = None,
+    also: Floats | None = None,
 ) -> Schedule:
     """Cut time at the knots of the forcing and at the output times.
 
@@ -71,6 +81,8 @@ def make_schedule(
         Output times [s], increasing, inside the forcing.
     max_step : float
         Longest step [s].
+    resistance : float64 (knot,), optional
+        Thermal resistance between the forcing and the surface, above 0, linear between its knots [m2 K W-1].
     also : float64 (knot,), optional
         Further times to cut at, such as the knots of a base temperature [s].
     """
@@ -81,7 +93,8 @@ def make_schedule(
     row[np.searchsorted(bounds, outputs)] = np.arange(outputs.size)
     # a hair of slack: 3600.0000001 s is one step of an hour and not two
     parts = np.maximum(1, np.ceil(np.diff(bounds) / max_step - 1e-9)).astype(np.int64)
-    return Schedule(bounds, np.interp(bounds, seconds, surface), parts, row)
+    between = None if resistance is None else np.interp(bounds, seconds, resistance)
+    return Schedule(bounds, np.interp(bounds, seconds, surface), parts, row, between)
 
 
 @dataclass(frozen=True, eq=False)
@@ -117,6 +130,21 @@ def _end_store(pieces: Floats, temperature: Floats) -> Floats:
     pieces = pieces[: 1 + int(np.argmax(pieces[:, _HI]))]
     segment = np.searchsorted(pieces[:-1, _HI], temperature)
     return np.asarray(pieces[segment, _A] + pieces[segment, _B] * temperature)
+
+
+def exposed(table: Floats, schedule: Schedule) -> Floats:
+    """Pieces of a column with, where the schedule has a resistance, a row above them for what lies beyond it.
+
+    The conductance written there is the mean one; the kernel puts that of the moment in its place.
+    """
+    if schedule.resistance is None:
+        return table
+    conductance = np.trapezoid(1.0 / schedule.resistance, schedule.seconds) / schedule.duration
+    beyond = np.zeros((1, *table.shape[1:]))
+    beyond[0, 0, [_V, _LO, _HI]] = conductance, -np.inf, np.inf
+    result = np.concatenate([beyond, table])
+    result[1, :, _U] = conductance
+    return result
 
 
 def march(
@@ -161,17 +189,21 @@ def march(
     SolverError
         If the kernel stopped; the message gives the time since the start and the reason.
     """
-    rows = schedule.rows
+    rows, lowest = schedule.rows, table[-1]
     base_given = base_temperature is not None
     solved = start.size - 1 if base_given else start.size
     if base_temperature is not None:
-        base, bottom = base_temperature, table[-1][:, [_UA, _U, _HI]]
+        base, bottom = base_temperature, lowest[:, [_UA, _U, _HI]]
     else:
         base, bottom = np.full(schedule.seconds.size, base_flux), np.array([[0.0, 1.0, np.inf]])
     if solved < 3:
         raise SolverError(f"solver: found a column with {start.size} nodes; allowed: 4 or more; make the grid finer.")
     temperature, heat = np.empty((rows, start.size)), np.empty((2, rows))
-    state = np.array(start[:solved], dtype=np.float64)
+    own, table, resistance = 0, table[:solved], np.zeros(schedule.seconds.size)
+    if schedule.resistance is not None:
+        own, table, resistance = 1, exposed(table, schedule), schedule.resistance
+    # row 0 is never solved for: the surface, or what lies beyond the resistance
+    state = np.concatenate([schedule.surface[:own], start[:solved]])
     count = np.zeros(len(COUNTERS), dtype=np.int64)
     intervals = schedule.parts.size
     dt = schedule.dt
@@ -185,11 +217,11 @@ def march(
         # rows of this window alone, and one more for its end, which is read for its heat
         local = np.where(wanted >= 0, np.cumsum(wanted >= 0) - 1, -1)
         local[-1] = outputs.size if local[-1] < 0 else local[-1]
-        window, gained = np.empty((outputs.size + 1, solved)), np.empty((2, outputs.size + 1))
+        window, gained = np.empty((outputs.size + 1, state.size)), np.empty((2, outputs.size + 1))
         status, stopped = march_one(
-            np.ascontiguousarray(table[:solved]), np.ascontiguousarray(bottom), dt[first:last],
-            schedule.surface[first : last + 1], base[first : last + 1], schedule.parts[first:last], local,
-            watch, tolerance, state, window, gained[0], gained[1], count,
+            np.ascontiguousarray(table), np.ascontiguousarray(bottom), dt[first:last],
+            schedule.surface[first : last + 1], resistance[first : last + 1], base[first : last + 1],
+            schedule.parts[first:last], local, watch + own, tolerance, state, window, gained[0], gained[1], count,
         )  # fmt: skip
         if status in STATUS_MEANING:
             day = (schedule.seconds[first + stopped] - schedule.seconds[0]) / 86400.0
@@ -197,7 +229,7 @@ def march(
                 f"solver, {day:.3f} days after the start: {STATUS_MEANING[status]}; no result is returned; "
                 "check the material values and the surface temperature at that time, or give a smaller max_step."
             )
-        temperature[outputs, :solved] = window[: outputs.size]
+        temperature[outputs, :solved] = window[: outputs.size, own:]
         heat[:, outputs] = total[:, None] + gained[:, : outputs.size]
         total += gained[:, local[-1]]
         if progress is not None:
@@ -205,13 +237,13 @@ def march(
     heat[0] += _end_store(table[0], schedule.surface[schedule.row >= 0]) - _end_store(table[0], schedule.surface[:1])
     if base_given:
         temperature[:, -1] = base[schedule.row >= 0]
-        heat[1] -= _end_store(table[-1], temperature[:, -1]) - _end_store(table[-1], base[:1])
+        heat[1] -= _end_store(lowest, temperature[:, -1]) - _end_store(lowest, base[:1])
         state = np.append(state, base[-1])
     return March(
         temperature,
         heat[0],
         heat[1],
-        state,
+        state[own:],
         dict(zip(COUNTERS, (int(value) for value in count), strict=True)),
     )
 

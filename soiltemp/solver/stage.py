@@ -15,6 +15,10 @@ the flux out of it:
 
 As cF = S - r after a stage, fluxes are never evaluated again for F.
 
+The surface is node 0. Either its temperature is given, or a thermal resistance lies between it and a temperature that
+is (snow, moving air): then row 0 stands for what is above the resistance, the surface is node 1, and the conductance
+takes the place of U at node 1, whatever the segment. It changes with time, so it is no part of the table.
+
 A stage is solved in the present segments; a node that lands outside its segment moves to the neighbouring one, never
 further, and the system is solved again (*hold at knots*). Everything is piecewise linear, so the answer is exact when
 nobody moved. What this does not settle is for `careful`.
@@ -50,6 +54,8 @@ __all__ = [
     "potential",
     "settle",
     "solve",
+    "stage_conductances",
+    "surface_potential",
 ]
 
 # Status of a column.
@@ -68,6 +74,7 @@ COUNTERS = ("steps", "solves", "factorisations", "rescues", "paths", "halvings",
 
 MAX_HOLDS = 12
 KNOT_SLACK = 2e-13  # K; rounding of a solve, about ten units in the last place of 90 degC
+SUDDEN = 2.0  # change of the resistance in a step, as a factor
 TEMPERATURE_LIMIT = 200.0  # degC, either sign; anything beyond is a fault and not weather
 
 GAMMA = 2.0 - math.sqrt(2.0)
@@ -203,6 +210,27 @@ def potential(curve, value):
 
 
 @njit(**OPTIONS)
+def stage_conductances(before, after):
+    """Conductance above the surface at the start of a step and at its stages [W m-2 K-1]; 0 without a resistance.
+
+    A step over which the resistance changes more than `SUDDEN` times takes that of its middle throughout: else the
+    trapezoid of stage 1 would turn what the surface lacks of its balance at the start into as many times that.
+    """
+    if before <= 0.0:
+        return 0.0, 0.0, 0.0
+    if after > SUDDEN * before or before > SUDDEN * after:
+        middle = 2.0 / (before + after)
+        return middle, middle, middle
+    return 1.0 / before, 1.0 / (before + GAMMA * (after - before)), 1.0 / after
+
+
+@njit(**OPTIONS)
+def surface_potential(curve, conductance, value):
+    """Potential over thickness [W m-2] above node 1: of the surface, or of what is beyond the conductance."""
+    return conductance * value if conductance > 0.0 else potential(curve, value)
+
+
+@njit(**OPTIONS)
 def place(table, piece, segment, t):
     """Put every node into the segment that holds its temperature."""
     for i in range(1, t.size):
@@ -239,20 +267,27 @@ def flux_difference(piece, surface_potential, t, flux):
 
 
 @njit(**OPTIONS)
-def settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, count):
+def settle(table, piece, segment, c, r, boundary, conductance, below, work, t, s, factored, count):
     """Solve one stage, holding at knots; True when every node ended in its segment.
 
-    `boundary` is c times the potential at the surface, `below` the potential below the base. `factored[0]` is c of
-    the factors at hand, 0 where there are none.
+    `boundary` is c times the potential above node 1, `conductance` what lies between (0: the element of node 1),
+    `below` the potential below the base. `factored` holds c and the conductance of the factors at hand, c = 0 where
+    there are none.
     """
     p, f, e, k, z = work[0], work[1], work[2], work[3], work[4]
     n = t.size
     piece[UA, n] = below
+    m = middle_of(n)
     top, base = 1, n - 1
+    if conductance > 0.0:
+        piece[U, 1] = conductance
+    if factored[0] == c and factored[1] != conductance:
+        factored[0] = 0.0
+        base = m  # the lower half knows nothing of the surface
     for _ in range(MAX_HOLDS):
         if factored[0] != c:
             factor(c, piece, p, f, e, k, top, base)
-            factored[0] = c
+            factored[0], factored[1] = c, conductance
             count[FACTORS] += 1
         b = n - 1  # the potential below may have changed since the factors were made
         k[b] = c * (piece[VA, b - 1] - piece[UA, b] - piece[VA, b] + piece[UA, n]) - piece[A, b]
@@ -261,7 +296,6 @@ def settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, c
         if outside == 0:
             return True
         # Hold: whoever left its segment moves to the neighbouring one, never further.
-        m = middle_of(n)
         top, base = m, m
         for i in range(1, n):
             if t[i] - piece[HI, i] > KNOT_SLACK:
@@ -274,6 +308,8 @@ def settle(table, piece, segment, c, r, boundary, below, work, t, s, factored, c
                 piece[field, i] = table[i, segment[i], field]
             top = min(top, max(1, i - 1))
             base = max(base, min(n - 1, i + 1))
+        if conductance > 0.0:
+            piece[U, 1] = conductance
         factored[0] = 0.0
     return False
 
