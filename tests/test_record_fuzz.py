@@ -10,9 +10,10 @@ import numpy as np
 from hypothesis import HealthCheck, example, given, settings
 from hypothesis import strategies as st
 
-from soiltemp.climate import read_checked
+from soiltemp.climate import read_checked, read_series
+from soiltemp.climate.quantities import quantity
 from soiltemp.errors import SoilTempError
-from tests.test_record_faults import GOOD, WAVE, assert_one_sentence, daily, hourly
+from tests.helpers.faults import GOOD, WAVE, assert_one_sentence, daily, hourly
 
 SETTINGS = settings(max_examples=300, deadline=None, suppress_health_check=[HealthCheck.too_slow])
 
@@ -141,7 +142,14 @@ def test_any_cells(data: st.DataObject) -> None:
     attempt("\n".join([header, *(mark.join(row) for row in rows)]).encode())
 
 
+GHCN_WIDE = "STATION,DATE,TMAX,TMAX_ATTRIBUTES,TMIN,TMIN_ATTRIBUTES\n" + "".join(
+    f'"USC00999901","2020-01-{day:02d}"," {5 * day}",",,7","{-50 - day}",",I,7"\n' for day in range(1, 20)
+)
 SOURCES = (
+    "".join(
+        f"USC00999901,202001{day:02d},{key},{-day},,,7,0700\n" for day in range(1, 20) for key in ("TMIN", "TMAX")
+    ).encode(),
+    GHCN_WIDE.encode(),
     GOOD.encode(),
     daily(WAVE[:60]).encode(),
     hourly("2020-03-01", 60).encode(),
@@ -171,3 +179,21 @@ def test_damaged_records(data: st.DataObject) -> None:
         else:
             del content[at:]
     attempt(bytes(content))
+
+
+@SETTINGS
+@given(st.lists(PIECES, max_size=40).map("".join), st.sampled_from(["snow_depth", "wind_speed", "solar_radiation"]))
+@example("", "snow_depth")
+def test_any_pieces_of_other_quantities(text: str, name: str) -> None:
+    """The same for other quantities, below a good header."""
+    with tempfile.TemporaryDirectory() as folder:
+        path = pathlib.Path(folder, "a.csv")
+        path.write_text(f"date,{name} [{next(iter(quantity(name).units))}]\n2020-01-01,1\n2020-01-02,2\n{text}")
+        try:
+            values = read_series(path, quantity=name).values
+        except SoilTempError as error:
+            assert_one_sentence(str(error))
+            return
+    low, high = quantity(name).allowed_range
+    assert np.isfinite(values).all()
+    assert low <= float(values.min()) <= float(values.max()) <= high

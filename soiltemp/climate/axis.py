@@ -2,20 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
 
+from soiltemp.climate.findings import TAKEN_OUT, Finding, each_run
 from soiltemp.climate.moments import counted, interval_text, show_moment
-from soiltemp.climate.quality import Finding
+from soiltemp.climate.quantities import Quantity
 from soiltemp.errors import DataFileError, message
 
 __all__ = ["RegularSeries", "regular_series"]
-
-DUPLICATE_TOLERANCE = 0.1
-"""Two values for one time that differ by no more [K] are one value written twice."""
 
 _SHORTEST, _LONGEST = 60.0, 86400.0  # s; above a day the mean hides the frosts in it
 _JITTER = 0.01  # share of the interval by which a time stamp may be off
@@ -23,6 +20,7 @@ _MOST_SAMPLES = 20_000_000  # 38 years of minutes
 _STANDARD_TIME = "bring the times to standard time or UTC, and state time_zone"
 
 Floats = npt.NDArray[np.float64]
+Lines = npt.NDArray[np.int64]
 Times = npt.NDArray[np.datetime64]
 
 
@@ -31,13 +29,13 @@ class RegularSeries:
     """Values on a regular time axis, NaN where there is none."""
 
     times: Times
-    celsius: Floats
+    values: Floats
     interval: float
     findings: tuple[Finding, ...]
 
 
 def regular_series(
-    times: Times, celsius: Floats, lines: Sequence[int] | None, source: str, column: str
+    times: Times, values: Floats, lines: Lines | None, source: str, column: str, wanted: Quantity
 ) -> RegularSeries:
     """Sort, merge repeated times, find the interval and put every value in its place.
 
@@ -45,12 +43,14 @@ def regular_series(
     ----------
     times : array of datetime64[s]
         Time of each value, in the order of the file.
-    celsius : array of float
-        Values [degC], NaN where missing.
-    lines : sequence of int, optional
+    values : array of float
+        Values [SI], NaN where missing.
+    lines : array of int, optional
         Line of the file of each value, for messages.
     source, column : str
         File and column, for messages.
+    wanted : Quantity
+        What the values are: says how far two values for one time may differ and yet be one, written twice.
 
     Returns
     -------
@@ -66,8 +66,8 @@ def regular_series(
     where = f'{source}, column "{column}"'
     findings: list[Finding] = []
     order = np.argsort(times, kind="stable")
-    seconds, values = times[order].astype("datetime64[s]").astype(np.int64), celsius[order]
-    numbers = None if lines is None else np.asarray(lines)[order]
+    seconds, values = times[order].astype("datetime64[s]").astype(np.int64), values[order]
+    numbers = None if lines is None else lines[order]
     backward = np.flatnonzero(np.diff(times) < np.timedelta64(0, "s"))
     if backward.size:
         first, last = times[backward[0] + 1], times[backward[-1] + 1]
@@ -84,8 +84,8 @@ def regular_series(
     interval = _interval(unique, where)
     _check_clock(unique, doubled, interval, where)
     if doubled.size:
-        values, finding = _merge(seconds, values, first_of, numbers, source, column)
-        findings.append(finding)
+        values, doubles = _merge(seconds, values, first_of, numbers, source, column, wanted)
+        findings += doubles
     position = _positions(unique, interval, where)
     if position.size and int(position[-1] - position[0]) + 1 > _MOST_SAMPLES:
         count = int(position[-1] - position[0]) + 1
@@ -154,17 +154,16 @@ def _place(
         findings.append(Finding("missing_edge", hit[0], hit[-1], int(cut.sum()), text, "left out"))
     values, position = values[good[0] : good[-1] + 1], position[good[0] : good[-1] + 1]
     count = int(position[-1] - position[0]) + 1
-    celsius = np.full(count, np.nan)
-    celsius[position - position[0]] = values
+    placed = np.full(count, np.nan)
+    placed[position - position[0]] = values
     start = position[0] * step + phase
     axis = (start + np.arange(count, dtype=np.int64) * step).astype("datetime64[s]")
     absent = np.ones(count, dtype=bool)
     absent[position - position[0]] = False
     if absent.any():
-        hit = axis[absent]
-        text = "times without a line in the file"
-        findings.append(Finding("missing_times", hit[0], hit[-1], int(absent.sum()), text, "treated as missing"))
-    return RegularSeries(axis, celsius, interval, tuple(findings))
+        hit, text = axis[absent], "times without a line in the file"
+        findings.append(Finding("missing_times", hit[0], hit[-1], hit.size, text, TAKEN_OUT))
+    return RegularSeries(axis, placed, interval, tuple(findings))
 
 
 def _merge(
@@ -174,7 +173,8 @@ def _merge(
     numbers: npt.NDArray[np.int64] | None,
     source: str,
     column: str,
-) -> tuple[Floats, Finding]:
+    wanted: Quantity,
+) -> tuple[Floats, tuple[Finding, ...]]:
     """One value a time: the first that is not missing; different ones are refused."""
     group = np.cumsum(first_of) - 1
     low = np.full(int(group[-1]) + 1, np.inf)
@@ -182,27 +182,28 @@ def _merge(
     good = np.isfinite(values)
     np.minimum.at(low, group[good], values[good])
     np.maximum.at(high, group[good], values[good])
-    apart = high - low > DUPLICATE_TOLERANCE + 1e-9
-    stamps = seconds[~first_of].astype("datetime64[s]")
+    apart = high - low > wanted.duplicate_tolerance * (1.0 + 1e-6)
     if apart.any():
         bad = int(np.flatnonzero(apart)[0])
         rows = np.flatnonzero(group == bad)
         moment = seconds[rows[0]].astype("datetime64[s]")
         line = "" if numbers is None else f", lines {' and '.join(str(numbers[row]) for row in rows[:2])}"
-        found = f"{low[bad]:.6g} and {high[bad]:.6g} degC for one time"
+        found = f"{low[bad]:.6g} and {high[bad]:.6g} {wanted.shown} for one time"
         if int(apart.sum()) > 1:
             found += f" (and {int(apart.sum()) - 1} more such times)"
         remedy = "delete the wrong line"
         if _clock_hour(moment, doubled=True):
             remedy += f", or, if the clock was put back in this night, {_STANDARD_TIME}"
         place = f'{source}{line}, column "{column}", {show_moment(moment)}'
-        allowed = f"one value a time, or values within {DUPLICATE_TOLERANCE:g} K"
+        allowed = f"one value a time, or values within {wanted.duplicate_tolerance:g} {wanted.difference}"
         raise DataFileError(message(place, found, allowed, remedy))
     order = np.flatnonzero(good)[::-1]
     merged = np.full(low.size, np.nan)
     merged[group[order]] = values[order]  # the first good value of each time is written last
+    again = np.bincount(group) - 1
+    stamps = seconds[first_of].astype("datetime64[s]")
     text = "times with more than one line, of the same value"
-    return merged, Finding("duplicate_times", stamps[0], stamps[-1], int(stamps.size), text, "first good one kept")
+    return merged, each_run("duplicate_times", stamps, again > 0, text, "first good one kept")
 
 
 def _clock_hour(moment: np.datetime64, *, doubled: bool) -> bool:

@@ -1,4 +1,4 @@
-"""Which column holds the time, which the temperature, and in which unit; a unit is never assumed."""
+"""Which column holds the time, which the quantity wanted, and in which unit; a unit is never assumed."""
 
 from __future__ import annotations
 
@@ -6,35 +6,22 @@ import re
 from collections.abc import Sequence
 from typing import Any
 
-import numpy as np
-import numpy.typing as npt
-
 from soiltemp.climate.column_names import check_name
 from soiltemp.climate.dates import has_date_shape
 from soiltemp.climate.moments import show_value
+from soiltemp.climate.quantities import Quantity, quantity
 from soiltemp.climate.table import TextTable, is_number
 from soiltemp.errors import DataFileError, InputError, UnitError, message
 
 __all__ = [
-    "UNITS",
     "comment_entry",
-    "find_temperature",
     "find_time",
+    "find_values",
     "header_unit",
     "named_column",
-    "read_unit",
     "settle_unit",
-    "to_celsius",
 ]
 
-UNITS = ("degC", "degF", "K")
-
-_UNIT_WORDS = {
-    "degC": ("c", "degc", "celsius", "degcelsius", "centigrade"),
-    "degF": ("f", "degf", "fahrenheit", "degfahrenheit"),
-    "K": ("k", "kelvin", "degk"),
-}
-_UNIT_OF = {word: unit for unit, words in _UNIT_WORDS.items() for word in words}
 _TIME_NAMES = frozenset(
     [
         "time",
@@ -58,85 +45,33 @@ _TIME_NAMES = frozenset(
     ]
 )
 _HOUR_NAMES = frozenset(["hour", "hr", "hours", "hour_of_day", "time", "clock", "utc_time", "lst_time"])
-_AIR_NAMES = frozenset(
-    [
-        "air_temperature",
-        "air_temp",
-        "airtemp",
-        "t_air",
-        "tair",
-        "temp_air",
-        "temperature_air",
-        "temp",
-        "temperature",
-        "t",
-        "ta",
-        "t2m",
-        "tas",
-        "t_mean",
-        "tmean",
-        "tavg",
-        "t_avg",
-        "temp_mean",
-        "temp_avg",
-        "mean_temp",
-        "mean_temperature",
-        "air_temperature_mean",
-        "mean_air_temperature",
-        "dry_bulb",
-        "dry_bulb_temperature",
-        "drybulb",
-    ]
-)
 _CLOCK = re.compile(r"\d{1,2}(:\d{2}(:\d{2})?)?|\d{3,4}")
 _LISTED = 250  # letters of column names that a message lists
-_PROBE = 50  # rows looked at to tell what a column holds
 
 
-def read_unit(text: Any) -> str | None:
-    """Unit of temperature that `text` names: ``"degC"``, ``"degF"``, ``"K"``, or None.
-
-    Examples
-    --------
-    >>> read_unit("degrees Celsius"), read_unit("K"), read_unit("mm")
-    ('degC', 'K', None)
-    """
-    clean = str(text).strip().lower().replace("℃", "degc").replace("℉", "degf")
-    clean = re.sub(r"degrees?|[°º]", "deg", clean)
-    return _UNIT_OF.get(re.sub(r"[\s_.\-]", "", clean))
-
-
-def header_unit(name: str) -> tuple[str, str | None]:
-    """Split a column name into what it names and the unit of temperature it states.
+def header_unit(name: str, wanted: Quantity | None = None) -> tuple[str, str | None]:
+    """Split a column name into what it names and the unit that it states, of the wanted quantity (temperature).
 
     Examples
     --------
     >>> header_unit("t_air [degF]"), header_unit("temp_C"), header_unit("t_daily_avg")
     (('t_air', 'degF'), ('temp', 'degC'), ('t_daily_avg', None))
+    >>> header_unit("tmax (0.1 degC)"), header_unit("depth_cm", quantity("snow_depth"))
+    (('tmax', 'tenths degC'), ('depth', 'cm'))
     """
+    read_unit = (wanted or quantity("temperature")).read_unit
     bracket = re.search(r"[\[(]([^\[\]()]*)[\])]\s*$", name)
     if bracket is not None:
         return name[: bracket.start()].strip(" _,"), read_unit(bracket.group(1))
     for pattern in (
         r"^(.*[^\W_])[\s_.,]+((?:deg|degrees?)[\s_]*[A-Za-z]+)$",
         r"^(.*\S)[\s_.,]*([°º].+)$",
+        r"^(.*[^\W_])[\s_.,]+([A-Za-z]+)$",
     ):
         match = re.match(pattern, name.strip(), re.IGNORECASE)
         if match is not None and read_unit(match.group(2)) is not None:
             return match.group(1), read_unit(match.group(2))
-    match = re.match(r"^(.*[^\W_])[\s_.,]+([A-Za-z]+)$", name.strip())
-    if match is not None and read_unit(match.group(2)) is not None:
-        return match.group(1), read_unit(match.group(2))
     return name.strip(), None
-
-
-def to_celsius(values: npt.NDArray[np.float64], unit: str) -> npt.NDArray[np.float64]:
-    """Convert temperatures (points on the scale) from `unit` to degC."""
-    if unit == "K":
-        return values - 273.15
-    if unit == "degF":
-        return (values - 32.0) / 1.8
-    return values.copy()
 
 
 def comment_entry(comments: Sequence[str], *keys: str) -> str | None:
@@ -148,8 +83,8 @@ def comment_entry(comments: Sequence[str], *keys: str) -> str | None:
     return None
 
 
-def _plain(name: str) -> str:
-    return re.sub(r"[\W_]+", "_", header_unit(name)[0].lower()).strip("_")
+def _plain(name: str, wanted: Quantity | None = None) -> str:
+    return re.sub(r"[\W_]+", "_", header_unit(name, wanted)[0].lower()).strip("_")
 
 
 def _listed(table: TextTable) -> str:
@@ -186,7 +121,7 @@ def named_column(table: TextTable, name: Any, option: str) -> int:
 
 
 def _sample(table: TextTable, index: int) -> list[str]:
-    return [cell for row in table.rows[:_PROBE] if (cell := row[index].strip())]
+    return [cell for row in table.sample if (cell := row[index].strip())]
 
 
 def _is_date_column(table: TextTable, index: int) -> bool:
@@ -259,10 +194,10 @@ def _with_hours(table: TextTable, plain: list[str], date: int) -> tuple[int, ...
     return (date,)
 
 
-def find_temperature(
-    table: TextTable, column: str | Sequence[str] | None, time_indices: tuple[int, ...]
+def find_values(
+    table: TextTable, column: str | Sequence[str] | None, time_indices: tuple[int, ...], wanted: Quantity
 ) -> tuple[int, ...]:
-    """Column of the temperature, or the two columns of the daily minimum and maximum.
+    """Column of the quantity, or the two columns of the daily minimum and maximum temperature.
 
     Parameters
     ----------
@@ -270,9 +205,12 @@ def find_temperature(
         The file.
     column : str or sequence of two str, optional
         Name of the column, or the names of minimum and maximum. Without it: the one column with a usual name
-        for air temperature, else the one column of numbers; neither may say in its name that it is something else.
+        for the quantity; of temperatures, else the one column of numbers, and neither may say in its name that it is
+        something else.
     time_indices : tuple of int
         Columns already taken by the time.
+    wanted : Quantity
+        What to look for.
 
     Returns
     -------
@@ -290,9 +228,10 @@ def find_temperature(
         if isinstance(column, str):
             return (named_column(table, column, "column"),)
         names = tuple(column) if isinstance(column, (tuple, list)) else ()
-        if len(names) != 2:
+        if len(names) != 2 or not wanted.is_temperature:
             found = f"{type(column).__name__} {show_value(column)}"
-            allowed = "one column name, or two (daily minimum, daily maximum)"
+            allowed = "one column name"
+            allowed += ", or two (daily minimum, daily maximum)" if wanted.is_temperature else f" of {wanted.noun}"
             raise InputError(message("column", found, allowed, f"choose from {_listed(table)}"))
         indices = tuple(named_column(table, name, "column") for name in names)
         if indices[0] == indices[1]:
@@ -300,15 +239,16 @@ def find_temperature(
             raise InputError(message("column", found, "two different columns", "name minimum and maximum"))
         return indices
     others = [index for index in range(len(table.header)) if index not in time_indices]
-    known = [index for index in others if _plain(table.header[index]) in _AIR_NAMES]
-    numeric = [index for index in others if _is_numeric(table, index)]
-    candidates = known or numeric
+    candidates = [index for index in others if _plain(table.header[index], wanted) in wanted.names]
+    if wanted.is_temperature:
+        candidates = candidates or [index for index in others if _is_numeric(table, index)]
     if len(candidates) == 1:
-        check_name(table.header[candidates[0]], table.source, "column", _listed(table))
+        if wanted.is_temperature:
+            check_name(table.header[candidates[0]], table.source, "column", _listed(table))
         return (candidates[0],)
-    found = f"{len(candidates) or 'no'} columns that may be the temperature"
-    remedy = f"set column to one of {_listed(table)}"
-    raise DataFileError(message(table.source, found, "one column, known by its name or alone", remedy))
+    found = f"{len(candidates) or 'no'} columns that may be the {wanted.noun}"
+    allowed = "one column, known by its name" + (" or alone" if wanted.is_temperature else "")
+    raise DataFileError(message(table.source, found, allowed, f"set column to one of {_listed(table)}"))
 
 
 def _is_numeric(table: TextTable, index: int) -> bool:
@@ -318,13 +258,17 @@ def _is_numeric(table: TextTable, index: int) -> bool:
     return sum(is_number(cell) for cell in cells) > 0.5 * len(cells)
 
 
-def settle_unit(statements: Sequence[tuple[str, str | None]], source: str, column: str) -> tuple[str, str]:
+def settle_unit(
+    statements: Sequence[tuple[str, str | None]], source: str, column: str, wanted: Quantity
+) -> tuple[str, str]:
     """One unit from all that state it (argument, header, comments), and where; none or two are an error."""
     stated = [(place, unit) for place, unit in statements if unit is not None]
     where = f'{source}, column "{column}"'
     if not stated:
-        remedy = 'give unit="degC" (or "degF", "K"), or write it in the header as "t_air [degC]"'
-        raise UnitError(message(where, "no unit of temperature", ", ".join(UNITS), remedy))
+        first, *others = (f'"{name}"' for name in wanted.units)
+        remedy = f"give unit={first} (or {', '.join(others)}), or write it in the header as "
+        remedy += f'"{"t_air" if wanted.is_temperature else wanted.name} [{first[1:-1]}]"'
+        raise UnitError(message(where, f"no unit of {wanted.noun}", ", ".join(wanted.units), remedy))
     if len({unit for _, unit in stated}) > 1:
         found = " but ".join(f"{unit} by {place}" for place, unit in stated)
         raise UnitError(message(where, found, "one unit", "correct the one that is wrong"))

@@ -13,6 +13,7 @@ from typing import Any
 
 import numpy as np
 import numpy.typing as npt
+import pandas as pd
 
 from soiltemp.climate.moments import EARLIEST, LATEST, show_moment, show_value
 from soiltemp.errors import DataFileError, InputError, message
@@ -44,7 +45,9 @@ _SHAPES = tuple(
 )
 _ZONE_TEXT = re.compile(r"(?:(?:UTC|GMT)\s*)?([+-])(\d{1,2})(?::?(\d{2}))?", re.IGNORECASE)
 
+Cells = Sequence[str] | npt.NDArray[np.str_]
 Ints = npt.NDArray[np.int64]
+Lines = Sequence[int] | npt.NDArray[np.int64]
 
 
 @dataclass(frozen=True)
@@ -87,8 +90,9 @@ def has_date_shape(text: str) -> bool:
     return any(pattern.fullmatch(shape) for pattern in _SHAPES)
 
 
-def join_date_parts(names: Sequence[str], parts: Sequence[Sequence[str]]) -> list[str]:
+def join_date_parts(names: Sequence[str], parts: Sequence[Cells]) -> list[str]:
     """Join columns year, month, day (, hour), or date and time, into one entry a row."""
+    parts = [part.tolist() if isinstance(part, np.ndarray) else part for part in parts]
     if len(names) >= 3:
         padded = [[cell.zfill(2) for cell in part] for part in parts]
         joined = ["-".join(cells) for cells in zip(*padded[:3], strict=True)]
@@ -106,9 +110,7 @@ def _hour_text(cell: str) -> str:
     return cell
 
 
-def read_dates(
-    entries: Sequence[str], lines: Sequence[int], source: str, column: str, date_order: str | None = None
-) -> Dates:
+def read_dates(entries: Cells, lines: Lines, source: str, column: str, date_order: str | None = None) -> Dates:
     """Read the time column of a record.
 
     Parameters
@@ -152,10 +154,7 @@ def read_dates(
             )
         )
     where = f'{source}, column "{column}"'
-    shapes = [entry.translate(_DIGITS) for entry in entries]
-    index_of: dict[str, list[int]] = {}
-    for index, shape in enumerate(shapes):
-        index_of.setdefault(shape, []).append(index)
+    index_of = _by_shape(entries)
     fields = np.zeros((6, len(entries)), dtype=np.int64)
     offset = np.full(len(entries), 10**6, dtype=np.int64)
     year_last = np.zeros(len(entries), dtype=bool)
@@ -168,7 +167,7 @@ def read_dates(
             remedy = "correct the date or name the right column with time_column"
             raise DataFileError(message(f'{source}, line {lines[first]}, column "{column}"', found, _ALLOWED, remedy))
         rows = np.asarray(indices)
-        texts = np.array([entries[index] for index in indices])
+        texts = entries[rows] if isinstance(entries, np.ndarray) else np.array([entries[index] for index in indices])
         date_only &= match["clock"] is None
         year_last[rows] = "year_last" in match.re.groupindex
         fields[:, rows] = _split_fields(texts, match)
@@ -177,6 +176,22 @@ def read_dates(
     note = _order_fields(fields, year_last, entries, lines, where, date_order)
     times = _assemble(fields, entries, lines, source, column)
     return _apply_offsets(times, offset, entries, lines, where, date_only, note)
+
+
+def _by_shape(entries: Cells) -> dict[str, Sequence[int] | Ints]:
+    """Places of the entries of each shape."""
+    if isinstance(entries, np.ndarray) and entries.size:
+        width = entries.dtype.itemsize // 4
+        letters = entries.view(np.uint32).reshape(entries.size, width)
+        shapes = np.where((letters >= ord("1")) & (letters <= ord("9")), np.uint32(ord("0")), letters)
+        if np.array_equal(shapes, np.broadcast_to(shapes[0], shapes.shape)):  # as in most files
+            return {str(entries[0]).translate(_DIGITS): np.arange(entries.size)}
+        codes, known = pd.factorize(shapes.view(f"U{width}")[:, 0].astype(object))
+        return {shape: np.flatnonzero(codes == code) for code, shape in enumerate(known)}
+    index_of: dict[str, list[int]] = {}
+    for index, entry in enumerate(entries):
+        index_of.setdefault(entry.translate(_DIGITS), []).append(index)
+    return dict(index_of)
 
 
 def _slice_ints(texts: npt.NDArray[np.str_], start: int, stop: int) -> Ints:
@@ -223,8 +238,8 @@ def _offsets(texts: npt.NDArray[np.str_], match: re.Match[str], where: str) -> I
 def _order_fields(
     fields: Ints,
     year_last: npt.NDArray[np.bool_],
-    entries: Sequence[str],
-    lines: Sequence[int],
+    entries: Cells,
+    lines: Lines,
     where: str,
     date_order: str | None,
 ) -> str | None:
@@ -262,9 +277,7 @@ def _order_fields(
     return f"dates are read as {order}"
 
 
-def _assemble(
-    fields: Ints, entries: Sequence[str], lines: Sequence[int], source: str, column: str
-) -> npt.NDArray[np.datetime64]:
+def _assemble(fields: Ints, entries: Cells, lines: Lines, source: str, column: str) -> npt.NDArray[np.datetime64]:
     year, month, day, hour, minute, second = fields
     end_of_day = (hour == 24) & (minute == 0) & (second == 0)
     months = ((np.clip(year, 1, 9999) - 1970) * 12 + np.clip(month, 1, 12) - 1).astype("datetime64[M]")
@@ -289,8 +302,8 @@ def _assemble(
 def _apply_offsets(
     times: npt.NDArray[np.datetime64],
     offset: Ints,
-    entries: Sequence[str],
-    lines: Sequence[int],
+    entries: Cells,
+    lines: Lines,
     where: str,
     date_only: bool,
     note: str | None,

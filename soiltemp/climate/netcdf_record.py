@@ -10,9 +10,9 @@ import numpy as np
 import xarray as xr
 
 from soiltemp.climate.column_names import check_name
-from soiltemp.climate.columns import read_unit
 from soiltemp.climate.dates import zone_name
 from soiltemp.climate.moments import EARLIEST, LATEST, show_name, show_value
+from soiltemp.climate.quantities import Quantity
 from soiltemp.climate.raw import RawRecord, settle_zone
 from soiltemp.errors import DataFileError, InputError, UnitError, message
 
@@ -44,6 +44,7 @@ def is_netcdf(data: bytes) -> bool:
 def raw_from_netcdf(
     path: str | os.PathLike[str],
     source: str,
+    wanted: Quantity,
     *,
     column: Any,
     unit: str | None,
@@ -58,9 +59,11 @@ def raw_from_netcdf(
         The file.
     source : str
         Its name, for messages.
+    wanted : Quantity
+        What to read.
     column : str, optional
-        Name of the variable; else the one with ``standard_name = "air_temperature"``, else the one variable
-        that has a unit of temperature.
+        Name of the variable; else the one with the standard name of the quantity, else the one variable
+        that has a unit of temperature, or a usual name of another quantity.
     unit : str, optional
         Unit, where the variable has none.
     time_column : str, optional
@@ -85,7 +88,7 @@ def raw_from_netcdf(
         found = f"a NetCDF file that cannot be read ({show_value(error, 100).strip(chr(34))})"
         allowed = "a whole NetCDF file with CF times"
         raise DataFileError(message(source, found, allowed, "download or export the file again")) from error
-    variable = _choose(dataset, column, source)
+    variable = _choose(dataset, column, source, wanted)
     name = show_name(str(variable.name))
     where = f'{source}, variable "{name}"'
     time = _times_of(variable, time_column, where)
@@ -96,11 +99,12 @@ def raw_from_netcdf(
         raise DataFileError(message(where, found, "time only, one place", "take out one place or depth first"))
     if series.dtype.kind not in "fiu":
         raise DataFileError(message(where, f"values of type {series.dtype}", "numbers", "choose another variable"))
-    stated = read_unit(variable.attrs.get("units", ""))
-    wanted = unit or stated
-    if wanted is None or (stated is not None and unit is not None and stated != unit):
+    stated = wanted.read_unit(variable.attrs.get("units", ""))
+    settled = unit or stated
+    if settled is None or (stated is not None and unit is not None and stated != unit):
         found = f"units {show_value(variable.attrs.get('units', ''))}" + (f" and unit={unit} given" if unit else "")
-        raise UnitError(message(where, found, "one unit of degC, degF or K", 'correct it, or give unit="degC"'))
+        remedy = f'correct it, or give unit="{next(iter(wanted.units))}"'
+        raise UnitError(message(where, found, f"one unit of {wanted.unit_list}", remedy))
     times, lag = _moments(time, dataset, where)
     meaning = _meaning(str(variable.attrs.get("cell_methods", "")), str(time.name))
     values = series.values.astype(np.float64)
@@ -112,7 +116,7 @@ def raw_from_netcdf(
         times=times,
         values=(values,),
         lines=None,
-        unit=wanted,
+        unit=settled,
         unit_place="the attribute units" if unit is None else "the argument unit",
         date_only=bool(np.all(times == times.astype("datetime64[D]"))),
         time_zone=zone or zone_name(0),
@@ -121,7 +125,7 @@ def raw_from_netcdf(
     )
 
 
-def _choose(dataset: xr.Dataset, column: Any, source: str) -> xr.DataArray:
+def _choose(dataset: xr.Dataset, column: Any, source: str, wanted: Quantity) -> xr.DataArray:
     listed = ", ".join(show_value(name) for name in list(dataset.data_vars)[:30]) or "none"
     if column is not None and not isinstance(column, str):
         found = f"{type(column).__name__} {show_value(column)}"
@@ -132,19 +136,29 @@ def _choose(dataset: xr.Dataset, column: Any, source: str) -> xr.DataArray:
             raise DataFileError(message(source, found, "a variable of the file", f"set column to one of {listed}"))
         return dataset[column]
     variables = [dataset[name] for name in dataset.data_vars]
-    named = [entry for entry in variables if entry.attrs.get("standard_name") == "air_temperature"]
-    warm = [entry for entry in variables if read_unit(entry.attrs.get("units", "")) and entry.dtype.kind in "fiu"]
-    candidates = named or warm
+    named = [entry for entry in variables if entry.attrs.get("standard_name") in wanted.standard_names]
+    usable = [entry for entry in variables if _fits(entry, wanted)]
+    candidates = named or usable
     if len(candidates) != 1:
-        found = f"{len(candidates) or 'no'} variables that may be the temperature"
-        allowed = 'one with standard_name "air_temperature" or a unit of temperature'
+        found = f"{len(candidates) or 'no'} variables that may be the {wanted.noun}"
+        allowed = f'one with standard_name "{wanted.standard_names[0]}"'
+        allowed += " or a unit of temperature" if wanted.is_temperature else " or a usual name"
         raise DataFileError(message(source, found, allowed, f"set column to one of {listed}"))
     chosen = candidates[0]
+    if not wanted.is_temperature:
+        return chosen
     methods = str(chosen.attrs.get("cell_methods", ""))
     extreme = [word for word in ("maximum", "minimum") if re.search(rf"\b{word}\b", methods)]
     further = (str(chosen.attrs.get("standard_name", "")), *extreme)
     check_name(str(chosen.name), source, "variable", listed, *further)
     return chosen
+
+
+def _fits(variable: xr.DataArray, wanted: Quantity) -> bool:
+    """Whether a variable may be the quantity: by its unit, and where many things have that unit by its name as well."""
+    if variable.dtype.kind not in "fiu" or wanted.read_unit(variable.attrs.get("units", "")) is None:
+        return False
+    return wanted.is_temperature or str(variable.name).lower() in wanted.names
 
 
 def _times_of(variable: xr.DataArray, time_column: Any, where: str) -> xr.DataArray:

@@ -2,51 +2,23 @@
 
 from __future__ import annotations
 
-import math
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
-from soiltemp.climate.columns import (
-    comment_entry,
-    find_temperature,
-    find_time,
-    header_unit,
-    read_unit,
-    settle_unit,
-)
+from soiltemp.climate.columns import comment_entry, find_time, find_values, header_unit, settle_unit
 from soiltemp.climate.dates import has_date_shape, join_date_parts, read_dates, read_time_zone, zone_offset
+from soiltemp.climate.findings import Finding
+from soiltemp.climate.ghcn import ROW_NAMES, has_ghcn_rows, is_ghcn, read_ghcn
 from soiltemp.climate.moments import show_name, show_value
-from soiltemp.climate.table import TextTable, is_number, read_table
+from soiltemp.climate.quantities import Quantity
+from soiltemp.climate.table import TextTable, read_numbers, read_table
 from soiltemp.errors import DataFileError, InputError, message
 
 __all__ = ["RawRecord", "raw_from_text", "settle_zone"]
-
-_MISSING_WORDS = frozenset(
-    [
-        "na",
-        "n/a",
-        "nan",
-        "null",
-        "none",
-        "nil",
-        "nodata",
-        "m",
-        "missing",
-        "-",
-        "--",
-        "---",
-        ".",
-        "#n/a",
-        "#value!",
-        "#div/0!",
-        "#num!",
-    ]
-)
 
 
 @dataclass(frozen=True)
@@ -58,7 +30,7 @@ class RawRecord:
     times: npt.NDArray[np.datetime64]
     values: tuple[npt.NDArray[np.float64], ...]
     """One array, or two: daily minimum and maximum."""
-    lines: tuple[int, ...] | None
+    lines: npt.NDArray[np.int64] | None
     unit: str
     unit_place: str
     """Where the unit is stated."""
@@ -67,17 +39,23 @@ class RawRecord:
     meaning: str | None
     """"mean" or "point" where the file says so."""
     notes: tuple[str, ...]
+    findings: tuple[Finding, ...] = ()
+    """What the source itself says against its values; these are NaN."""
+    flagged: npt.NDArray[np.bool_] | None = None
+    """Where it does."""
 
 
 def raw_from_text(
     data: bytes,
     source: str,
+    wanted: Quantity,
     *,
     column: str | Sequence[str] | None,
     unit: str | None,
     time_column: str | Sequence[str] | None,
     time_zone: str | None,
     date_order: str | None,
+    station: str | None,
     missing_words: Sequence[str],
 ) -> RawRecord:
     """Read a delimited text file into times and numbers.
@@ -88,8 +66,10 @@ def raw_from_text(
         Content of the file.
     source : str
         Name of the file, for messages.
-    column, unit, time_column, time_zone, date_order
-        As in :func:`soiltemp.read_record`.
+    wanted : Quantity
+        What to read.
+    column, unit, time_column, time_zone, date_order, station
+        As in :func:`soiltemp.climate.read_checked`.
     missing_words : sequence of str
         Words that stand for "no value", beside the usual ones.
 
@@ -102,28 +82,36 @@ def raw_from_text(
     DataFileError, UnitError, InputError
         Whatever in the file or the options does not allow one reading.
     """
-    table = read_table(data, source)
+    table = read_table(data, source, header=ROW_NAMES if has_ghcn_rows(data) else ())
+    if is_ghcn(table) and time_column is None:
+        return _from_ghcn(table, wanted, column, unit, time_zone, station, missing_words)
+    if station is not None:
+        found = f"{show_value(station)} and a file that is not of GHCN-Daily"
+        raise InputError(message("station", found, "a station of a file of GHCN-Daily", "leave station out"))
     time_indices = find_time(table, time_column)
-    indices = find_temperature(table, column, time_indices)
+    indices = find_values(table, column, time_indices, wanted)
     if set(indices) & set(time_indices):
         name = show_name(table.header[indices[0]])
-        found = f'"{name}" as time and as temperature'
+        found = f'"{name}" as time and as {wanted.noun}'
         raise InputError(message(f"{source}, column", found, "two different columns", "set column and time_column"))
-    table, row_unit = _take_unit_row(table, time_indices, indices)
+    table, row_unit = _take_unit_row(table, time_indices, indices, wanted)
     names = [show_name(table.header[index]) for index in indices]
     label = " and ".join(names)
-    statements = [("the argument unit", unit), ("the comments", _comment_unit(table, source))]
+    statements = [("the argument unit", unit), ("the comments", _comment_unit(table, source, wanted))]
     statements += [
-        (f'the header "{name}"', header_unit(table.header[index])[1])
+        (f'the header "{name}"', header_unit(table.header[index], wanted)[1])
         for name, index in zip(names, indices, strict=True)
     ]
-    settled, place = settle_unit([*statements, ("the line below the header", row_unit)], source, label)
+    settled, place = settle_unit([*statements, ("the line below the header", row_unit)], source, label, wanted)
     time_names = [show_name(table.header[index]) for index in time_indices]
     entries = table.column(time_indices[0])
     if len(time_indices) > 1:
         entries = join_date_parts(time_names, [table.column(index) for index in time_indices])
     dates = read_dates(entries, table.lines, source, " and ".join(time_names), date_order)
-    values = tuple(_numbers(table, index, missing_words) for index in indices)
+    values = tuple(
+        read_numbers(table.column(index), table.lines, source, name, missing_words, decimal_comma=table.decimal_comma)
+        for name, index in zip(names, indices, strict=True)
+    )
     stated = dates.time_zone or _header_zone(time_names)
     zone = settle_zone(time_zone, stated, comment_entry(table.comments, "time_zone", "timezone"), source)
     return RawRecord(
@@ -141,34 +129,53 @@ def raw_from_text(
     )
 
 
+def _from_ghcn(
+    table: TextTable,
+    wanted: Quantity,
+    column: str | Sequence[str] | None,
+    unit: str | None,
+    time_zone: str | None,
+    station: str | None,
+    missing_words: Sequence[str],
+) -> RawRecord:
+    found = read_ghcn(table, wanted, column=column, station=station, missing_words=missing_words, unit=unit)
+    return RawRecord(
+        source=table.source,
+        column=found.column,
+        times=found.days,
+        values=found.values,
+        lines=found.lines,
+        unit=found.unit,
+        unit_place="the form of GHCN-Daily" if unit is None else "the argument unit",
+        date_only=True,
+        time_zone=settle_zone(time_zone, None, comment_entry(table.comments, "time_zone", "timezone"), table.source),
+        meaning="mean" if found.is_mean else None,
+        notes=(*table.notes, *found.notes),
+        findings=found.findings,
+        flagged=found.flagged,
+    )
+
+
 def _take_unit_row(
-    table: TextTable, time_indices: tuple[int, ...], indices: tuple[int, ...]
+    table: TextTable, time_indices: tuple[int, ...], indices: tuple[int, ...], wanted: Quantity
 ) -> tuple[TextTable, str | None]:
     """Take off a line of units below the header, as loggers write it."""
-    first = table.rows[0]
-    unit = read_unit(first[indices[0]].strip("[]() "))
-    if unit is None or has_date_shape(first[time_indices[0]]) or len(table.rows) < 2:
+    first = table.sample[0]
+    unit = wanted.read_unit(first[indices[0]].strip("[]() "))
+    if unit is None or has_date_shape(first[time_indices[0]]) or table.lines.size < 2:
         return table, None
-    shorter = TextTable(
-        table.source,
-        table.comments,
-        table.header,
-        table.rows[1:],
-        table.lines[1:],
-        table.delimiter,
-        table.notes,
-    )
-    return shorter, unit
+    return table.without_first_row(), unit
 
 
-def _comment_unit(table: TextTable, source: str) -> str | None:
-    text = comment_entry(table.comments, "unit", "units", "temperature_unit", "temperature_units")
+def _comment_unit(table: TextTable, source: str, wanted: Quantity) -> str | None:
+    own = (f"{wanted.name}_unit", f"{wanted.name}_units")
+    text = comment_entry(table.comments, *own, "unit", "units")
     if text is None:
         return None
-    unit = read_unit(text)
+    unit = wanted.read_unit(text)
     if unit is None:
         where, found = f"{source}, comment", f"unit {show_value(text)}"
-        raise DataFileError(message(where, found, "degC, degF or K", "correct the comment or delete it"))
+        raise DataFileError(message(where, found, wanted.unit_list, "correct the comment or delete it"))
     return unit
 
 
@@ -230,31 +237,3 @@ def settle_zone(given: str | None, stated: str | None, comment: str | None, sour
         remedy = "leave time_zone out, or correct it"
         raise DataFileError(message(source, found, f"time_zone {argument} as stated", remedy))
     return argument
-
-
-def _numbers(table: TextTable, index: int, missing_words: Sequence[str]) -> npt.NDArray[np.float64]:
-    """Numbers of a column, NaN where the cell is empty or says that there is none."""
-    cells = table.column(index)
-    words = _MISSING_WORDS | {word.lower() for word in missing_words}
-    comma = table.decimal_comma and _uses_comma(cells)
-    known: dict[str, float] = {}
-    for cell in set(cells):
-        text = cell.replace("\u2212", "-")
-        if comma:
-            text = text.replace(",", ".") if "." not in text else text + ","  # a point beside commas is no number
-        if is_number(text) and math.isfinite(float(text)):
-            known[cell] = float(text)
-        elif not cell or cell.lower() in words:
-            known[cell] = np.nan
-    result: list[Any] = [known.get(cell) for cell in cells]
-    if None in result:
-        row = result.index(None)
-        allowed = "a number" + (" with decimal comma" if comma else "") + ", an empty cell or NA"
-        remedy = "correct the line, or name the mark in missing_values"
-        place = f'{table.source}, line {table.lines[row]}, column "{show_name(table.header[index])}"'
-        raise DataFileError(message(place, show_value(cells[row]), allowed, remedy))
-    return np.array(result, dtype=np.float64)
-
-
-def _uses_comma(cells: Sequence[str]) -> bool:
-    return any("," in cell for cell in cells)

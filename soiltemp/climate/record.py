@@ -1,4 +1,4 @@
-"""Read a temperature record from a file, check it, and put it on a regular time axis."""
+"""Read a record of weather from a file, check it, and put it on a regular time axis."""
 
 from __future__ import annotations
 
@@ -10,46 +10,37 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
-import numpy as np
-import numpy.typing as npt
 import xarray as xr
 
-from soiltemp.climate.axis import regular_series
-from soiltemp.climate.columns import to_celsius
-from soiltemp.climate.gaps import fill_gaps
-from soiltemp.climate.moments import counted, interval_text, show_moment, show_value
+from soiltemp.climate.checked import check_raw
+from soiltemp.climate.findings import QualityReport
+from soiltemp.climate.moments import show_value
 from soiltemp.climate.netcdf_record import is_netcdf, raw_from_netcdf
-from soiltemp.climate.options import STAMPS, ReadingKeywords, ReadingOptions
-from soiltemp.climate.quality import (
-    IMPOSSIBLE,
-    TAKEN_OUT,
-    Finding,
-    QualityReport,
-    check_unit_plausible,
-    find_jumps,
-    mask_impossible,
-    mask_sentinels,
-    mask_stuck,
-)
-from soiltemp.climate.raw import RawRecord, raw_from_text
+from soiltemp.climate.options import ReadingKeywords, ReadingOptions
+from soiltemp.climate.raw import raw_from_text
 from soiltemp.errors import DataFileError, InputError, message
 
 if TYPE_CHECKING:
     from typing_extensions import Unpack
 
-__all__ = ["CheckedRecord", "read_checked", "read_record"]
+__all__ = ["CheckedRecord", "CheckedSeries", "read_checked", "read_record", "read_series"]
 
-_MOST_SWAPPED = 0.01
-_MOST_BYTES = 1_000_000_000  # a year of minutes takes about 15 MB as text
-
-Floats = npt.NDArray[np.float64]
+_MOST_BYTES = 1_000_000_000  # forty years of minutes take about 500 MB as text, forty years of hours 8 MB
 
 
 @dataclass(frozen=True)
 class CheckedRecord:
-    """A record that may be used, and the report of its checks."""
+    """A temperature record that may be used, and the report of its checks."""
 
     temperature: xr.DataArray
+    report: QualityReport
+
+
+@dataclass(frozen=True)
+class CheckedSeries:
+    """A record of any quantity that may be used, and the report of its checks."""
+
+    values: xr.DataArray
     report: QualityReport
 
 
@@ -99,11 +90,14 @@ def read_checked(
     values: str | None = None,
     stamp_at: str = "start",
     longest_gap: Any = "3 days",
+    gap_filling: str = "interpolation",
+    longest_climatology_gap: Any = "60 days",
     start: Any = None,
     end: Any = None,
     missing_values: Sequence[float | str] = (),
-    allowed_range: tuple[Any, Any] = IMPOSSIBLE,
+    allowed_range: tuple[Any, Any] | None = None,
     stuck_after: Any = None,
+    station: str | None = None,
 ) -> CheckedRecord:
     r"""Read a temperature record and say what its checks found.
 
@@ -111,13 +105,13 @@ def read_checked(
     ----------
     path : path
         CSV file (UTF-8, UTF-16 or Latin-1; comments start with ``#``; one header line; columns separated by
-        commas, semicolons or tabs; decimal comma where the comma does not separate columns) or NetCDF file
-        (CF).
+        commas, semicolons or tabs; decimal comma where the comma does not separate columns), CSV file of GHCN-Daily
+        (NOAA NCEI; one value a line, or one day a line; known by its header or its first line), or NetCDF file (CF).
     column : str or (str, str), optional
         Column or variable of the temperature; two names are the daily minimum and maximum, whose mean is
         taken. Without it there must be one candidate only, whose name does not tell that it is something else
-        (maximum, dew point, soil...).
-    unit : {"degC", "degF", "K"}, optional
+        (maximum, dew point, soil...). Of GHCN-Daily, an element; else the mean of TMIN and TMAX.
+    unit : {"degC", "degF", "K", "tenths degC"}, optional
         Unit, where neither the header (``t_air [degF]``, ``temp_C``), a comment (``# unit: degC``) nor the
         attributes state it. A unit is never assumed.
     time_column : str or sequence of str, optional
@@ -134,25 +128,33 @@ def read_checked(
     stamp_at : {"start", "middle", "end"}
         Where in its interval the time of a mean stands in the file; in the result it always is the start.
     longest_gap : str or float
-        Longest gap that is filled by interpolation, up to 30 days; longer ones are refused. Linear
+        Longest gap that is filled by interpolation, up to 30 days. Linear
         interpolation over more than a few hours of an hourly record loses the daily wave.
+    gap_filling : {"interpolation", "climatology"}
+        What is done about longer gaps: they are refused; or filled by climatology plus anomaly, which is what the day
+        of the year and the hour let expect from at least 3 years of every season, plus what the days before and
+        after the gap deviate from it, fading as fast as the record forgets it.
+    longest_climatology_gap : str or float
+        Longest gap that climatology may fill, up to 92 days; longer ones are refused.
     start, end : str or datetime64, optional
         Time to use; means must lie wholly inside, points may stand on either end. The record must cover it.
     missing_values : sequence of float or str
         Further numbers (in the unit of the file) or words that stand for "no value".
     allowed_range : (low, high)
-        Possible temperatures [degC]; -90 to 60 for air.
+        Possible temperatures [degC]; -90 to 60 unless stated.
     stuck_after : str or float, optional
         Time for which the same value marks a stuck sensor: 5 days for daily values and 1 day for shorter
         intervals unless stated; ``"never"`` for deep ground.
+    station : str, optional
+        Station of a GHCN-Daily file that holds several.
 
     Returns
     -------
     CheckedRecord
         ``temperature``: DataArray over ``time`` (regular, datetime64[ns], the clock as stated in the
-        attribute ``time_zone``), float64 [degC], with the coordinate ``filled`` (0 measured, 1 interpolated)
-        and the attributes ``units``, ``long_name``, ``cell_methods``, ``interval``, ``time_zone``,
-        ``source_file``, ``source_sha256``, ``quality_report``. Of means, ``time`` is the start of the
+        attribute ``time_zone``), float64 [degC], with the coordinate ``filled`` (0 measured, 1 interpolated,
+        2 climatology plus anomaly) and the attributes ``units``, ``long_name``, ``cell_methods``, ``interval``,
+        ``time_zone``, ``source_file``, ``source_sha256``, ``quality_report``. Of means, ``time`` is the start of the
         interval. ``report``: what the checks found.
 
     Raises
@@ -176,26 +178,78 @@ def read_checked(
     >>> [finding.kind for finding in checked.report.findings], float(checked.temperature[8].round(6))
     (['assumption', 'sentinel', 'gap_filled'], -4.5)
     """
-    options = ReadingOptions.read(
-        unit, values, stamp_at, longest_gap, start, end, missing_values, allowed_range, stuck_after
-    )
+    values_and_report = _read(
+        path, "temperature", column=column, unit=unit, time_column=time_column, time_zone=time_zone,
+        date_order=date_order, values=values, stamp_at=stamp_at, longest_gap=longest_gap, gap_filling=gap_filling,
+        longest_climatology_gap=longest_climatology_gap, start=start, end=end, missing_values=missing_values,
+        allowed_range=allowed_range, stuck_after=stuck_after, station=station,
+    )  # fmt: skip
+    return CheckedRecord(*values_and_report)
+
+
+def read_series(
+    path: str | os.PathLike[str], *, quantity: str = "temperature", **options: Unpack[ReadingKeywords]
+) -> CheckedSeries:
+    r"""Read a record of any quantity and say what its checks found.
+
+    Parameters
+    ----------
+    path : path
+        CSV or NetCDF file.
+    quantity : {"temperature", "snow_depth", "wind_speed", "solar_radiation"}
+        What to read.
+    **options
+        Keywords of :func:`soiltemp.climate.read_checked`. Units of snow depth are m, cm, mm, in and ft, of wind speed
+        m/s, km/h, mph, kn and ft/s, of solar radiation W/m^2, kW/m^2, MJ/m^2/day, J/cm^2/day and kWh/m^2/day, and
+        tenths of each. `gap_filling` by climatology is for temperatures only.
+
+    Returns
+    -------
+    CheckedSeries
+        ``values``: DataArray over ``time`` as that of `read_checked`, in degC, m, m/s or W/m^2. Snow depths are
+        readings (``cell_methods = "time: point"``) unless stated otherwise.
+
+    Raises
+    ------
+    DataFileError, UnitError, InputError
+        As `read_checked`. Negative values are impossible, but for the zero error of radiometers, which is set to 0.
+
+    Notes
+    -----
+    Only a temperature is looked at for spikes, jumps, outliers against the season and step changes. Snow may lie
+    unchanged, so a repeated depth is no fault unless `stuck_after` is stated; neither is calm air, nor a dark sky.
+
+    Examples
+    --------
+    >>> import pathlib, tempfile
+    >>> with tempfile.TemporaryDirectory() as folder:
+    ...     path = pathlib.Path(folder, "snow.csv")
+    ...     _ = path.write_text("date,snow_depth [cm]\n2020-01-01,0\n2020-01-02,12\n2020-01-03,11\n")
+    ...     snow = read_series(path, quantity="snow_depth").values
+    >>> snow.values.tolist(), snow.attrs["units"], snow.attrs["cell_methods"]
+    ([0.0, 0.12, 0.11], 'm', 'time: point')
+    """
+    return CheckedSeries(*_read(path, quantity, **options))
+
+
+def _read(path: Any, quantity: Any, **keywords: Any) -> tuple[xr.DataArray, QualityReport]:
+    places = {
+        name: keywords.pop(name, None) for name in ("column", "time_column", "time_zone", "date_order", "station")
+    }
+    options = ReadingOptions.read(quantity_name=quantity, **keywords)
     data, source = _load(path)
     if is_netcdf(data):
-        raw = raw_from_netcdf(
-            path, source, column=column, unit=options.unit, time_column=time_column, time_zone=time_zone
-        )
+        if places["station"] is not None:
+            found = f"{show_value(places['station'])} and a NetCDF file"
+            allowed = "a station of a file of GHCN-Daily"
+            raise InputError(message("station", found, allowed, "leave station out"))
+        del places["station"], places["date_order"]
+        raw = raw_from_netcdf(path, source, options.wanted, unit=options.unit, **places)
     else:
         raw = raw_from_text(
-            data,
-            source,
-            column=column,
-            unit=options.unit,
-            time_column=time_column,
-            time_zone=time_zone,
-            date_order=date_order,
-            missing_words=options.missing_words,
+            data, source, options.wanted, unit=options.unit, missing_words=options.missing_words, **places
         )
-    return _check(raw, options, hashlib.sha256(data).hexdigest())
+    return check_raw(raw, options, hashlib.sha256(data).hexdigest())
 
 
 def _load(path: Any) -> tuple[bytes, str]:
@@ -222,220 +276,3 @@ def _load(path: Any) -> tuple[bytes, str]:
     found = f"a device, pipe or socket at {show_value(place, 200)}"
     allowed = f"a regular CSV or NetCDF file of up to {_MOST_BYTES / 1e9:g} GB"
     raise DataFileError(message(source, found, allowed, "give the path of such a file"))
-
-
-def _check(raw: RawRecord, options: ReadingOptions, sha256: str) -> CheckedRecord:
-    """Judge the values, bring them to a regular axis, fill short gaps, label."""
-    where = f'{raw.source}, column "{raw.column}"'
-    notes = [Finding("note", None, None, 1, note, "as read") for note in raw.notes]
-    raw = _select(raw, options, where)
-    celsius, findings = _judge(raw, options, where)
-    series = regular_series(raw.times, celsius, raw.lines, raw.source, raw.column)
-    interval = series.interval
-    meaning, assumed = _meaning(raw, options, interval, where)
-    times = series.times
-    if meaning == "mean":
-        times = times - np.timedelta64(round(STAMPS[options.stamp_at] * interval), "s")
-    elif options.stamp_at != "start":
-        found = f'stamp_at "{options.stamp_at}" with point values'
-        raise InputError(message("stamp_at", found, "means over an interval", 'leave it out, or state values="mean"'))
-    stuck_free, stuck = mask_stuck(times, series.celsius, interval, options.stuck_after)
-    out = tuple(run for run in stuck if run.action == TAKEN_OUT)
-    jumps = find_jumps(times, stuck_free, interval)
-    low, high, trimmed = _window(times, stuck_free, interval, meaning, options, where)
-    good = np.flatnonzero(np.isfinite(stuck_free))
-    before, after = int(good[good <= low][-1]), int(good[good >= high][0])
-    reach = slice(before, after + 1)  # a gap across start or end is filled from both its sides, then cut
-    filled, flags, gaps = fill_gaps(times[reach], stuck_free[reach], interval, options.longest_gap, where, stuck=out)
-    inside = slice(low - before, high - before + 1)
-    times, filled, flags = times[low : high + 1], filled[inside], flags[inside]
-    everything = (*notes, *assumed, *findings, *series.findings, *stuck, *trimmed, *jumps, *gaps)
-    reading = f'read: column "{raw.column}" in {raw.unit}, as stated by {raw.unit_place}'
-    count = int(flags.sum())
-    report = QualityReport(raw.source, times[0], times[-1], interval, filled.size, count, everything, reading)
-    return CheckedRecord(_label(raw, times, filled, flags, interval, meaning, report, sha256), report)
-
-
-def _select(raw: RawRecord, options: ReadingOptions, where: str) -> RawRecord:
-    """Leave out what lies outside start and end, but for a margin that gaps are interpolated from."""
-    if options.start is None and options.end is None:
-        return raw
-    margin = np.timedelta64(round(options.longest_gap) + 3 * 86400, "s")
-    keep = np.ones(raw.times.size, dtype=bool)
-    if options.start is not None:
-        keep &= raw.times >= options.start - margin
-    if options.end is not None:
-        keep &= raw.times <= options.end + margin
-    if not keep.any():
-        found = f"values from {show_moment(raw.times.min())} to {show_moment(raw.times.max())}"
-        raise DataFileError(message(where, found, f"values from {_span(options)}", "correct start and end"))
-    lines = None if raw.lines is None else tuple(np.asarray(raw.lines)[keep].tolist())
-    return RawRecord(
-        source=raw.source,
-        column=raw.column,
-        times=raw.times[keep],
-        values=tuple(array[keep] for array in raw.values),
-        lines=lines,
-        unit=raw.unit,
-        unit_place=raw.unit_place,
-        date_only=raw.date_only,
-        time_zone=raw.time_zone,
-        meaning=raw.meaning,
-        notes=raw.notes,
-    )
-
-
-def _span(options: ReadingOptions) -> str:
-    first = "the first" if options.start is None else show_moment(options.start)
-    last = "the last" if options.end is None else show_moment(options.end)
-    return f"{first} to {last}"
-
-
-def _judge(raw: RawRecord, options: ReadingOptions, where: str) -> tuple[Floats, tuple[Finding, ...]]:
-    """Values in degC without sentinels and impossible ones; the mean of minimum and maximum if asked."""
-    findings: list[Finding] = []
-    arrays = []
-    days = float((raw.times.max() - raw.times.min()) / np.timedelta64(1, "D"))
-    for array in raw.values:
-        bare, sentinels = mask_sentinels(raw.times, array, raw.unit, options.missing_numbers)
-        celsius = to_celsius(bare, raw.unit)
-        check_unit_plausible(celsius, days, raw.unit, where, options.allowed_range)
-        celsius, impossible = mask_impossible(
-            raw.times, celsius, raw.lines, raw.source, raw.column, options.allowed_range
-        )
-        findings += [*sentinels, *impossible]
-        arrays.append(celsius)
-    if not any(np.isfinite(array).any() for array in arrays):
-        found = f"{raw.times.size} rows without a number"
-        raise DataFileError(message(where, found, "temperatures", "check the column, and the export"))
-    empty = int(sum(np.isnan(array).sum() for array in raw.values))
-    if empty:
-        hit = raw.times[np.isnan(raw.values[0]) | np.isnan(raw.values[-1])]
-        findings.append(Finding("missing_value", hit.min(), hit.max(), empty, "cells without a number", "as missing"))
-    if len(arrays) == 1:
-        return arrays[0], tuple(findings)
-    low, high = arrays
-    swapped = np.isfinite(low) & np.isfinite(high) & (low > high)
-    if swapped.any():
-        first = raw.times[swapped][0]
-        if swapped.sum() > max(1, _MOST_SWAPPED * low.size):
-            found = f"a minimum above the maximum on {int(swapped.sum())} days, first on {show_moment(first)}"
-            allowed = "minimum first, maximum second"
-            raise DataFileError(message(where, found, allowed, "swap the two names in column"))
-        text = "minimum above the maximum"
-        findings.append(
-            Finding("swapped", first, raw.times[swapped][-1], int(swapped.sum()), text, "treated as missing")
-        )
-    mean = np.where(swapped, np.nan, 0.5 * (low + high))
-    return mean, tuple(findings)
-
-
-def _meaning(raw: RawRecord, options: ReadingOptions, interval: float, where: str) -> tuple[str, tuple[Finding, ...]]:
-    """Whether values are means or points, and the finding that says how it was told."""
-    pair = len(raw.values) == 2
-    if pair and (interval != 86400.0 or options.values == "point"):
-        found = f"minimum and maximum every {interval_text(interval)}" if interval != 86400.0 else 'values="point"'
-        remedy = "name one column instead of two" if interval != 86400.0 else "leave values out"
-        raise DataFileError(message(where, found, "minimum and maximum of each day, whose mean is taken", remedy))
-    if options.values is not None and raw.meaning is not None and options.values != raw.meaning:
-        found = f'values "{raw.meaning}" by the file'
-        remedy = "leave values out, or correct the file"
-        raise DataFileError(message(where, found, f'"{options.values}" as stated', remedy))
-    stated = options.values or raw.meaning or ("mean" if pair else None)
-    if stated is not None:
-        return stated, ()
-    if interval >= 86400.0 and not raw.date_only:
-        found = "one value a day at a time of day, and no statement what it is"
-        remedy = 'give values="point" for a reading, or "mean" and stamp_at for its place in the day'
-        raise DataFileError(message(where, found, "means or points, stated", remedy))
-    if interval >= 86400.0:
-        text = "one value a date, taken as the mean of that day"
-        return "mean", (Finding("assumption", None, None, 1, text, 'state values="point" if it is a reading'),)
-    text = f"values every {interval_text(interval)}, taken as readings at their time"
-    return "point", (Finding("assumption", None, None, 1, text, 'state values="mean" if they are means'),)
-
-
-def _window(
-    times: npt.NDArray[np.datetime64],
-    celsius: Floats,
-    interval: float,
-    meaning: str,
-    options: ReadingOptions,
-    where: str,
-) -> tuple[int, int, tuple[Finding, ...]]:
-    """First and last index to use: from start to end, which the good values must cover."""
-    good = np.flatnonzero(np.isfinite(celsius))
-    if good.size < 2:
-        found = f"{counted(good.size, 'value')} left after equal values were taken for a stuck sensor"
-        remedy = 'if the equal values are true, set stuck_after to a longer time or "never"; else use another record'
-        raise DataFileError(message(where, found, "at least two", remedy))
-    low, high = int(good[0]), int(good[-1])
-    findings: tuple[Finding, ...] = ()
-    # the series begins and ends with numbers: what is missing there now was taken out as stuck
-    for place, edge in (("beginning", times[:low]), ("end", times[high + 1 :])):
-        if edge.size:
-            text = f"equal values at the {place}, taken for a stuck sensor"
-            action = 'left out; if they are true, set stuck_after to a longer time or "never"'
-            findings += (Finding("missing_edge", edge[0], edge[-1], edge.size, text, action),)
-    reach = np.timedelta64(round(interval) if meaning == "mean" else 0, "s")
-    first, last = times[low], times[high] + reach
-    if (options.start is not None and options.start < first) or (options.end is not None and options.end > last):
-        found = f"values from {show_moment(first)} to {show_moment(last)}"
-        remedy = "choose start and end inside, or add the missing time"
-        if findings:
-            runs = " and ".join(edge.when() for edge in findings)
-            found += f"; equal values from {runs} were taken for a stuck sensor"
-            remedy = f'if the equal values are true, set stuck_after to a longer time or "never"; else {remedy}'
-        raise DataFileError(message(where, found, f"a record that covers {_span(options)}", remedy))
-    keep = np.zeros(times.size, dtype=bool)
-    keep[low : high + 1] = True
-    if options.start is not None:
-        keep &= times >= options.start
-    if options.end is not None:
-        keep &= times + reach <= options.end
-    chosen = np.flatnonzero(keep)
-    if chosen.size < 2:
-        found = f"{chosen.size} values from {_span(options)}"
-        raise DataFileError(message(where, found, "at least two", "choose start and end further apart"))
-    return int(chosen[0]), int(chosen[-1]), findings
-
-
-def _label(
-    raw: RawRecord,
-    times: npt.NDArray[np.datetime64],
-    celsius: Floats,
-    flags: npt.NDArray[np.int8],
-    interval: float,
-    meaning: str,
-    report: QualityReport,
-    sha256: str,
-) -> xr.DataArray:
-    what = "mean of daily minimum and maximum, " if len(raw.values) == 2 else ""
-    return xr.DataArray(
-        celsius,
-        dims="time",
-        coords={
-            "time": ("time", times.astype("datetime64[ns]"), {"standard_name": "time", "long_name": "time"}),
-            "filled": (
-                "time",
-                flags,
-                {
-                    "long_name": "whether a value was interpolated",
-                    "flag_values": np.array([0, 1], dtype=np.int8),
-                    "flag_meanings": "measured interpolated",
-                },
-            ),
-        },
-        name="temperature",
-        attrs={
-            "units": "degree_Celsius",
-            "units_metadata": "temperature: on_scale",
-            "long_name": f"{what}{raw.column}",
-            "cell_methods": f"time: {meaning}",
-            "interval": interval_text(interval),
-            "time_zone": raw.time_zone or "not stated",
-            "source_file": raw.source,
-            "source_sha256": sha256,
-            "quality_report": "\n".join(report.table()),
-        },
-    )

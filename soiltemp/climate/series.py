@@ -9,8 +9,8 @@ import numpy as np
 import numpy.typing as npt
 import xarray as xr
 
-from soiltemp.climate.columns import read_unit
 from soiltemp.climate.moments import interval_text, read_duration, show_moment, show_value
+from soiltemp.climate.quantities import quantity
 from soiltemp.errors import InputError, UnitError, message
 
 __all__ = ["POSSIBLE", "TemperatureSeries", "temperature_series"]
@@ -72,7 +72,7 @@ def temperature_series(temperature: xr.DataArray, name: str = "temperature") -> 
         found += "" if "time" in temperature.coords else " and no times"
         raise InputError(message(name, found, 'the one dimension "time", with times', "select one series"))
     unit = temperature.attrs.get("units")
-    if unit is not None and read_unit(unit) != "degC":
+    if unit is not None and quantity("temperature").read_unit(unit) != "degC":
         raise UnitError(message(name, f"units {show_value(unit)}", "degree_Celsius", "convert it to degC first"))
     times = temperature["time"].values
     if times.dtype.kind != "M" or np.isnat(times).any():
