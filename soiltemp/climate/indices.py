@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-import numpy as np
 import xarray as xr
 
+from soiltemp.climate.degree_days import accumulate
 from soiltemp.climate.series import temperature_series
 
 __all__ = ["freezing_index", "thawing_index"]
@@ -15,7 +15,7 @@ def freezing_index(temperature: xr.DataArray) -> float:
 
     The degree-days of all the time below 0 degC are summed. The design index of TM 5-852-4/AFM 88-19 Chap. 4,
     the difference between the highest and the lowest point of the cumulative degree-day curve of one winter,
-    counts warm spells inside the winter against it, and is smaller.
+    counts warm spells inside the winter against it, and is smaller: :func:`soiltemp.climate.winters` gives both.
 
     Parameters
     ----------
@@ -46,13 +46,14 @@ def freezing_index(temperature: xr.DataArray) -> float:
 
     Examples
     --------
+    >>> import numpy as np
     >>> days = np.arange("2020-01-01", "2020-01-04", dtype="datetime64[D]").astype("datetime64[ns]")
     >>> air = xr.DataArray([-3.0, 2.0, -1.0], dims="time", coords={"time": days})
     >>> air.attrs["cell_methods"] = "time: mean"
     >>> freezing_index(air) / 86400.0
     4.0
     """
-    return _integral_above_zero(temperature, -1.0)
+    return float(accumulate(temperature_series(temperature)).below[-1])
 
 
 def thawing_index(temperature: xr.DataArray) -> float:
@@ -85,25 +86,11 @@ def thawing_index(temperature: xr.DataArray) -> float:
 
     Examples
     --------
+    >>> import numpy as np
     >>> days = np.arange("2020-01-01", "2020-01-04", dtype="datetime64[D]").astype("datetime64[ns]")
     >>> air = xr.DataArray([-3.0, 2.0, -1.0], dims="time", coords={"time": days})
     >>> air.attrs["cell_methods"] = "time: mean"
     >>> thawing_index(air) / 86400.0
     2.0
     """
-    return _integral_above_zero(temperature, 1.0)
-
-
-def _integral_above_zero(temperature: xr.DataArray, sign: float) -> float:
-    series = temperature_series(temperature)
-    value = sign * series.celsius
-    steps = np.diff(series.seconds)
-    if series.is_mean:
-        return float(np.sum(np.maximum(value, 0.0) * steps))
-    left, right = value[:-1], value[1:]
-    above = np.maximum(left, 0.0) + np.maximum(right, 0.0)
-    # A line from a > 0 to b < 0 is above zero for a / (a - b) of the step: area a^2 / (2 (a - b)).
-    spread = np.abs(left - right)
-    crosses = left * right < 0.0
-    share = np.divide(above, spread, out=np.ones_like(spread), where=crosses)
-    return float(np.sum(0.5 * above * share * steps))
+    return float(accumulate(temperature_series(temperature)).above[-1])

@@ -7,6 +7,7 @@ import re
 from typing import Any
 
 import numpy as np
+import numpy.typing as npt
 import xarray as xr
 
 from soiltemp.climate.moments import interval_text, read_duration, read_moment, show_value
@@ -14,7 +15,7 @@ from soiltemp.constants import DAY, HOUR, YEAR
 from soiltemp.errors import InputError, message
 from soiltemp.units import to_si
 
-__all__ = ["COLDEST_HOUR", "periodic_surface"]
+__all__ = ["COLDEST_HOUR", "alike_years", "periodic_surface"]
 
 COLDEST_HOUR = 5.0 * HOUR
 """Daily minimum [s after midnight, local standard time]: about sunrise (common practice)."""
@@ -86,25 +87,8 @@ def periodic_surface(
     level = to_si(mean, "temperature", "mean", low=-80.0, high=60.0)
     wave = to_si(amplitude, "temperature_difference", "amplitude", low=0.0, high=60.0)
     daily = to_si(daily_amplitude, "temperature_difference", "daily_amplitude", low=0.0, high=40.0)
-    if isinstance(years, bool) or not isinstance(years, (int, np.integer)) or years < 1:
-        found = f"{type(years).__name__} {show_value(years)}"
-        raise InputError(message("years", found, "a whole number, 1 or more", "give the number of years"))
-    first = read_moment(start, "start")
+    first, seconds = alike_years(start, years, every, longest=6.0 * HOUR if daily > 0.0 else 10.0 * DAY)
     calendar_year = int(first.astype("datetime64[Y]").astype(np.int64)) + 1970
-    if calendar_year + int(years) > _LAST_YEAR:
-        found = f"{years} years from {calendar_year}"
-        raise InputError(
-            message("years", found, f"a last year up to {_LAST_YEAR}", "begin earlier or take fewer years")
-        )
-    step = round(read_duration(every, "every", low=60.0, high=(6.0 * HOUR if daily > 0.0 else 10.0 * DAY)))
-    if YEAR % step != 0.0:
-        allowed = "an interval of which a whole number makes 365 days"
-        raise InputError(message("every", interval_text(step), allowed, 'take "1h" or "1D"'))
-    count = int(years) * int(YEAR) // step + 1
-    if count > _MOST_SAMPLES:
-        found = f"{count} values"
-        raise InputError(message("every", found, f"up to {_MOST_SAMPLES}", "take a longer interval or fewer years"))
-    seconds = np.arange(count, dtype=np.int64) * step
     since_coldest = seconds + int((first - _coldest_moment(coldest, calendar_year)) / np.timedelta64(1, "s"))
     since_midnight = seconds + int((first - first.astype("datetime64[D]")) / np.timedelta64(1, "s"))
     temperature = level - wave * np.cos(2.0 * np.pi * (since_coldest % int(YEAR)) / YEAR)
@@ -121,7 +105,7 @@ def periodic_surface(
             "units_metadata": "temperature: on_scale",
             "long_name": "temperature of a surface, the same every year",
             "cell_methods": "time: point",
-            "interval": interval_text(float(step)),
+            "interval": interval_text(float(seconds[1] - seconds[0])),
             "time_zone": "local standard time",
             "annual_mean": level,
             "annual_amplitude": wave,
@@ -129,6 +113,52 @@ def periodic_surface(
             "coldest": coldest,
         },
     )
+
+
+def alike_years(start: Any, years: Any, every: Any, *, longest: float) -> tuple[np.datetime64, npt.NDArray[np.int64]]:
+    """Times of years of 365 days, checked: the first moment, and seconds since then, both ends included.
+
+    Parameters
+    ----------
+    start, years, every
+        As :func:`periodic_surface` takes them.
+    longest : float
+        Longest interval that shows the waves wanted [s].
+
+    Returns
+    -------
+    first : datetime64[s]
+    seconds : array of int
+
+    Raises
+    ------
+    InputError, UnitError
+        As :func:`periodic_surface`.
+
+    Examples
+    --------
+    >>> alike_years("2019-07-01", 2, "1D", longest=86400.0)[1].size
+    731
+    """
+    if isinstance(years, bool) or not isinstance(years, (int, np.integer)) or years < 1:
+        found = f"{type(years).__name__} {show_value(years)}"
+        raise InputError(message("years", found, "a whole number, 1 or more", "give the number of years"))
+    first = read_moment(start, "start")
+    calendar_year = int(first.astype("datetime64[Y]").astype(np.int64)) + 1970
+    if calendar_year + int(years) > _LAST_YEAR:
+        found = f"{years} years from {calendar_year}"
+        raise InputError(
+            message("years", found, f"a last year up to {_LAST_YEAR}", "begin earlier or take fewer years")
+        )
+    step = round(read_duration(every, "every", low=60.0, high=longest))
+    if YEAR % step != 0.0:
+        allowed = "an interval of which a whole number makes 365 days"
+        raise InputError(message("every", interval_text(step), allowed, 'take "1h" or "1D"'))
+    count = int(years) * int(YEAR) // step + 1
+    if count > _MOST_SAMPLES:
+        found = f"{count} values"
+        raise InputError(message("every", found, f"up to {_MOST_SAMPLES}", "take a longer interval or fewer years"))
+    return first, np.arange(count, dtype=np.int64) * step
 
 
 def _coldest_moment(coldest: Any, year: int) -> np.datetime64:
