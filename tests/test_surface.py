@@ -13,7 +13,13 @@ from hypothesis import strategies as st
 
 from soiltemp.climate import freezing_index, thawing_index
 from soiltemp.errors import InputError, SoilTempError, UnitError
-from soiltemp.surface import forcing_knots, n_factor_tables, n_factors, surface_temperature_from_air
+from soiltemp.surface import (
+    PUBLISHED_FREEZING,
+    forcing_knots,
+    n_factor_tables,
+    n_factors,
+    surface_temperature_from_air,
+)
 
 DAY = 86400.0
 
@@ -58,6 +64,47 @@ def test_published_n_factors(name: str, freezing: float, thawing: float | None, 
         assert (factors.freezing, factors.thawing, factors.source) == (freezing, thawing, entry.source)
 
 
+# V. J. Lunardini, Theory of n-factors and correlation of data, Proc. Third Int. Conf. on Permafrost, 1978 (values from
+# memory): surface, freezing, thawing; a pair is a range.
+LUNARDINI = [
+    ("spruce, brush and moss over peat", 0.29, 0.37),
+    ("spruce cleared, moss and peat left", 0.25, 0.73),
+    ("turf", 0.5, 1.0),
+    ("snow", 1.0, None),
+    ("gravel", (0.6, 1.0), (1.3, 2.0)),
+    ("asphalt pavement", (0.29, 1.0), (1.4, 2.3)),
+    ("concrete pavement", (0.25, 0.95), (1.3, 2.1)),
+]
+
+
+def test_another_table_by_its_name() -> None:
+    """Complete, with ranges as ranges, marked as from memory, and kept apart from the first table."""
+    table = n_factor_tables("lunardini 1978")
+    assert list(table) == [row[0] for row in LUNARDINI]
+    for name, freezing, thawing in LUNARDINI:
+        entry = table[name]
+        assert (entry.freezing_range or entry.freezing, entry.thawing_range or entry.thawing) == (freezing, thawing)
+        assert "from memory" in entry.source
+        assert "memory" in entry.note
+        assert entry.table == "Lunardini 1978"
+    assert n_factors("turf", table="Lunardini 1978").thawing == 1.0
+    assert n_factors("turf").thawing == 0.8
+    assert all(entry.table == "TM 5-852-4" for entry in n_factor_tables().values())
+    lows = [entry.freezing_range[0] if entry.freezing_range else entry.freezing for entry in table.values()]
+    assert min(low for low in lows if low is not None) == PUBLISHED_FREEZING[0]
+
+
+def test_a_range_of_freezing_must_be_stated() -> None:
+    with pytest.raises(InputError) as caught:
+        n_factors("gravel", table="Lunardini 1978", thawing=1.5)
+    assert_sentence(caught.value, '"gravel", freezing', "0.6 to 1 in the table", "one value", "state the value")
+    both = n_factors("gravel", table="Lunardini 1978", freezing="90 %", thawing=1.5)
+    assert (both.freezing, both.thawing) == (0.9, 1.5)
+    assert "freezing stated by the user; thawing stated by the user" in both.source
+    # a range that the table leaves open above is open up to what is accepted at all
+    assert n_factors("asphalt pavement", table="Lunardini 1978", freezing=1.2, thawing=1.5).freezing == 1.2
+
+
 def test_table_is_complete() -> None:
     """No more and no fewer rows than the published table; none is a default."""
     assert list(n_factor_tables()) == [row[0] for row in TABLE_4_1]
@@ -86,6 +133,12 @@ def test_no_single_value_must_be_stated(name: str, parts: tuple[str, ...]) -> No
     [
         ("gravel", {}, ('"gravel"', '"turf"', "as numbers")),
         (3, {}, ('int "3"', '"turf"')),
+        ("gravel", {"table": "TM 5-852-4"}, ('"gravel"', '"turf"', "as numbers")),
+        ("tree-covered", {"table": "Lunardini 1978"}, ('"tree-covered"', '"gravel"')),
+        ("turf", {"table": "Lunardini"}, ('"Lunardini"', '"TM 5-852-4", "Lunardini 1978"')),
+        ("turf", {"table": 3}, ('int "3"', '"Lunardini 1978"')),
+        ("gravel", {"table": "Lunardini 1978", "freezing": 1.1}, ("1.1", "0.6 to 1")),
+        ("asphalt pavement", {"table": "Lunardini 1978", "freezing": 1.6}, ("1.6", "0.29 to 1.5")),
         ("turf", {"freezing": 0.6}, ("beside that of the table, 0.5", "leave it out")),
         ("turf", {"thawing": 0.6}, ("beside that of the table, 0.8", "leave it out")),
         ("bare soil", {"thawing": 1.3}, ("1.3", "1.4 to 3")),

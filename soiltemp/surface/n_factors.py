@@ -1,4 +1,4 @@
-"""From the air to the ground surface: n-factors, and the surface temperature as the solver integrates it.
+"""n-factors: from the freezing and thawing index of the air to that of the ground surface.
 
 An n-factor stands for snow, vegetation, sun and wind in one number, found for one kind of place; it differs
 from year to year, and decides the depth of frost. So there is none by default: the user states it, or takes
@@ -14,7 +14,6 @@ from importlib import resources
 from typing import Any
 
 import numpy as np
-import numpy.typing as npt
 import xarray as xr
 
 from soiltemp.climate.moments import show_value
@@ -28,7 +27,6 @@ __all__ = [
     "THAWING_RANGE",
     "NFactorEntry",
     "NFactors",
-    "forcing_knots",
     "n_factor_tables",
     "n_factors",
     "surface_temperature_from_air",
@@ -58,8 +56,11 @@ class NFactorEntry:
     """A row of a published table: single values where it gives them, else a range or nothing."""
 
     name: str
+    table: str
     freezing: float | None
     thawing: float | None
+    freezing_range: tuple[float, float] | None
+    freezing_range_open: bool
     thawing_range: tuple[float, float] | None
     thawing_range_open: bool
     note: str
@@ -67,40 +68,66 @@ class NFactorEntry:
 
 
 @cache
-def _entries() -> tuple[NFactorEntry, ...]:
-    table = tomllib.loads(resources.files("soiltemp").joinpath("n_factors.toml").read_text(encoding="utf-8"))
-    common = table["source"]
-    return tuple(
-        NFactorEntry(
-            name=row["name"],
-            freezing=row.get("freezing"),
-            thawing=row.get("thawing"),
-            thawing_range=tuple(row["thawing_range"]) if "thawing_range" in row else None,
-            thawing_range_open=row.get("thawing_range_open", False),
-            note=" ".join(filter(None, (row.get("note"), common["note"]))),
-            source=common["text"],
-        )
-        for row in table["surface"]
+def _tables() -> dict[str, dict[str, NFactorEntry]]:
+    """Table -> surface -> row, in the order of the file."""
+    text = resources.files("soiltemp.surface").joinpath("n_factors.toml").read_text(encoding="utf-8")
+    return {
+        table["name"]: {row["name"]: _entry(row, table) for row in table["surface"]}
+        for table in tomllib.loads(text)["table"]
+    }
+
+
+def _entry(row: dict[str, Any], table: dict[str, Any]) -> NFactorEntry:
+    ranges = {key: tuple(row[key]) if key in row else None for key in ("freezing_range", "thawing_range")}
+    return NFactorEntry(
+        name=row["name"],
+        table=table["name"],
+        freezing=row.get("freezing"),
+        thawing=row.get("thawing"),
+        freezing_range=ranges["freezing_range"],
+        freezing_range_open=row.get("freezing_range_open", False),
+        thawing_range=ranges["thawing_range"],
+        thawing_range_open=row.get("thawing_range_open", False),
+        note=" ".join(filter(None, (row.get("note"), table["note"]))),
+        source=table["source"],
     )
 
 
-def n_factor_tables() -> dict[str, NFactorEntry]:
-    """Every surface that has published n-factors here, by name.
+def n_factor_tables(table: str = "TM 5-852-4") -> dict[str, NFactorEntry]:
+    """Every surface that a published table of n-factors holds, by name.
+
+    Parameters
+    ----------
+    table : {"TM 5-852-4", "Lunardini 1978"}
+        Name of the table (letter case does not matter).
 
     Returns
     -------
     dict
         Name -> :class:`NFactorEntry`, in the order of the table.
 
+    Raises
+    ------
+    InputError
+        No such table.
+
     Examples
     --------
     >>> n_factor_tables()["turf"].freezing
     0.5
+    >>> n_factor_tables("Lunardini 1978")["gravel"].freezing_range
+    (0.6, 1.0)
     """
-    return {entry.name: entry for entry in _entries()}
+    by_name = {name.lower(): rows for name, rows in _tables().items()}
+    rows = by_name.get(table.strip().lower()) if isinstance(table, str) else None
+    if rows is None:
+        found = f"{type(table).__name__} {show_value(table)}"
+        allowed = ", ".join(show_value(name) for name in _tables())
+        raise InputError(message("n-factors, table", found, allowed, "take one of these"))
+    return dict(rows)
 
 
-def n_factors(name: str, *, freezing: Any = None, thawing: Any = None) -> NFactors:
+def n_factors(name: str, *, table: str = "TM 5-852-4", freezing: Any = None, thawing: Any = None) -> NFactors:
     """Take the n-factors of a surface from a published table.
 
     Where the table gives a range or nothing, the value must be stated; where it gives one value, none may be
@@ -110,6 +137,8 @@ def n_factors(name: str, *, freezing: Any = None, thawing: Any = None) -> NFacto
     ----------
     name : str
         Surface, as :func:`n_factor_tables` lists it (letter case does not matter).
+    table : {"TM 5-852-4", "Lunardini 1978"}
+        Table to look in; names are not sought in others.
     freezing, thawing : float or str, optional
         Value [1] where the table has no single one; within the range of the table where it gives one.
 
@@ -121,12 +150,14 @@ def n_factors(name: str, *, freezing: Any = None, thawing: Any = None) -> NFacto
     Raises
     ------
     InputError
-        No such surface; no single value in the table and none stated; or a value stated beside that of the
-        table.
+        No such surface or table; no single value in the table and none stated; or a value stated beside that
+        of the table.
 
     References
     ----------
     Departments of the Army and the Air Force, TM 5-852-4/AFM 88-19 Chap. 4 (UFC 3-130-04), Table 4-1.
+    V. J. Lunardini, Theory of n-factors and correlation of data, Proc. Third Int. Conf. on Permafrost,
+    Edmonton, 1978; values from memory.
 
     Examples
     --------
@@ -134,41 +165,44 @@ def n_factors(name: str, *, freezing: Any = None, thawing: Any = None) -> NFacto
     0.8
     >>> n_factors("bituminous pavement", thawing=1.8).thawing
     1.8
+    >>> n_factors("gravel", table="Lunardini 1978", freezing=0.9, thawing=1.5).freezing
+    0.9
     """
-    table = {entry.name.lower(): entry for entry in _entries()}
-    entry = table.get(name.strip().lower()) if isinstance(name, str) else None
+    rows = {key.lower(): row for key, row in n_factor_tables(table).items()}
+    entry = rows.get(name.strip().lower()) if isinstance(name, str) else None
     if entry is None:
         found = f"{type(name).__name__} {show_value(name)}"
-        allowed = ", ".join(show_value(known.name) for known in _entries())
+        allowed = ", ".join(show_value(known.name) for known in rows.values())
         remedy = "take one of these, or state both factors as numbers"
         raise InputError(message("n-factors, surface", found, allowed, remedy))
-    where = f'n-factors of "{entry.name}"'
-    frozen, thawed = entry.freezing, entry.thawing
-    stated = []
-    for kind, given, value in (("freezing", freezing, frozen), ("thawing", thawing, thawed)):
-        if given is not None and value is not None:
-            found = f"a {kind} factor stated beside that of the table, {value:g}"
-            remedy = "leave it out, or state both factors yourself instead of a name"
-            raise InputError(message(where, found, "the value of the table", remedy))
-        if given is not None:
-            stated.append(f"{kind} stated by the user")
-    if frozen is None:
-        frozen = _stated(freezing, where, "freezing", None, FREEZING_RANGE)
-    if thawed is None:
-        low, high = entry.thawing_range or THAWING_RANGE
-        limits = (low, THAWING_RANGE[1] if entry.thawing_range_open else high)
-        plus = "+" if entry.thawing_range_open else ""
-        shown = f"{low:g} to {high:g}{plus}" if entry.thawing_range else None
-        thawed = _stated(thawing, where, "thawing", shown, limits)
+    frozen, thawed = (_one_value(entry, kind, given) for kind, given in (("freezing", freezing), ("thawing", thawing)))
+    stated = [
+        f"{kind} stated by the user"
+        for kind, given in (("freezing", freezing), ("thawing", thawing))
+        if given is not None
+    ]
     return NFactors(frozen, thawed, "; ".join([entry.source, *stated]))
 
 
-def _stated(given: Any, where: str, kind: str, shown: str | None, limits: tuple[float, float]) -> float:
+def _one_value(entry: NFactorEntry, kind: str, given: Any) -> float:
+    """The single value of the table, or what the user states in its place."""
+    where = f'n-factors of "{entry.name}"'
+    if kind == "freezing":
+        value, span, is_open, accepted = entry.freezing, entry.freezing_range, entry.freezing_range_open, FREEZING_RANGE
+    else:
+        value, span, is_open, accepted = entry.thawing, entry.thawing_range, entry.thawing_range_open, THAWING_RANGE
+    if given is not None and value is not None:
+        found = f"a {kind} factor stated beside that of the table, {value:g}"
+        remedy = "leave it out, or state both factors yourself instead of a name"
+        raise InputError(message(where, found, "the value of the table", remedy))
+    if value is not None:
+        return value
+    low, high = span or accepted
     if given is None:
-        found = f"{shown} in the table" if shown else "no value in the table"
+        found = f"{low:g} to {high:g}{'+' if is_open else ''} in the table" if span else "no value in the table"
         remedy = f'state the value that local experience supports as "{kind}"'
         raise InputError(message(f"{where}, {kind}", found, "one value", remedy))
-    return to_si(given, "fraction", f"{where}, {kind}", low=limits[0], high=limits[1])
+    return to_si(given, "fraction", f"{where}, {kind}", low=low, high=accepted[1] if is_open else high)
 
 
 def surface_temperature_from_air(air: xr.DataArray, *, freezing_n_factor: Any, thawing_n_factor: Any) -> xr.DataArray:
@@ -226,68 +260,3 @@ def surface_temperature_from_air(air: xr.DataArray, *, freezing_n_factor: Any, t
     surface.attrs.pop("standard_name", None)  # that of the air
     temperature_series(surface, "surface temperature")
     return surface
-
-
-def forcing_knots(
-    surface: xr.DataArray, *, name: str = "surface temperature"
-) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.float64], np.datetime64]:
-    """Surface temperature as the solver integrates it: straight lines between knots.
-
-    Points are the knots. Means over intervals get a knot at each edge and in each middle, such that the mean
-    of the curve over each interval is the mean given: each day puts as much cold into the ground as the
-    record says.
-
-    Parameters
-    ----------
-    surface : xarray.DataArray
-        Temperature over ``time`` [degC], points or means, as
-        :func:`soiltemp.climate.series.temperature_series` takes it.
-    name : str
-        How to call it in a message.
-
-    Returns
-    -------
-    seconds : array of float
-        Times of the knots since `start` [s], strictly increasing from 0; of means, the last one is the end of
-        the last interval.
-    celsius : array of float
-        Temperatures at the knots [degC].
-    start : numpy.datetime64
-        Time of the first knot.
-
-    Raises
-    ------
-    InputError, UnitError
-        Fewer than two values, not finite, outside -100 to 100 degC, times that do not increase, means with a
-        gap.
-
-    Notes
-    -----
-    Of means D_0 to D_(N-1): edges ``e_k = (D_(k-1) + D_k) / 2``, with ``e_0 = D_0`` and ``e_N = D_(N-1)``;
-    middles ``m_k = 2 D_k - (e_k + e_(k+1)) / 2``. The mean over interval k is ``(e_k + 2 m_k + e_(k+1)) / 4 =
-    D_k``.
-
-    The middle of a day that is colder (warmer) than both its neighbours lies below (above) its mean, by half
-    the difference between the mean and that of the two edges; it bends to the other side nowhere. So near 0
-    degC the curve may cross it on a day whose mean does not, and the index of the curve is a little larger
-    than that of the means.
-
-    Examples
-    --------
-    >>> days = np.arange("2020-01-01", "2020-01-04", dtype="datetime64[D]").astype("datetime64[ns]")
-    >>> air = xr.DataArray([-4.0, 0.0, 4.0], dims="time", coords={"time": days})
-    >>> air.attrs["cell_methods"] = "time: mean"
-    >>> forcing_knots(air)[1].tolist()
-    [-4.0, -5.0, -2.0, 0.0, 2.0, 5.0, 4.0]
-    """
-    series = temperature_series(surface, name)
-    if not series.is_mean:
-        return series.seconds, series.celsius, series.start
-    mean, edge_times = series.celsius, series.seconds
-    edges = np.concatenate([mean[:1], 0.5 * (mean[:-1] + mean[1:]), mean[-1:]])
-    seconds = np.empty(2 * mean.size + 1)
-    celsius = np.empty_like(seconds)
-    seconds[0::2], celsius[0::2] = edge_times, edges
-    seconds[1::2] = 0.5 * (edge_times[:-1] + edge_times[1:])
-    celsius[1::2] = 2.0 * mean - 0.5 * (edges[:-1] + edges[1:])
-    return seconds, celsius, series.start
