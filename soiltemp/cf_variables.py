@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 
 from soiltemp.errors import InputError, message
 
-__all__ = ["check_names", "file_attribute", "write_numbers", "write_text"]
+__all__ = ["check_names", "file_attribute", "write_bounds", "write_numbers", "write_text"]
 
 Attributes = dict[str, Any]
 
@@ -177,6 +177,27 @@ def write_text(group: Any, name: str, variable: xr.Variable, labels: Attributes,
         target = group.createVariable(name, str, variable.dims)
         target[...] = np.array(texts, dtype=object).reshape(variable.shape) if variable.ndim else texts[0]
     target.setncatts(labels)
+
+
+def write_bounds(group: Any, name: str, bounds: str, edges: NDArray[Any]) -> None:
+    """Write the bounds of a coordinate of times, which take unit and all other attributes from it.
+
+    Parameters
+    ----------
+    group : netCDF4.Dataset or netCDF4.Group
+        Where to; it holds the coordinate.
+    name, bounds : str
+        Names of the coordinate and of its bounds.
+    edges : datetime64 (value, 2)
+        Start and end of each interval.
+    """
+    if "bnds" not in group.dimensions:
+        group.createDimension("bnds", 2)
+    of = group[name]
+    unit, _, origin = of.units.partition(" since ")
+    since = edges - np.datetime64(origin.replace(" ", "T"), "ns")
+    target = group.createVariable(bounds, of.dtype, (name, "bnds"), zlib=True, complevel=1)
+    target[...] = since / np.timedelta64(1, "ns" if unit == "nanoseconds" else "s")
 
 
 def _clean_text(where: str, text: str) -> str:

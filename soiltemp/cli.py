@@ -21,13 +21,15 @@ import numpy as np
 import xarray as xr
 
 from soiltemp.cautions import CAUTION_SHORT
+from soiltemp.cli_climate import add_climate
 from soiltemp.cli_text import summary, understood
 from soiltemp.climate.moments import show_name, show_value
 from soiltemp.errors import InputError, SoilTempError, SolverError, message
 from soiltemp.ground import Layer, Profile
 from soiltemp.materials import Material
-from soiltemp.site import Record, Site, read_site
-from soiltemp.site_run import climate_of, run, site_from_result, surface_of
+from soiltemp.site import WINTERS, Record, Site, read_site
+from soiltemp.site_run import Weather, forcing_of, read_weather, run, site_from_result
+from soiltemp.site_run.plan import plan_of
 from soiltemp.study import solve
 
 __all__ = ["main"]
@@ -183,8 +185,14 @@ def _parser() -> argparse.ArgumentParser:
     start.add_argument("site", metavar="SITE.toml|RESULT.nc", help="site file, or a result file to run again")
     start.add_argument("-o", "--output", metavar="RESULT.nc", help="file to save the result in (NetCDF)")
     start.add_argument("--picture", metavar="FILE.html", help="page with figures to write")
+    start.add_argument(
+        "--winters",
+        choices=WINTERS,
+        help="every winter of the study, or the one that is designed for; else as the site file says",
+    )
     start.add_argument("--quiet", action="store_true", help="no progress and no notices; the summary stays")
     start.set_defaults(command=_run)
+    add_climate(commands, [common], epilog=_STATUS_HELP, target=_target, progress=_Progress)
     return parser
 
 
@@ -192,25 +200,30 @@ def _parser() -> argparse.ArgumentParser:
 
 
 def _check(options: argparse.Namespace, _ending: _Ending) -> None:
-    site, climate = _load(options.site)
-    if climate is None:
-        climate = climate_of(site)
-    print("\n".join(understood(site, climate, surface_of(site, climate), options.units)))
+    site, weather = _load(options.site)
+    if weather is None:
+        weather = read_weather(site)
+    print("\n".join(understood(site, weather, forcing_of(site, weather), options.units)))
 
 
 def _run(options: argparse.Namespace, ending: _Ending) -> None:
-    site, climate = _load(options.site)
-    inputs = [Path(options.site)] + ([site.climate.path] if isinstance(site.climate, Record) else [])
+    site, weather = _load(options.site)
+    if options.winters is not None:
+        site = site.with_winters(options.winters)
+    records = [] if site.surface.exchange is None else list(site.surface.exchange.records.values())
+    records += [site.climate] if isinstance(site.climate, Record) else []
+    inputs = [Path(options.site), *(record.path for record in records)]
     targets = []
     for path, suffix, option in ((options.output, ".nc", "-o"), (options.picture, ".html", "--picture")):
         targets.append(None if path is None else _target(path, suffix, option, inputs))
-    if climate is None:
-        climate = climate_of(site)
-    surface_of(site, climate)
+    if weather is None:
+        weather = read_weather(site)
+    plan_of(site, weather)
+    forcing_of(site, weather)
     _prepare(None if options.quiet else sys.stderr)
     if not options.quiet:
         ending.progress = _Progress(sys.stderr)
-    result = run(site, progress=ending.progress, air_temperature=climate)
+    result = run(site, progress=ending.progress, weather=weather)
     if ending.progress is not None:
         ending.progress.clear()
     files = []
@@ -236,8 +249,8 @@ def _draw(result: xr.Dataset, path: Path, units: str) -> None:
     save_page(result, path, units=units)
 
 
-def _load(path: str) -> tuple[Site, xr.DataArray | None]:
-    """Site of a site file; site and temperatures of a result file."""
+def _load(path: str) -> tuple[Site, Weather | None]:
+    """Site of a site file; site and weather of a result file."""
     if path.lower().endswith(".nc"):
         from soiltemp.netcdf import open_result
 

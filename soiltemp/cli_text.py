@@ -2,90 +2,38 @@
 
 from __future__ import annotations
 
-import textwrap
-from dataclasses import dataclass
+from pathlib import Path
 
 import numpy as np
 import xarray as xr
 
 from soiltemp.cautions import CAUTION_SHORT, CAUTIONS
-from soiltemp.climate import freezing_index, thawing_index
+from soiltemp.climate import design_practices, freezing_index, thawing_index
 from soiltemp.climate.moments import interval_text, show_moment
 from soiltemp.climate.series import temperature_series
-from soiltemp.constants import DAY, HOUR
+from soiltemp.constants import DAY
 from soiltemp.cross_check import closed_form_lines
 from soiltemp.frost import days_below, extremes, heat_balance
 from soiltemp.problem import DEFAULT_MAX_STEP, DEFAULT_TOLERANCE
 from soiltemp.site import Periodic, Site
+from soiltemp.site_run import Weather
+from soiltemp.site_run.forcing import describe
 from soiltemp.surface import PUBLISHED_FREEZING
-from soiltemp.units import from_si
+from soiltemp.text_table import UNITS, Units, table_lines, wrapped
+from soiltemp.winter_text import design_lines, return_lines, winter_lines
 
 __all__ = ["summary", "understood"]
 
-WIDTH = 100
-"""Letters in a line of running text."""
 
-
-_Shown = tuple[str, str]  # how the text writes a unit, and how pint does
-UNITS: dict[str, dict[str, _Shown]] = {
-    "si": {
-        "temperature": ("degC", "degC"), "temperature_difference": ("K", "K"), "length": ("m", "m"),
-        "conductivity": ("W/(m K)", "W/(m K)"), "heat_capacity": ("MJ/(m^3 K)", "MJ/(m^3 K)"),
-        "latent_heat": ("MJ/m^3", "MJ/m^3"), "freezing_index": ("K day", "K day"), "heat_flux": ("W/m^2", "W/m^2"),
-        "heat": ("MJ/m^2", "MJ/(hour m^2)"),
-    },
-    "us": {
-        "temperature": ("degF", "degF"), "temperature_difference": ("degF", "delta_degF"), "length": ("ft", "ft"),
-        "conductivity": ("BTU/(hour ft degF)", "BTU/(hour ft delta_degF)"),
-        "heat_capacity": ("BTU/(ft^3 degF)", "BTU/(ft^3 delta_degF)"), "latent_heat": ("BTU/ft^3", "BTU/ft^3"),
-        "freezing_index": ("degF day", "delta_degF day"), "heat_flux": ("BTU/(hour ft^2)", "BTU/(hour ft^2)"),
-        "heat": ("BTU/ft^2", "BTU/(hour ft^2)"),
-    },
-}  # fmt: skip
-
-
-@dataclass(frozen=True)
-class Units:
-    """Units of the text, by kind of quantity."""
-
-    shown: dict[str, _Shown]
-
-    def value(self, value: float, kind: str) -> float:
-        """A value in the unit of the text."""
-        if kind == "heat":  # heat by area: what a heat flux brings in an hour
-            return from_si(value / HOUR, "heat_flux", self.shown[kind][1])
-        return from_si(value, kind, self.shown[kind][1])
-
-    def show(self, value: float, kind: str, digits: int = 2) -> str:
-        """A value with its unit."""
-        return f"{self.value(value, kind):.{digits}f} {self.shown[kind][0]}"
-
-
-def _table(rows: list[list[str]], left: int) -> list[str]:
-    """Rows in columns: the one numbered `left` to the left, the others to the right."""
-    widths = [max(len(row[i]) for row in rows) for i in range(len(rows[0]))]
-    aligned = [
-        [
-            cell.ljust(width) if i == left else cell.rjust(width)
-            for i, (cell, width) in enumerate(zip(row, widths, strict=True))
-        ]
-        for row in rows
-    ]
-    return [f"  {'  '.join(row)}".rstrip() for row in aligned]
-
-
-def _wrapped(text: str, first: str = "  ", rest: str = "    ") -> list[str]:
-    return textwrap.wrap(text, WIDTH, initial_indent=first, subsequent_indent=rest)
-
-
-def understood(site: Site, climate: xr.DataArray, surface: xr.DataArray, system: str) -> list[str]:
+def understood(site: Site, weather: Weather, forcing: xr.DataArray | xr.Dataset, system: str) -> list[str]:
     """What `check` says."""
     units = Units(UNITS[system])
-    study = site.study
+    study, climate = site.study, weather.temperature
     altitude = "" if site.altitude is None else f", altitude {units.show(site.altitude, 'length', 0)}"
     lines = [f"{site.name}: latitude {site.latitude:g}, longitude {site.longitude:g}{altitude}", ""]
     lines += _ground(site, units)
-    what = "ground surface" if site.surface.n_factors is None else "air"
+    is_surface = site.surface.n_factors is None and site.surface.exchange is None
+    what = "ground surface" if is_surface else "air"
     if isinstance(site.climate, Periodic):
         wave = site.climate
         lines.append(
@@ -94,27 +42,12 @@ def understood(site: Site, climate: xr.DataArray, surface: xr.DataArray, system:
             f"daily amplitude {units.show(wave.daily_amplitude, 'temperature_difference')}, coldest {wave.coldest}"
         )
     else:
-        lines.append(f"Climate: record of the {what} temperature, {site.climate.path}")
-        lines += [f"  {line}" for line in str(climate.attrs.get("quality_report", "")).split("\n")]
-        lines.append(f"  time zone: {climate.attrs.get('time_zone', 'not stated')}; {climate.attrs['cell_methods']}")
+        lines += _record_text(f"Climate: record of the {what} temperature", site.climate.path, climate)
     lines.append(f"  {_indices(climate, units)}")
+    if site.warming:
+        lines.append(f"  warming of the design life, added to it: {units.show(site.warming, 'temperature_difference')}")
     lines += ["", f"Ground surface: {site.surface.cover or 'cover not stated'}"]
-    factors = site.surface.n_factors
-    if factors is None:
-        lines.append("  no n-factors: the record is that of the surface itself")
-    else:
-        lines += _wrapped(f"n-factors: freezing {factors.freezing:g}, thawing {factors.thawing:g} ({factors.source})")
-        lines.append(f"  {_indices(surface, units)}")
-        if not PUBLISHED_FREEZING[0] <= factors.freezing <= PUBLISHED_FREEZING[1]:
-            lines += _wrapped(
-                f"Note: published n-factors of freezing lie between {PUBLISHED_FREEZING[0]:g} and "
-                f"{PUBLISHED_FREEZING[1]:g}; {factors.freezing:g} decides the depth of frost, so say why."
-            )
-        if np.diff(temperature_series(climate).seconds).max() < DAY:
-            lines += _wrapped(
-                "The factors act on every value: hours below freezing on mild days count as freezing, while published "
-                "factors relate degree-days of daily means."
-            )
+    lines += _surface_text(site, weather, forcing, units)
     lines += ["", *_line_text(site, units)]
     start = "the periodic steady state (cycle)"
     if study.initial != "cycle":
@@ -128,7 +61,8 @@ def understood(site: Site, climate: xr.DataArray, surface: xr.DataArray, system:
     tolerance = units.show(study.tolerance or DEFAULT_TOLERANCE, "temperature_difference", 3)
     return [
         *lines,
-        f"Study: {show_moment(study.start)} to {show_moment(study.end)}",
+        f"Study: {_span(study.start, study.end, climate)}",
+        *_design_text(site),
         f"  start of the run: {start}",
         f"  heat up into the base: {units.show(study.base_heat_flux, 'heat_flux', 3)}",
         f"  output every {interval_text(study.output_every)} at {depths}",
@@ -136,6 +70,60 @@ def understood(site: Site, climate: xr.DataArray, surface: xr.DataArray, system:
         "",
         CAUTION_SHORT,
     ]
+
+
+def _span(start: np.datetime64 | None, end: np.datetime64 | None, climate: xr.DataArray) -> str:
+    """Time that is studied, of the record where none is stated."""
+    times = climate["time"].values
+    first, last = (times[0] if start is None else start), (times[-1] if end is None else end)
+    return f"{show_moment(first)} to {show_moment(last)}"
+
+
+def _design_text(site: Site) -> list[str]:
+    design = site.study.design
+    if design is None:
+        return []
+    practice = design_practices()[design.practice]
+    period = "" if design.return_period is None else f", {design.return_period:g} winters"
+    made = {"closest": "the recorded winter that comes closest", "scaled": "that winter scaled to it"}[design.rule]
+    run = made if site.study.winters == "design" else "told beside the frost of every winter"
+    return wrapped(f"design freezing index: {practice.long_name}{period} ({practice.source}); {run}")
+
+
+def _record_text(title: str, path: Path, series: xr.DataArray) -> list[str]:
+    report = str(series.attrs.get("quality_report", "")).split("\n")
+    zone = series.attrs.get("time_zone", "not stated")
+    return [
+        f"{title}, {path}",
+        *(f"  {line}" for line in report),
+        f"  time zone: {zone}; {series.attrs['cell_methods']}",
+    ]
+
+
+def _surface_text(site: Site, weather: Weather, forcing: xr.DataArray | xr.Dataset, units: Units) -> list[str]:
+    """How the surface follows from the air."""
+    if site.surface.exchange is not None:
+        lines = wrapped(describe(site.surface.exchange))
+        for name, record in site.surface.exchange.records.items():
+            lines += _record_text(f"  record of the {name.replace('_', ' ')}", record.path, weather.series[name])
+        return [*lines, f"  above the ground: {_indices(forcing['exchange_temperature'], units)}"]
+    factors = site.surface.n_factors
+    if factors is None:
+        return ["  no n-factors: the record is that of the surface itself"]
+    lines = wrapped(f"n-factors: freezing {factors.freezing:g}, thawing {factors.thawing:g} ({factors.source})")
+    surface = forcing if isinstance(forcing, xr.DataArray) else forcing["exchange_temperature"]
+    lines.append(f"  {_indices(surface, units)}")
+    if not PUBLISHED_FREEZING[0] <= factors.freezing <= PUBLISHED_FREEZING[1]:
+        lines += wrapped(
+            f"Note: published n-factors of freezing lie between {PUBLISHED_FREEZING[0]:g} and "
+            f"{PUBLISHED_FREEZING[1]:g}; {factors.freezing:g} decides the depth of frost, so say why."
+        )
+    if np.diff(temperature_series(weather.temperature).seconds).max() < DAY:
+        lines += wrapped(
+            "The factors act on every value: hours below freezing on mild days count as freezing, while published "
+            "factors relate degree-days of daily means."
+        )
+    return lines
 
 
 def _ground(site: Site, units: Units) -> list[str]:
@@ -173,9 +161,9 @@ def _ground(site: Site, units: Units) -> list[str]:
         ]
         shown = [f"{units.value(value, kind):.{places}f}" for value, kind, places in cells]
         rows.append([str(number), *shown[:2], layer.name, *shown[2:]])
-        sources += _wrapped(f"{number} {layer.name}: {material.source or 'source not stated'}")
+        sources += wrapped(f"{number} {layer.name}: {material.source or 'source not stated'}")
     depth = units.show(site.profile.base, "length")
-    return [f"Ground: {len(site.profile)} layers down to {depth}", *_table(rows, 3), *sources, ""]
+    return [f"Ground: {len(site.profile)} layers down to {depth}", *table_lines(rows, 3), *sources, ""]
 
 
 def _indices(series: xr.DataArray, units: Units) -> str:
@@ -206,11 +194,11 @@ def summary(site: Site, result: xr.Dataset, system: str) -> list[str]:
     times = result["time"].values
     span = f"{show_moment(times[0])} to {show_moment(times[-1])}"
     lines = [f"{site.name}, {span}", f"  start of the run: {result.attrs['initial_state']}"]
-    if "n_factors" in result.attrs:
-        lines += _wrapped(f"n-factors: {result.attrs['n_factors']}")
+    if "surface_rule" in result.attrs:
+        lines += wrapped(f"surface: {result.attrs['surface_rule']}")
     if "quality_report" in result.attrs:
-        lines += _wrapped(f"record: {result.attrs['quality_report'].splitlines()[0]}")
-    lines.append("")
+        lines += wrapped(f"record: {result.attrs['quality_report'].splitlines()[0]}")
+    lines += ["", *design_lines(result, units)]
     zero = units.show(0.0, "temperature", 0)
     rows = [["", "greatest depth", "on", "numerical error, estimated"]]
     to_base = float(result["frost_depth"].max()) >= site.profile.base * (1.0 - 1e-9)
@@ -222,23 +210,25 @@ def summary(site: Site, result: xr.Dataset, system: str) -> list[str]:
         frozen_through = to_base and depth[deepest] >= site.profile.base * (1.0 - 1e-9)
         value = units.show(float(depth[deepest]), "length")
         rows.append([text, f"at least {value}" if frozen_through else value, on, "" if frozen_through else error])
-    lines += ["Frost", *_table(rows, 0)]
+    lines += ["Frost", *table_lines(rows, 0)]
     if to_base:
         thaw = units.show(float(result["thaw_depth"].max()), "length")
-        lines += _wrapped(
+        lines += wrapped(
             "The column is frozen to its base: the frost goes deeper than the ground described. "
             f"Greatest thaw from above: {thaw}."
         )
     lines += [
         *_coldest(site, result, units),
         "",
+        *winter_lines(result, units),
+        *return_lines(result, units),
         *_closed_forms(result, system),
         *_balance(result, units),
         "",
         "Cautions",
     ]
     for caution in CAUTIONS:
-        lines += _wrapped(caution, "  - ")
+        lines += wrapped(caution, "  - ")
     return [*lines, ""]
 
 
@@ -272,7 +262,7 @@ def _coldest(site: Site, result: xr.Dataset, units: Units) -> list[str]:
                 units.show(off, "temperature_difference", 3),
             ]
         )
-    lines = ["", "Coldest ground", *_table(rows, 0)]
+    lines = ["", "Coldest ground", *table_lines(rows, 0)]
     if site.line is not None:
         margin = float(result["frost_margin"])
         where = (
@@ -308,5 +298,5 @@ def _closed_forms(result: xr.Dataset, units: str) -> list[str]:
     for line in closed_form_lines(result, units=units):
         indent = line[: len(line) - len(line.lstrip())]
         is_text = "   " not in line.strip()
-        lines += _wrapped(line.strip(), f"  {indent}", f"    {indent}") if is_text else [f"  {line}"]
+        lines += wrapped(line.strip(), f"  {indent}", f"    {indent}") if is_text else [f"  {line}"]
     return ["Closed forms beside it", *lines, ""] if lines else []

@@ -20,14 +20,13 @@ from soiltemp.closed_form import (
     ModifiedBerggrenSteps,
     amplitude_ratio,
     damping_depth,
-    layered_modified_berggren_steps,
     layered_periodic,
-    layered_stefan_depth,
     phase_lag,
 )
 from soiltemp.constants import DAY, HOUR, YEAR
 from soiltemp.errors import InputError, message
 from soiltemp.frost import frost_depth
+from soiltemp.frost_formulas import modified_berggren_of, stefan_of, wet_layers
 from soiltemp.glossary import attributes
 from soiltemp.ground import Profile
 from soiltemp.surface import forcing_knots
@@ -95,8 +94,9 @@ def closed_forms_beside(profile: Profile, surface_temperature: xr.DataArray, res
     -------
     xr.Dataset
         Scalars: `surface_annual_mean` [degC], `surface_annual_amplitude` [K], `damping_depth_annual` [m];
-        `surface_freezing_index` [K s], `freezing_season` [s], `stefan_frost_depth`, `modified_berggren_frost_depth`
-        [m], `modified_berggren_lambda` [1]; and the numerical `maximum_frost_depth`, `maximum_frozen_ground_depth` [m].
+        `coldest_winter_freezing_index` [K s], `freezing_season` [s], `stefan_frost_depth`,
+        `modified_berggren_frost_depth` [m], `modified_berggren_lambda` [1]; and the numerical `maximum_frost_depth`,
+        `maximum_frozen_ground_depth` [m].
         By depth: `annual_amplitude_ratio` [1] and `annual_phase_lag` [s] of the numerical answer, and the same with
         `_layered` (exact without freezing) and `_uniform` (the top layer alone) behind. Each has a `comment`: why it
         may differ from the numerical answer, or why it is left out (NaN).
@@ -297,7 +297,7 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
     when = f"Winter of {winter.text}."
     names = ("stefan_frost_depth", "modified_berggren_frost_depth", "modified_berggren_lambda")
     found: dict[str, tuple[Any, str]] = {
-        "surface_freezing_index": (
+        "coldest_winter_freezing_index": (
             winter.index,
             f"{when} Warm spells inside the winter count against it." if winter.index else "The surface never freezes.",
         ),
@@ -314,14 +314,10 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
     }
     if reason:
         return found | dict.fromkeys(names, (np.nan, f"Left out: {reason}."))
-    number = max(number for number, layer in enumerate(profile.layers, 1) if layer.material.latent_heat > 0.0)
-    materials = [layer.material for layer in profile.layers[:number]]
+    number = wet_layers(profile)
     dry = f" Layer {number} is the last that holds water." if number < len(profile.layers) else ""
-    thickness = [layer.thickness for layer in profile.layers[:number]]
-    latent = [material.latent_heat for material in materials]
-    frozen = [material.conductivity_frozen for material in materials]
     found[names[0]] = _attempt(
-        lambda: layered_stefan_depth(thickness, frozen, latent, winter.index),
+        lambda: stefan_of(profile, winter.index),
         f"{when} Latent heat and frozen conductivity only; to be set beside the frozen ground, which the heat stored "
         "in the ground, left out here, makes shallower. The 0 degC line runs ahead of the ice where water freezes over "
         "a range of temperatures, and may be the deeper one.",
@@ -333,10 +329,8 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
     steps: list[ModifiedBerggrenSteps] = []
 
     def berggren() -> float:
-        conductivity = [0.5 * (material.conductivity_frozen + material.conductivity_thawed) for material in materials]
-        capacity = [0.5 * (material.heat_capacity_frozen + material.heat_capacity_thawed) for material in materials]
-        section = (thickness, conductivity, capacity, latent, winter.index)
-        steps.append(layered_modified_berggren_steps(*section, season_length=season, mean_temperature=surface.mean))
+        season_and_mean = {"season_length": season, "mean_temperature": surface.mean}
+        steps.append(modified_berggren_of(profile, winter.index, **season_and_mean))
         return steps[0].depth
 
     found[names[1]] = _attempt(
@@ -358,7 +352,7 @@ def _no_frost(profile: Profile, surface: _Surface, winter: _Winter) -> str:
     if surface.mean < 0.0:
         mean = f"the mean of the surface, {surface.mean:.1f} degC, is below freezing"
         return f"{mean}: in permafrost it is the thaw that ends at a depth"
-    if not any(layer.material.latent_heat > 0.0 for layer in profile.layers):
+    if not wet_layers(profile):
         return "no layer holds water that freezes, and these formulas know no other end of the frost"
     return ""
 
@@ -428,7 +422,7 @@ def closed_form_lines(dataset: xr.Dataset, *, units: str = "si") -> tuple[str, .
 
     mean = shown("surface_annual_mean", "temperature", 1)
     wave = shown("surface_annual_amplitude", "temperature_difference", 1)
-    index, season = shown("surface_freezing_index", "freezing_index", 0), float(dataset["freezing_season"]) / DAY
+    index, season = shown("coldest_winter_freezing_index", "freezing_index", 0), float(dataset["freezing_season"]) / DAY
     zero = "32 degF" if units == "us" else "0 degC"
     rows = (
         ("freezing index of the surface", f"{index} in {season:.0f} days"),
@@ -441,7 +435,7 @@ def closed_form_lines(dataset: xr.Dataset, *, units: str = "si") -> tuple[str, .
         ("damping depth", "damping_depth_annual"),
         ("layered", "annual_amplitude_ratio_layered"),
         ("uniform", "annual_amplitude_ratio_uniform"),
-        ("freezing index", "surface_freezing_index"),
+        ("freezing index", "coldest_winter_freezing_index"),
         ("Stefan", "stefan_frost_depth"),
         ("modified Berggren", "modified_berggren_frost_depth"),
     )

@@ -6,14 +6,8 @@ The C library under netCDF4 has no locks: two threads that use it at once end th
 
 from __future__ import annotations
 
-import errno
 import hashlib
-import importlib.metadata
 import os
-import shutil
-import stat
-import tempfile
-import threading
 from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
@@ -22,9 +16,18 @@ import numpy as np
 import xarray as xr
 
 from soiltemp.cautions import CAUTIONS
-from soiltemp.cf_variables import check_names, file_attribute, write_numbers, write_text
+from soiltemp.cf_variables import check_names, file_attribute, write_bounds, write_numbers, write_text
 from soiltemp.errors import DataFileError, InputError, message
 from soiltemp.glossary import GLOSSARY, attributes
+from soiltemp.sealed_netcdf import (
+    DAMAGE,
+    DAMAGED,
+    ONE_AT_A_TIME,
+    check_sealed,
+    iso_duration,
+    sealed_image,
+    software_version,
+)
 from soiltemp.whole_file import file_place, write_whole
 
 __all__ = ["FORMAT", "open_result", "save"]
@@ -42,21 +45,6 @@ _ADDED_TO_VARIABLES = ("coverage_content_type", "grid_mapping", "bounds", "coord
 
 _SINGLE = ("ground_temperature",)
 """Variables kept in 32 bits: half the size; a temperature is rounded by less than 4e-6 K."""
-
-_ROOM = 4_000_000
-"""Room that a file takes beyond its numbers [bytes], generously."""
-
-_SEAL = b"\nsoiltemp sha256 "
-
-_ONE_AT_A_TIME = threading.Lock()
-
-# What the readers below raise on damaged files; named one by one so that our own faults stay visible.
-_DAMAGE = (
-    *(OSError, ValueError, RuntimeError, KeyError, IndexError, AttributeError, TypeError),
-    *(OverflowError, MemoryError),
-)
-
-_DAMAGED = ("a file cut short or damaged", "a whole file", "run the study again, or take another copy")
 
 Attributes = dict[str, Any]
 
@@ -109,7 +97,9 @@ def save(result: xr.Dataset, path: str | os.PathLike[str]) -> None:
     """
     place = file_place(path, ".nc")
     root, inputs = _parts(result)
-    write_whole(_image(root, inputs), place)
+    told = _file_attributes(root, inputs)
+    image = sealed_image(lambda part: _write_file(part, root, inputs, told), root.nbytes + inputs.nbytes)
+    write_whole(image, place)
 
 
 def open_result(path: str | os.PathLike[str]) -> xr.Dataset:
@@ -134,8 +124,8 @@ def open_result(path: str | os.PathLike[str]) -> xr.Dataset:
     """
     place = Path(os.fsdecode(path))
     where = f'result "{place.name}"'
-    _check_content(place, where)
-    with _ONE_AT_A_TIME:
+    check_sealed(place, where, "a NetCDF file that save() wrote")
+    with ONE_AT_A_TIME:
         try:
             told, groups = _global_attributes(place)
             _check_origin(told, where)
@@ -143,8 +133,8 @@ def open_result(path: str | os.PathLike[str]) -> xr.Dataset:
             inputs = _read(place, "inputs") if "inputs" in groups else xr.Dataset()
         except DataFileError:
             raise
-        except _DAMAGE as error:
-            raise DataFileError(message(where, *_DAMAGED)) from error
+        except DAMAGE as error:
+            raise DataFileError(message(where, *DAMAGED)) from error
     if _study_hash(inputs) != told.get("study_sha256", ""):
         found, allowed = "inputs that are not those of its results", "the inputs as saved"
         raise DataFileError(message(f"{where}, group inputs", found, allowed, "run the study again from its site file"))
@@ -240,7 +230,7 @@ def _file_attributes(root: xr.Dataset, inputs: xr.Dataset) -> Attributes:
     """Global attributes of the file: those of the result, and those it lacks."""
     own = {name: file_attribute("result", name, value) for name, value in root.attrs.items()}
     now = datetime.now(tz=UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
-    version = _version()
+    version = software_version()
     at_site = f" at {own['site_name']}" if "site_name" in own else ""
     first, last = root["time"].values[0].astype("M8[D]"), root["time"].values[-1].astype("M8[D]")
     depth = root["depth"].values
@@ -277,10 +267,10 @@ def _extent(root: xr.Dataset) -> Attributes:
         "geospatial_vertical_units": "m",
         "time_coverage_start": str(times[0].astype("datetime64[s]")),
         "time_coverage_end": str(times[-1].astype("datetime64[s]")),
-        "time_coverage_duration": _iso_duration(times[-1] - times[0]),
+        "time_coverage_duration": iso_duration(times[-1] - times[0]),
     }
     if times.size > 1:
-        extent["time_coverage_resolution"] = _iso_duration(np.median(np.diff(times)))
+        extent["time_coverage_resolution"] = iso_duration(np.median(np.diff(times)))
     if _has_site(root):
         latitude, longitude = float(root["latitude"]), float(root["longitude"])
         extent |= {
@@ -301,52 +291,7 @@ def _has_site(root: xr.Dataset) -> bool:
     return "latitude" in root.variables and "longitude" in root.variables
 
 
-def _iso_duration(span: np.timedelta64) -> str:
-    """Duration as ISO 8601 writes it."""
-    seconds = float(span / np.timedelta64(1, "s"))
-    return f"P{seconds / 86400.0:.0f}D" if seconds % 86400.0 == 0.0 else f"PT{seconds:.15g}S"
-
-
-def _version() -> str:
-    try:
-        return importlib.metadata.version("soiltemp")
-    except importlib.metadata.PackageNotFoundError:
-        return "not installed"
-
-
 # ---- the file ------------------------------------------------------------------------------------------------
-
-
-def _image(root: xr.Dataset, inputs: xr.Dataset) -> bytes:
-    """The whole file as bytes.
-
-    It is made in the folder for temporary files, so that a full disk at its place meets a plain write: after a write
-    that failed, the library refuses to work until the process ends. (Made in its memory instead, a file loses the order
-    of its variables and nothing can be added to it later.)
-    """
-    told = _file_attributes(root, inputs)
-    try:
-        with tempfile.TemporaryDirectory(prefix="soiltemp-") as folder, _ONE_AT_A_TIME:
-            _check_room(folder, root.nbytes + inputs.nbytes + _ROOM)
-            place = Path(folder, "result.nc")
-            _write_file(place, root, inputs, told)
-            content = place.read_bytes()
-            return content + _seal(content)
-    except (OSError, RuntimeError) as error:
-        where, found = "folder for temporary files", f"that it takes no file ({error.args[-1]})"
-        remedy = "make room, or set TMPDIR to another folder"
-        raise DataFileError(message(where, found, "a folder with room for the result", remedy)) from error
-
-
-def _seal(content: bytes) -> bytes:
-    """What follows the end of the file proper: a checksum of all of it. HDF5 readers look no further than that end."""
-    return _SEAL + hashlib.sha256(content).hexdigest().encode() + b"\n"
-
-
-def _check_room(folder: str, needed: int) -> None:
-    free = shutil.disk_usage(folder).free
-    if free < needed:
-        raise OSError(errno.ENOSPC, f"{free / 1e6:.0f} MB are free, {needed / 1e6:.0f} MB may be needed")
 
 
 def _write_file(place: Path, root: xr.Dataset, inputs: xr.Dataset, told: Attributes) -> None:
@@ -355,6 +300,8 @@ def _write_file(place: Path, root: xr.Dataset, inputs: xr.Dataset, told: Attribu
     with netCDF4.Dataset(place, "w", format="NETCDF4") as file:
         _write_dataset(file, root, is_root=True)
         _write_time_bounds(file, root)
+        if "winter_bnds" in root.variables:
+            write_bounds(file, "winter", "winter_bnds", root["winter_bnds"].values)
         if _has_site(root):
             _write_site(file, root)
         if inputs.variables:
@@ -370,6 +317,8 @@ def _write_dataset(group: Any, dataset: xr.Dataset, *, is_root: bool) -> None:
         group.createDimension(dim, size)
     for key, variable in dataset.variables.items():
         name = str(key)
+        if name == "winter_bnds":
+            continue
         labels = {label: file_attribute(name, label, value) for label, value in variable.attrs.items()}
         if is_root:
             labels = _root_labels(name, dataset, labels)
@@ -400,10 +349,8 @@ def _root_labels(name: str, dataset: xr.Dataset, labels: Attributes) -> Attribut
 def _write_time_bounds(file: Any, root: xr.Dataset) -> None:
     """Means are over the time since the previous output; the first one is the value at the start."""
     if any("time: mean" in str(variable.attrs.get("cell_methods")) for variable in root.variables.values()):
-        times = file["time"][...]
-        file.createDimension("bnds", 2)
-        bounds = file.createVariable("time_bnds", file["time"].dtype, ("time", "bnds"), zlib=True, complevel=1)
-        bounds[...] = np.stack([np.concatenate([times[:1], times[:-1]]), times], axis=1)
+        times = root["time"].values
+        write_bounds(file, "time", "time_bnds", np.stack([np.concatenate([times[:1], times[:-1]]), times], axis=1))
         file["time"].bounds = "time_bnds"
 
 
@@ -421,28 +368,6 @@ def _write_site(file: Any, root: xr.Dataset) -> None:
 
 
 # ---- reading back --------------------------------------------------------------------------------------------
-
-
-def _check_content(place: Path, where: str) -> None:
-    """Look at the bytes before the library does: a damaged file can end the process in there."""
-    allowed = "a NetCDF file that save() wrote"
-    try:
-        mode = place.stat().st_mode
-        content = place.read_bytes() if stat.S_ISREG(mode) or stat.S_ISDIR(mode) else None  # a folder raises
-    except (OSError, ValueError) as error:
-        reason = str(getattr(error, "strerror", None) or error).lower()
-        found = f'no readable file at "{place}" ({reason})'
-        raise DataFileError(message(where, found, allowed, "check the path")) from error
-    if content is None:
-        found = f'a device, pipe or socket at "{place}"'
-        raise DataFileError(message(where, found, allowed, "choose a result file"))
-    if not content.startswith(b"\x89HDF\r\n\x1a\n"):
-        found = "a file of another kind" if content else "an empty file"
-        raise DataFileError(message(where, found, allowed, "choose a result file"))
-    # another program that changed the file took the seal off: then it is the library that notices a cut
-    end = content.rfind(_SEAL)
-    if end >= 0 and content[end:] != _seal(content[:end]):
-        raise DataFileError(message(where, *_DAMAGED))
 
 
 def _global_attributes(place: Path) -> tuple[Attributes, list[str]]:

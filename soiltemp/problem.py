@@ -18,7 +18,7 @@ from soiltemp.constants import DAY, YEAR
 from soiltemp.errors import InputError, UnitError, message
 from soiltemp.ground import Profile
 from soiltemp.solver.march import Schedule, make_schedule
-from soiltemp.surface import forcing_knots
+from soiltemp.surface import exchange_knots, forcing_knots
 from soiltemp.units import to_si
 
 __all__ = ["Problem", "coarsened", "is_cycle", "read_problem"]
@@ -47,6 +47,8 @@ class Problem:
         Forcing, steps and outputs.
     cycle : Schedule or None
         A year to be repeated for the start, or None where `start` is given.
+    cycle_text : str
+        What that year is.
     start : float64 (node,) or None
         Temperatures at the start [degC].
     base_flux : float
@@ -68,6 +70,7 @@ class Problem:
     column: Column
     schedule: Schedule
     cycle: Schedule | None
+    cycle_text: str
     start: Floats | None
     base_flux: float
     base_temperature: Floats | None
@@ -86,9 +89,10 @@ class Problem:
 
 def read_problem(
     profile: Profile,
-    surface_temperature: xr.DataArray,
+    surface_temperature: xr.DataArray | xr.Dataset,
     *,
     initial: Any,
+    cycle_of: xr.DataArray | xr.Dataset | None,
     base_heat_flux: Any,
     base_temperature: xr.DataArray | None,
     depths: Any,
@@ -107,7 +111,7 @@ def read_problem(
         raise InputError(
             message("profile", type(profile).__name__, "a Profile", "put the layers into soiltemp.Profile([...])")
         )
-    seconds, surface, start_time = forcing_knots(surface_temperature)
+    seconds, surface, resistance, start_time = _knots(surface_temperature, "surface temperature")
     base_flux = to_si(base_heat_flux, "heat_flux", "base_heat_flux", low=-10.0, high=10.0)
     length = float(seconds[-1])
     every = read_duration(output_every, "output_every", low=60.0, high=length)
@@ -123,16 +127,28 @@ def read_problem(
             message("base_temperature", 'initial="cycle" or a base_heat_flux beside it', "a base temperature alone",
                     "give `initial` as a profile or a temperature, and no heat flux")
         )  # fmt: skip
-    column = build_column(profile, frost_zone=_frost_zone(profile, seconds, surface))
+    cycle, cycle_text = None, ""
+    if is_cycle(initial):
+        what = "forcing" if cycle_of is None else "record"
+        cycle, cycle_text = _cycle(surface_temperature if cycle_of is None else cycle_of, start_time, step, what)
+    elif cycle_of is not None:
+        raise InputError(
+            message(
+                "cycle_of", f"a series beside initial={initial!r}"[:60], 'initial="cycle" beside it', "leave it out"
+            )
+        )
+    column = build_column(profile, frost_zone=_frost_zone(profile, seconds, surface, resistance))
     wanted = column.depths if depths is None else _depths(depths, profile)
     outputs = every * np.arange(int(length / every + 1e-9) + 1, dtype=np.float64)
     below = wanted[wanted > 0.0]
     watched = min(WATCHED_DEPTH, float(below.min())) if depths is not None and below.size else WATCHED_DEPTH
-    schedule = make_schedule(seconds, surface, outputs, max_step=step, also=None if base is None else base[0])
+    also = None if base is None else base[0]
+    schedule = make_schedule(seconds, surface, outputs, max_step=step, resistance=resistance, also=also)
     return Problem(
         column=column,
         schedule=schedule,
-        cycle=_cycle_schedule(seconds, surface, step) if is_cycle(initial) else None,
+        cycle=cycle,
+        cycle_text=cycle_text,
         start=None if is_cycle(initial) else _start(initial, column),
         base_flux=base_flux,
         base_temperature=None if base is None else np.interp(schedule.seconds, *base),
@@ -145,28 +161,59 @@ def read_problem(
     )
 
 
+def _knots(series: xr.DataArray | xr.Dataset, name: str) -> tuple[Floats, Floats, Floats | None, np.datetime64]:
+    """Times [s], temperatures [degC] and, where there is one, resistances [m2 K W-1] of a forcing; its first moment."""
+    if isinstance(series, xr.Dataset):
+        return exchange_knots(series)
+    seconds, celsius, start = forcing_knots(series, name=name)
+    return seconds, celsius, None, start
+
+
+def _cycle(series: xr.DataArray | xr.Dataset, start: np.datetime64, step: float, what: str) -> tuple[Schedule, str]:
+    """The year to be repeated, begun at the time of the year at which the run starts; and what it is, in words."""
+    seconds, celsius, resistance, first = _knots(series, "cycle_of")
+    apart = abs((_day_of_year(first) - _day_of_year(start) + 182.5) % 365.0 - 182.5)
+    if apart > 2.0:
+        raise InputError(
+            message(
+                "cycle_of", f"a series from {first} for a run from {start}", "the same day of the year, within 2 days",
+                "cut it to begin at that day",
+            )
+        )  # fmt: skip
+    years = whole_years(float(seconds[-1]))
+    text = f"the average year of the {years} whole years of the {what}"
+    if years == 1:
+        text = f"the {what}" if seconds[-1] < YEAR + 2.0 * DAY else f"the first year of the {what}"
+    return _cycle_schedule(seconds, celsius, resistance, step), text
+
+
+def _day_of_year(moment: np.datetime64) -> float:
+    return float((moment - moment.astype("datetime64[Y]")) / np.timedelta64(1, "D"))
+
+
 def is_cycle(initial: Any) -> bool:
     """Whether a study starts from the periodic steady state."""
     return isinstance(initial, str) and initial == "cycle"
 
 
-def _frost_zone(profile: Profile, seconds: Floats, surface: Floats) -> float:
+def _frost_zone(profile: Profile, seconds: Floats, surface: Floats, resistance: Floats | None) -> float:
     """Depth that frost (thaw, where the ground is frozen on average) can reach by a Stefan estimate, made generous."""
     years = max(1.0, float(seconds[-1]) / YEAR)
     index = -float(np.trapezoid(np.minimum(surface, 0.0), seconds))
     if float(np.trapezoid(surface, seconds)) < 0.0:
         index = max(index, float(np.trapezoid(np.maximum(surface, 0.0), seconds)))
     index *= 1.6 / years  # a winter far colder than the average of the series
+    above = 0.0 if resistance is None else float(resistance.min())  # m2 K W-1; the least, as in a winter without snow
     depth = 0.0
     for layer in profile.layers:
         material = layer.material
         conductivity = max(material.conductivity_frozen, material.conductivity_thawed)
         # water-poor layers freeze as fast as their heat capacity lets them: 5 K of it stands in for latent heat
         latent = max(material.latent_heat, 5.0 * material.heat_capacity_thawed)
-        resistance = layer.thickness / conductivity
-        needed = latent * layer.thickness * (depth / conductivity + 0.5 * resistance)
+        covered = depth + above * conductivity
+        needed = latent * layer.thickness * (covered + 0.5 * layer.thickness) / conductivity
         if needed >= index:
-            depth += float(np.sqrt(depth**2 + 2.0 * conductivity * index / latent) - depth)
+            depth += float(np.sqrt(covered**2 + 2.0 * conductivity * index / latent) - covered)
             break
         index -= needed
         depth += layer.thickness
@@ -246,7 +293,7 @@ def _start(initial: Any, column: Column) -> Floats:
     return np.asarray(np.interp(column.depths, depth, values))
 
 
-def _cycle_schedule(seconds: Floats, surface: Floats, step: float) -> Schedule:
+def _cycle_schedule(seconds: Floats, surface: Floats, resistance: Floats | None, step: float) -> Schedule:
     """One year to be repeated: the series itself if it is a year long, else its average year from its first day on."""
     years = whole_years(float(seconds[-1]))
     if years < 1:
@@ -256,34 +303,42 @@ def _cycle_schedule(seconds: Floats, surface: Floats, step: float) -> Schedule:
                 "give a longer series, or `initial` as a temperature or a profile",
             )
         )  # fmt: skip
-    if years == 1:
-        inside = seconds <= min(YEAR, seconds[-1])
-        bounds, values = seconds[inside], surface[inside]
-    else:
-        count = int(np.sum(seconds < YEAR))
-        bounds = np.append(seconds[:count], YEAR)
+    bounds = seconds[seconds <= YEAR] if years == 1 else np.append(seconds[seconds < YEAR], YEAR)
+
+    def average(values: Floats) -> Floats:
         total = np.zeros(bounds.size)
         for index in range(years):
-            total += np.interp(bounds + index * YEAR, seconds, surface)
-        values = total / years
-    # the end of the year leads back to its beginning
-    values = np.append(values[:-1], values[0])
+            total += np.interp(bounds + index * YEAR, seconds, values)
+        total[-1] = total[0]  # the end of the year leads back to its beginning
+        return total / years
+
+    # conductances are averaged, as heat goes by them; and each year's temperature counts by its own
     outputs = np.linspace(0.0, bounds[-1], 25)
-    return make_schedule(bounds, values, outputs, max_step=step)
+    if resistance is None:
+        return make_schedule(bounds, average(surface), outputs, max_step=step)
+    conductance = average(1.0 / resistance)
+    beyond = average(surface / resistance) / conductance
+    return make_schedule(bounds, beyond, outputs, max_step=step, resistance=1.0 / conductance)
 
 
 def _coarse_schedule(schedule: Schedule) -> Schedule:
     """The schedule with steps twice as long; where an interval is one step already, on every second knot."""
     if schedule.parts.max() > 1:
         return replace(schedule, parts=(schedule.parts + 1) // 2)
-    seconds, surface = schedule.seconds, schedule.surface
-    # hat averages keep the mean of the forcing on half the knots
-    inner = 0.25 * surface[1:-2:2] + 0.5 * surface[2:-1:2] + 0.25 * surface[3::2]
+    seconds = schedule.seconds
     last = [] if seconds.size % 2 else [seconds[-1]]
     bounds = np.concatenate([seconds[::2], last])
-    values = np.interp(bounds, seconds, surface)
-    values[1 : 1 + inner.size] = inner
-    return make_schedule(bounds, values, seconds[schedule.row >= 0], max_step=np.inf)
+
+    def thinned(values: Floats) -> Floats:
+        # hat averages keep the mean of the forcing on half the knots
+        inner = 0.25 * values[1:-2:2] + 0.5 * values[2:-1:2] + 0.25 * values[3::2]
+        result = np.interp(bounds, seconds, values)
+        result[1 : 1 + inner.size] = inner
+        return np.asarray(result)
+
+    between = None if schedule.resistance is None else thinned(schedule.resistance)
+    outputs = seconds[schedule.row >= 0]
+    return make_schedule(bounds, thinned(schedule.surface), outputs, max_step=np.inf, resistance=between)
 
 
 def coarsened(problem: Problem) -> Problem:

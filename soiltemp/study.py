@@ -10,9 +10,7 @@ import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
-from soiltemp.climate.moments import whole_years
 from soiltemp.column import Column
-from soiltemp.constants import DAY, YEAR
 from soiltemp.errors import InputError, message
 from soiltemp.glossary import attributes
 from soiltemp.ground import Profile
@@ -40,9 +38,10 @@ class _Answer:
 
 def solve(
     profile: Profile,
-    surface_temperature: xr.DataArray,
+    surface_temperature: xr.DataArray | xr.Dataset,
     *,
     initial: Literal["cycle"] | float | str | xr.DataArray,
+    cycle_of: xr.DataArray | xr.Dataset | None = None,
     base_heat_flux: float | str = 0.0,
     base_temperature: xr.DataArray | None = None,
     depths: Any = None,
@@ -63,11 +62,16 @@ def solve(
         The layers; the base of the last one is where the column ends.
     surface_temperature : xr.DataArray (time)
         Temperature of the ground surface [degC], as point values or as means over intervals
-        (`cell_methods = "time: mean"`), see `soiltemp.surface.forcing_knots`.
+        (`cell_methods = "time: mean"`), see `soiltemp.surface.forcing_knots`. Or, from
+        `soiltemp.surface.surface_exchange`, the temperature above the ground and the thermal resistance (snow, moving
+        air) between it and the surface, whose temperature then comes out as `ground_temperature` at depth 0.
     initial : "cycle", float, str or xr.DataArray (depth)
         Temperature at the start: the periodic steady state of the forcing, one temperature for the whole column, or a
         profile that reaches the base. "cycle" needs at least a year of forcing; of a longer series the average year is
         repeated.
+    cycle_of : xr.DataArray or xr.Dataset (time), optional
+        Series whose average year is repeated for "cycle", where that is not the forcing itself: the whole record, for
+        a run through one design winter. It must begin at the same day of the year.
     base_heat_flux : float or str
         Heat flux upward into the base [W m-2], -10 to 10.
     base_temperature : xr.DataArray (time), optional
@@ -122,8 +126,9 @@ def solve(
     True
     """
     problem = read_problem(
-        profile, surface_temperature, initial=initial, base_heat_flux=base_heat_flux, base_temperature=base_temperature,
-        depths=depths, output_every=output_every, max_step=max_step, tolerance=tolerance,
+        profile, surface_temperature, initial=initial, cycle_of=cycle_of, base_heat_flux=base_heat_flux,
+        base_temperature=base_temperature, depths=depths, output_every=output_every, max_step=max_step,
+        tolerance=tolerance,
     )  # fmt: skip
     if numerical_error not in ("stated", "left out"):
         raise InputError(message("numerical_error", f"{numerical_error!r}", '"stated" or "left out"', "choose one"))
@@ -188,7 +193,7 @@ def _labelled(problem: Problem, answer: _Answer) -> xr.Dataset:
     """The answer as a dataset with names and units."""
     column, run, outputs, wanted = problem.column, answer.run, problem.outputs, problem.depths
     times = problem.start_time + np.round(outputs * 1e9).astype("timedelta64[ns]")
-    first = _end_fluxes(column, run.temperature[0], problem)
+    first = _fluxes_at_start(column, run.temperature[0], problem)
     flux = np.concatenate([[first[0]], np.diff(run.heat) / np.diff(outputs)])
     base_flux = np.concatenate([[first[1]], np.diff(run.heat_out) / np.diff(outputs)])
     values = {
@@ -200,6 +205,8 @@ def _labelled(problem: Problem, answer: _Answer) -> xr.Dataset:
         "frozen_ground_depth": (("time",), answer.frozen),
         "thaw_depth": (("time",), thaw_from_above(column.depths, run.temperature)),
     }
+    if problem.schedule.resistance is not None:
+        values["surface_temperature"] = (("time",), run.temperature[:, 0])
     result = xr.Dataset(
         {name: (dims, data, attributes(name)) for name, (dims, data) in values.items()},
         coords={
@@ -210,19 +217,25 @@ def _labelled(problem: Problem, answer: _Answer) -> xr.Dataset:
     result["ground_temperature"].attrs["cell_methods"] = "time: point depth: point"
     for name in ("surface_heat_flux", "base_heat_flux"):
         result[name].attrs["cell_methods"] = "time: mean"
-    for name in ("heat_content", "frost_depth", "frozen_ground_depth", "thaw_depth"):
+    for name in set(values) - {"ground_temperature", "surface_heat_flux", "base_heat_flux"}:
         result[name].attrs["cell_methods"] = "time: point"
     return result
 
 
-def _end_fluxes(column: Column, temperature: Floats, problem: Problem) -> tuple[float, float]:
-    """Heat flux through the surface and the base at one moment [W m-2], positive downward."""
+def _fluxes_at_start(column: Column, temperature: Floats, problem: Problem) -> tuple[float, float]:
+    """Heat flux through the surface and the base at the start [W m-2], positive downward."""
 
     def flux(element: int) -> float:
         potential = column.curves[int(column.layer[element])].conduction_potential(temperature[[element, element + 1]])
         return float((potential[0] - potential[1]) / column.thickness[element])
 
-    return flux(0), 0.0 - problem.base_flux if problem.base_temperature is None else flux(column.layer.size - 1)
+    schedule = problem.schedule
+    if schedule.resistance is None:
+        through_surface = flux(0)
+    else:
+        through_surface = float((schedule.surface[0] - temperature[0]) / schedule.resistance[0])
+    base = 0.0 - problem.base_flux if problem.base_temperature is None else flux(column.layer.size - 1)
+    return through_surface, base
 
 
 def _with_errors(
@@ -255,11 +268,7 @@ def _largest_miss(fine: Floats, coarse: Floats) -> float:
 
 def _initial_text(initial: Any, problem: Problem, answer: _Answer) -> str:
     if problem.cycle is not None:
-        years = whole_years(float(problem.schedule.duration))
-        what = f"the average year of the {years} whole years of the forcing"
-        if years == 1:
-            what = "the forcing" if problem.schedule.duration < YEAR + 2.0 * DAY else "the first year of the forcing"
-        return f"periodic steady state of {what}, settled after {answer.periods} repeated years"
+        return f"periodic steady state of {problem.cycle_text}, settled after {answer.periods} repeated years"
     return (
         "profile given by the user" if isinstance(initial, xr.DataArray) else f"{initial} throughout, given by the user"
     )

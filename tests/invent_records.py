@@ -103,7 +103,57 @@ def kettle_yard() -> str:
     return "\n".join(lines) + "\n"
 
 
-RECORDS = {"wether_lane_air.csv": wether_lane, "kettle_yard_air.csv": kettle_yard}
+def osier_flats() -> str:
+    """Daily minimum, maximum and depth of snow of 40 winters, a little milder from decade to decade.
+
+    Snow falls on a third of the days with a mean below 0.5 degC, settles by 2 % a day and melts by 0.5 cm for each
+    degree above 0 degC. In the winter of 1993-94 hardly any falls, and February 1996 is the coldest month."""
+    source = random.Random(19810701)
+    noise = _weather(source, memory=0.80, spread=1.0)
+    slow = _weather(source, memory=0.97, spread=1.0)
+    missing = {dt.date(1987, 10, 3) + day * DAY for day in range(16)}
+    missing |= {dt.date(2004, 2, 11), dt.date(2004, 2, 12), dt.date(2012, 7, 20)}
+    sentinels = {dt.date(1990, 1, 5), dt.date(1999, 4, 30), dt.date(2016, 11, 8)}
+    bare = (dt.datetime(1993, 10, 1), dt.datetime(1994, 5, 1))
+    severe = (dt.datetime(1996, 1, 25), dt.datetime(1996, 3, 1))
+    lines = [
+        "# Invented for demonstration by tests/invent_records.py; not a measurement",
+        "# place: Osier Flats (invented), latitude 46.1, longitude -97.4",
+        "# values: daily extremes of the air temperature 2 m above ground; depth of snow at 07:00",
+        "# time_zone: local standard time (UTC-6)",
+        "date,t_min [degC],t_max [degC],snow_depth [cm]",
+    ]
+    snow = 0.0
+    moment = dt.datetime(1981, 7, 1)
+    while moment < dt.datetime(2021, 7, 1):
+        season = _season(moment, dt.datetime(1982, 1, 17))
+        years = (moment - dt.datetime(1981, 7, 1)) / DAY / 365.25
+        mean = 5.0 + 0.03 * years - 16.0 * season + (next(noise) + 0.55 * next(slow)) * (3.6 + 1.6 * season)
+        if severe[0] <= moment < severe[1]:
+            mean -= 7.0
+        half_range = 4.4 - 0.6 * season + 0.9 * _normal(source)
+        half_range = max(half_range, 0.8)
+        falls, amount = source.random() < 0.34, 7.0 * source.random() * source.random()
+        if mean < 0.5 and falls:
+            snow += amount * (0.1 if bare[0] <= moment < bare[1] else 1.0)
+        snow = max(0.0, 0.98 * snow - 0.5 * max(mean, 0.0))
+        if snow < 0.5:
+            snow = 0.0
+        date = moment.date()
+        low, high = f"{mean - half_range:.1f}", f"{mean + half_range:.1f}"
+        if date in sentinels:
+            low = high = "-9999"
+        if date not in missing:
+            lines.append(f"{date.isoformat()},{low},{high},{snow:.0f}")
+        moment += DAY
+    return "\n".join(lines) + "\n"
+
+
+RECORDS = {
+    "osier_flats_weather.csv": osier_flats,
+    "wether_lane_air.csv": wether_lane,
+    "kettle_yard_air.csv": kettle_yard,
+}
 
 
 def main() -> None:

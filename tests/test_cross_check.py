@@ -94,7 +94,7 @@ def test_uniform_ground_without_freezing():
     # one hourly sampled year of daily values joined by straight lines: the chord is short by (omega day)^2 / 12 of 10 K
     assert found["surface_annual_amplitude"] == pytest.approx(10.0, abs=3e-4)
     assert found["surface_annual_mean"] == pytest.approx(14.0, abs=1e-9)
-    assert found["surface_freezing_index"] == 0.0
+    assert found["coldest_winter_freezing_index"] == 0.0
     assert found["maximum_frost_depth"] == 0.0
 
 
@@ -190,7 +190,7 @@ def test_uniform_ground_against_direct_calls():
     found = beside(UNIFORM, surface)
     # below 0 degC once a year: the fall of the cumulative curve is all its freezing degree-time
     index = freezing_index(surface)
-    assert found["surface_freezing_index"] == pytest.approx(index, rel=1e-12)
+    assert found["coldest_winter_freezing_index"] == pytest.approx(index, rel=1e-12)
     # 6 - 16 cos(omega t) is below 0 for arccos(6/16) / pi of the year; daily values joined by lines cost an hour
     season = np.arccos(6.0 / 16.0) / np.pi * YEAR
     assert found["freezing_season"] == pytest.approx(season, abs=3600.0)
@@ -214,7 +214,7 @@ def test_layered_ground_against_direct_calls():
     profile = Profile([Layer(SAND, 0.4), Layer(BOARD, 0.03), Layer(SILT, 9.0), Layer(ROCK, 5.0)])
     surface = yearly(4.0, 18.0)
     found = beside(profile, surface)
-    index, season = float(found["surface_freezing_index"]), float(found["freezing_season"])
+    index, season = float(found["coldest_winter_freezing_index"]), float(found["freezing_season"])
     thickness, latent = [0.4, 0.03, 9.0], [60e6, 0.0, 90e6]
     assert found["stefan_frost_depth"] == layered_stefan_depth(thickness, [2.9, 0.036, 1.9], latent, index)
     steps = layered_modified_berggren_steps(
@@ -243,15 +243,15 @@ def test_the_coldest_of_three_winters(colder):
     days = np.arange(surface.size)
     surface = surface.copy(data=np.where((days // 365 == colder) & (surface < 0.0), 1.5 * surface, surface))
     found = beside(UNIFORM, surface)
-    assert found["surface_freezing_index"] == pytest.approx(1.5 * freezing_index(yearly()), rel=2e-3)
-    assert f"Winter of {2020 + colder}-11" in found["surface_freezing_index"].attrs["comment"]
+    assert found["coldest_winter_freezing_index"] == pytest.approx(1.5 * freezing_index(yearly()), rel=2e-3)
+    assert f"Winter of {2020 + colder}-11" in found["coldest_winter_freezing_index"].attrs["comment"]
 
 
 def test_winters_of_the_southern_half_of_the_world():
     surface = periodic_surface(6.0, 16.0, "07-15", start="2020-01-01", years=2, every="1D")
     found = beside(UNIFORM, surface)
-    assert found["surface_freezing_index"] == pytest.approx(freezing_index(surface) / 2, rel=1e-6)
-    assert "Winter of 2020-05" in found["surface_freezing_index"].attrs["comment"]
+    assert found["coldest_winter_freezing_index"] == pytest.approx(freezing_index(surface) / 2, rel=1e-6)
+    assert "Winter of 2020-05" in found["coldest_winter_freezing_index"].attrs["comment"]
 
 
 def test_warm_spells_inside_a_winter_count_against_it():
@@ -259,28 +259,28 @@ def test_warm_spells_inside_a_winter_count_against_it():
     surface = daily((100, 12.0), (40, -10.0), (20, 4.0), (50, -6.0), (160, 15.0))
     found = beside(UNIFORM, surface)
     # jumps of a second between the pieces
-    assert found["surface_freezing_index"] / DAY == pytest.approx(620.0, abs=1e-3)
+    assert found["coldest_winter_freezing_index"] / DAY == pytest.approx(620.0, abs=1e-3)
     assert found["freezing_season"] / DAY == pytest.approx(110.0, abs=1e-3)
-    assert found["surface_freezing_index"].attrs["comment"].startswith("Winter of 2020-10-09 to 2021-01-26.")
+    assert found["coldest_winter_freezing_index"].attrs["comment"].startswith("Winter of 2020-10-09 to 2021-01-26.")
     # a warm spell that outweighs the cold before it parts the two: the larger part counts
     surface = daily((100, 12.0), (40, -10.0), (50, 9.0), (50, -6.0), (130, 15.0))
-    assert beside(UNIFORM, surface)["surface_freezing_index"] / DAY == pytest.approx(400.0, abs=1e-3)
+    assert beside(UNIFORM, surface)["coldest_winter_freezing_index"] / DAY == pytest.approx(400.0, abs=1e-3)
 
 
 def test_two_winters_are_not_added_over_a_cool_summer():
     # freezing outweighs thawing in each year, but each winter is its own
     year = [(90, -20.0), (185, 9.0), (90, -20.0)]
     found = beside(UNIFORM, daily(*year, *year, *year).assign_attrs(units="degree_Celsius"))
-    assert found["surface_freezing_index"] / DAY == pytest.approx(180 * 20.0, rel=1e-3)
+    assert found["coldest_winter_freezing_index"] / DAY == pytest.approx(180 * 20.0, rel=1e-3)
     assert found["freezing_season"] / DAY == pytest.approx(180.0, abs=0.1)
 
 
 def test_a_winter_cut_by_the_series():
     whole = daily((100, 12.0), (80, -10.0))
-    comment = beside(UNIFORM, whole)["surface_freezing_index"].attrs["comment"]
+    comment = beside(UNIFORM, whole)["coldest_winter_freezing_index"].attrs["comment"]
     assert comment.startswith("Winter of 2020-10-09 to 2020-12-27, cut short by the end of the series.")
     begun = daily((80, -10.0), (100, 12.0))
-    comment = beside(UNIFORM, begun)["surface_freezing_index"].attrs["comment"]
+    comment = beside(UNIFORM, begun)["coldest_winter_freezing_index"].attrs["comment"]
     assert comment.startswith("Winter of 2020-07-01 to 2020-09-18, begun before the series.")
 
 
@@ -334,7 +334,7 @@ def test_daily_means_are_taken_as_the_solver_takes_them():
     found = beside(UNIFORM, means)
     # an hourly sampled year leaves out half of the first hour and counts half of the last one twice
     assert found["surface_annual_mean"] == pytest.approx(6.0, abs=1e-4)
-    assert found["surface_freezing_index"] == pytest.approx(freezing_index(means), rel=1e-3)
+    assert found["coldest_winter_freezing_index"] == pytest.approx(freezing_index(means), rel=1e-3)
 
 
 # ---- all of it -----------------------------------------------------------------------------------------------
@@ -405,7 +405,7 @@ def test_lines_for_the_command_line():
     assert lines[0] == "Annual wave of the surface: mean 6.0 degC, amplitude 16.0 K"
     text = "\n".join(lines)
     stefan = float(found["stefan_frost_depth"])
-    index = float(found["surface_freezing_index"]) / DAY
+    index = float(found["coldest_winter_freezing_index"]) / DAY
     assert f"frost by Stefan's equation                {stefan:.2f} m" in text
     assert f"freezing index of the surface             {index:.0f} K day in 138 days" in text
     ratio, lag = float(found["annual_amplitude_ratio"][2]), float(found["annual_phase_lag_uniform"][2]) / DAY

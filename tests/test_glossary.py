@@ -14,11 +14,14 @@ from soiltemp.units import KINDS, to_si
 # canonical unit.
 CF_NAMES = {
     "air_temperature": "K",
+    "air_temperature_threshold": "K",
     "cell_thickness": "m",
     "depth": "m",
     "depth_at_base_of_unfrozen_ground": "m",
     "downward_heat_flux_at_ground_level_in_soil": "W m-2",
     "dry_soil_density": "kg m-3",
+    "integral_wrt_time_of_air_temperature_deficit": "K s",
+    "integral_wrt_time_of_air_temperature_excess": "K s",
     "latitude": "degrees_north",
     "longitude": "degrees_east",
     "mass_fraction_of_frozen_water_in_soil_moisture": "1",
@@ -30,12 +33,14 @@ CF_NAMES = {
     "soil_thermal_conductivity": "W m-1 K-1",
     "status_flag": "1",
     "surface_altitude": "m",
+    "surface_downwelling_shortwave_flux_in_air": "W m-2",
     "surface_snow_density": "kg m-3",
     "surface_snow_thickness": "m",
     "temperature_in_ground": "K",
     "thermal_conductivity_of_frozen_ground": "W m-1 K-1",
     "time": "",
     "volume_fraction_of_condensed_water_in_soil": "1",
+    "wind_speed": "m s-1",
 }
 
 CONTRACT = [

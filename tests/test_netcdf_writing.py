@@ -13,7 +13,7 @@ from pathlib import Path
 
 import pytest
 
-from soiltemp import netcdf, whole_file
+from soiltemp import netcdf, sealed_netcdf, whole_file
 from soiltemp.errors import DataFileError, InputError
 from soiltemp.netcdf import open_result, save
 from tests.helpers.results import bare_result
@@ -220,8 +220,8 @@ def test_a_disk_that_takes_no_more(result, old_file):
 
 
 def test_room_for_the_temporary_file_is_looked_at_first(result, tmp_path, monkeypatch):
-    usage = netcdf.shutil.disk_usage(tmp_path)
-    monkeypatch.setattr(netcdf.shutil, "disk_usage", lambda _: usage._replace(free=3_000_000))
+    usage = sealed_netcdf.shutil.disk_usage(tmp_path)
+    monkeypatch.setattr(sealed_netcdf.shutil, "disk_usage", lambda _: usage._replace(free=3_000_000))
     monkeypatch.setattr(netcdf, "_write_file", lambda *_: pytest.fail("the library was asked"))
     with pytest.raises(DataFileError, match=r"takes no file \(3 MB are free, 4 MB may be needed\)"):
         save(result, tmp_path / "a.nc")

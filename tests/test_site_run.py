@@ -13,7 +13,7 @@ from soiltemp.closed_form import amplitude_ratio
 from soiltemp.errors import DataFileError, InputError
 from soiltemp.netcdf import open_result, save
 from soiltemp.site import Site, parse_site
-from soiltemp.site_run import climate_of, run, site_from_result, surface_of
+from soiltemp.site_run import Weather, forcing_of, read_weather, run, site_from_result
 from soiltemp.surface import surface_temperature_from_air
 
 TEXT = """
@@ -83,8 +83,7 @@ def same_bits(one: xr.Dataset, two: xr.Dataset) -> None:
     for name in one.variables:
         left, right = one[name].values, two[name].values
         assert left.dtype.kind == right.dtype.kind, name
-        is_number = left.dtype.kind == "f"
-        assert np.array_equal(left, right, equal_nan=True) if is_number else np.array_equal(left, right), name
+        assert np.array_equal(left, right, equal_nan=left.dtype.kind in "fM"), name
         assert str(one[name].attrs) == str(two[name].attrs), name
     assert one.attrs == two.attrs
 
@@ -181,7 +180,7 @@ def test_place_texts_and_cautions(result: xr.Dataset) -> None:
     assert {"latitude", "longitude", "surface_altitude"} <= set(result.coords)
     assert result.attrs["site_name"] == "Made up"
     assert "local codes" in result.attrs["caution"]
-    assert result.attrs["n_factors"].startswith("freezing 0.5, thawing 0.8; stated")
+    assert result.attrs["surface_rule"].startswith("n-factors: freezing 0.5, thawing 0.8; stated")
     assert (result.attrs["study_start"], result.attrs["study_end"]) == ("2019-07-01", "2020-06-30")
     assert str(result.input_site_file.values) == TEXT
 
@@ -207,13 +206,14 @@ def test_daily_means_from_start_to_end(tmp_path: pathlib.Path) -> None:
     celsius = np.round(10.0 * np.sin(np.arange(days.size) / 58.0), 2)
     written(tmp_path, days, celsius)
     record = ('periodic = { mean = "4 degC", amplitude = "17 K", coldest = "01-20" }', 'air_temperature = "air.csv"')
-    air = climate_of(made(record, folder=tmp_path))
+    air = read_weather(made(record, folder=tmp_path)).temperature
     assert (str(air.time.values[0])[:10], str(air.time.values[-1])[:10]) == ("2019-07-01", "2020-06-29")
     assert np.array_equal(
         air.values, celsius[(days >= np.datetime64("2019-07-01")) & (days < np.datetime64("2020-06-30"))]
     )
     # a mean must lie wholly inside
-    noon = climate_of(made(record, ('start = "2019-07-01"', 'start = "2019-07-01 12:00"'), folder=tmp_path))
+    later = ('start = "2019-07-01"', 'start = "2019-07-01 12:00"')
+    noon = read_weather(made(record, later, folder=tmp_path)).temperature
     assert str(noon.time.values[0])[:10] == "2019-07-02"
     found = run(made(record, folder=tmp_path))
     assert (str(found.time.values[0])[:10], str(found.time.values[-1])[:10]) == ("2019-07-01", "2020-06-30")
@@ -250,38 +250,38 @@ def test_record_of_the_surface_is_used_as_it_is(tmp_path: pathlib.Path) -> None:
     found = run(site)
     assert "air_temperature" not in found
     assert "input_air_temperature" not in found
-    assert surface_of(site, climate_of(site)).identical(climate_of(site))
-    assert found.attrs["n_factors"].startswith("none")
-    same_bits(found, run(site_from_result(found)[0], air_temperature=site_from_result(found)[1]))
+    assert forcing_of(site, read_weather(site)).identical(read_weather(site).temperature)
+    assert found.attrs["surface_rule"] == "the surface temperature is given"
+    same_bits(found, run(site_from_result(found)[0], weather=site_from_result(found)[1]))
 
 
 def test_given_temperatures_are_cut_by_the_same_rule(result: xr.Dataset) -> None:
     longer = soiltemp.periodic_surface(4.0, 17.0, "01-20", start="2019-06-01", years=2)
     cut = longer.sel(time=slice("2019-07-01", "2020-06-30T00:00"))
-    found = run(made(), air_temperature=longer)
+    found = run(made(), weather=Weather(longer))
     assert np.array_equal(found.input_air_temperature.values, cut.values)
     assert found.input_time.values[-1] == np.datetime64("2020-06-30T00:00")
     days = soiltemp.periodic_surface(4.0, 17.0, "01-20", start="2019-06-01", years=2, every="1D")
     days.attrs["cell_methods"] = "time: mean"
-    means = run(made(), air_temperature=days)
+    means = run(made(), weather=Weather(days))
     assert means.input_time.values[-1] == np.datetime64("2020-06-29")
 
 
 @pytest.mark.parametrize(("first", "last"), [("2019-07-02", "2020-06-30"), ("2019-07-01", "2020-06-28")])
 def test_given_temperatures_must_cover_the_study(first: str, last: str) -> None:
     short = soiltemp.periodic_surface(4.0, 17.0, "01-20", start="2019-06-01", years=2).sel(time=slice(first, last))
-    with pytest.raises(InputError, match=r"^air_temperature: found values from 2019.*cover 2019-07-01 to 2020-06-30"):
-        run(made(), air_temperature=short)
+    with pytest.raises(InputError, match=r"^temperature: found values from 2019.*cover 2019-07-01 to 2020-06-30"):
+        run(made(), weather=Weather(short))
 
 
 def test_periodic_climate_longer_than_a_year() -> None:
-    air = climate_of(made(('end = "2020-06-30"', 'end = "2021-09-01 00:30"')))
+    air = read_weather(made(('end = "2020-06-30"', 'end = "2021-09-01 00:30"'))).temperature
     assert str(air.time.values[-1])[:16] == "2021-09-01T00:00"
     assert air.values[365 * 24] == air.values[0]
 
 
 def test_periodic_climate_with_a_daily_wave() -> None:
-    air = climate_of(made(('coldest = "01-20"', 'coldest = "01-20", daily_amplitude = "6 K"')))
+    air = read_weather(made(('coldest = "01-20"', 'coldest = "01-20", daily_amplitude = "6 K"'))).temperature
     by_hand = soiltemp.periodic_surface(4.0, 17.0, "01-20", "2019-07-01", 1, daily_amplitude=6.0)
     assert np.array_equal(air.values, by_hand.sel(time=air.time).values)
 
@@ -325,9 +325,9 @@ def test_progress_is_told_and_can_cancel() -> None:
 
 
 def test_result_in_memory_runs_again_to_the_same_bits(result: xr.Dataset) -> None:
-    site, air = site_from_result(result)
+    site, weather = site_from_result(result)
     assert site.profile == made().profile
-    same_bits(result, run(site, air_temperature=air))
+    same_bits(result, run(site, weather=weather))
 
 
 def test_result_in_a_file_runs_again_to_the_same_bits(tmp_path: pathlib.Path) -> None:
@@ -340,14 +340,12 @@ def test_result_in_a_file_runs_again_to_the_same_bits(tmp_path: pathlib.Path) ->
     (tmp_path / "air.csv").unlink()  # the result needs nothing but itself
     again = run(
         site_from_result(open_result(tmp_path / "a.nc"))[0],
-        air_temperature=site_from_result(open_result(tmp_path / "a.nc"))[1],
+        weather=site_from_result(open_result(tmp_path / "a.nc"))[1],
     )
     assert set(again.variables) == set(first.variables)
     for name in first.variables:
         left, right = first[name].values, again[name].values
-        assert np.array_equal(left, right, equal_nan=True) if left.dtype.kind == "f" else np.array_equal(left, right), (
-            name
-        )
+        assert np.array_equal(left, right, equal_nan=left.dtype.kind in "fM"), name
     assert again.attrs == first.attrs
 
 

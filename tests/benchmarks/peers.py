@@ -3,7 +3,8 @@
     python -m tests.benchmarks.peers                    everything, about a minute
     python -m tests.benchmarks.peers --only solvers blocks --repeats 9
 
-Fastest of several repeats each; ratios are of times taken in the same run. Parts: solvers, blocks, cycle, import, run.
+Fastest of several repeats each; ratios are of times taken in the same run. Parts: solvers, blocks, cycle, winters,
+import, run.
 """
 
 from __future__ import annotations
@@ -15,6 +16,7 @@ import subprocess
 import sys
 import tempfile
 import time
+from itertools import pairwise
 from pathlib import Path
 
 import numba
@@ -25,6 +27,7 @@ from soiltemp.column import build_column
 from soiltemp.ground import Layer, Profile
 from soiltemp.solver.cycle import find_cycle
 from soiltemp.solver.march import make_schedule, march, march_block
+from soiltemp.surface import forcing_knots
 from tests.benchmarks import case, rivals
 
 ROOT = Path(__file__).parents[2]
@@ -169,6 +172,41 @@ def cycle(repeats: int) -> None:
     verdict("within 0.01 K in at most 12 years", off <= 0.01 and found.periods <= 12, f"{off:.4f} K in {found.periods}")
 
 
+def winters(repeats: int) -> None:
+    """Frost of each of 30 winters of a daily record, beside LSODA on one of them."""
+    from soiltemp.climate import read_record
+    from soiltemp.study import solve
+
+    air = read_record(
+        ROOT / "example_sites" / "osier_flats_weather.csv", column=("t_min [degC]", "t_max [degC]"),
+        start="1981-07-01", end="2011-07-01", longest_gap="20 days",
+    )  # fmt: skip
+    profile = Profile([Layer(case.MATERIAL, 20.0)])
+    edges = np.arange("1981", "2012", dtype="datetime64[Y]") + np.timedelta64(6, "M")
+
+    def ours():
+        result = solve(profile, air, initial=case.START, depths=[1.0], numerical_error="left out")
+        times = np.searchsorted(result["time"].values, edges.astype("datetime64[ns]"))
+        return [float(result.frost_depth.values[a:b].max()) for a, b in pairwise(times)]
+
+    ours()  # compile
+    least, depths = case.fastest(ours, repeats)
+    seconds, celsius, _ = forcing_knots(air)
+    first = np.searchsorted(seconds, np.arange(30) * case.YEAR)
+    coldest = int(np.argmin([np.minimum(celsius[a : a + 730], 0.0).sum() for a in first]))
+    knots = slice(first[coldest], first[coldest] + 731)
+    grid = solve(profile, air.isel(time=slice(0, 800)), initial=case.START, numerical_error="left out").depth.values
+    lsoda = rivals.lsoda_winter(grid, seconds[knots] - seconds[knots][0], celsius[knots], max(1, repeats // 3))
+    print(f"\n30 winters of a daily record, frost {min(depths):.2f} to {max(depths):.2f} m\n")
+    row("way", "time for 30 winters", "times ours")
+    row("---", "---:", "---:")
+    row("soiltemp, solve() with labels, steps of 1 h", f"{least:.2f} s", "1")
+    row("SciPy LSODA, banded, heat content, 30 times its coldest", f"{30 * lsoda:.0f} s", f"{30 * lsoda / least:.0f}")
+    print()
+    verdict("30 winters within 1 s", least <= 1.0, f"{least:.2f} s")
+    verdict("100 times as fast as LSODA", 30 * lsoda >= 100 * least, f"{30 * lsoda / least:.0f}")
+
+
 def _python(code: str, repeats: int) -> float:
     """Least time of a fresh interpreter with some code [s]."""
     return case.fastest(lambda: subprocess.run([sys.executable, "-c", code], cwd=ROOT, check=True), repeats)[0]
@@ -212,7 +250,14 @@ def running(repeats: int) -> None:
     verdict("an example runs within 5 s", 0.0 < slowest <= 5.0, f"{slowest:.2f} s")
 
 
-PARTS = {"solvers": solvers, "blocks": blocks, "cycle": cycle, "import": importing, "run": running}
+PARTS = {
+    "solvers": solvers,
+    "blocks": blocks,
+    "cycle": cycle,
+    "winters": winters,
+    "import": importing,
+    "run": running,
+}
 
 
 def main() -> None:

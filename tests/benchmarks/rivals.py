@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import bisect
 import math
 from collections.abc import Callable
 
@@ -38,10 +39,10 @@ class HeatContent:
     crosses the freezing range with the fewest evaluations.
     """
 
-    def __init__(self, surface: Callable[[float], float]) -> None:
+    def __init__(self, surface: Callable[[float], float], depths: np.ndarray | None = None) -> None:
         self.surface = surface
         curves = MATERIAL.curves()
-        depths = grid()
+        depths = grid() if depths is None else depths
         knots = np.array([-100.0, *curves.knots, 100.0])
         self.heat, self.knots = curves.enthalpy(knots) / SCALE, knots
         self.potential = curves.conduction_potential(knots)
@@ -108,6 +109,29 @@ def lsoda(form: str, surface: str, rtol: float, atol: float, max_step: float, re
     if not answer.success:
         raise RuntimeError(answer.message)
     return Timed(least, system.temperature(answer.t, answer.y.T), f"{answer.nfev} evaluations", surface)
+
+
+def lsoda_winter(depths: np.ndarray, seconds: np.ndarray, celsius: np.ndarray, repeats: int) -> float:
+    """Time of SciPy's LSODA (heat content, banded) for one winter of a record [s]; grid and knots are the solver's."""
+    times, values = seconds.tolist(), celsius.tolist()
+
+    def surface(time: float) -> float:
+        i = min(bisect.bisect_right(times, time) - 1, len(times) - 2)
+        return values[i] + (values[i + 1] - values[i]) * (time - times[i]) / (times[i + 1] - times[i])
+
+    system = HeatContent(surface, depths)
+    outputs = np.arange(0.0, times[-1] + 1.0, DAY)
+
+    def run():
+        return solve_ivp(
+            system.rate, (0.0, times[-1]), system.begin, "LSODA", outputs, rtol=1e-4, atol=1e-3, max_step=6 * 3600.0,
+            lband=1, uband=1,
+        )  # fmt: skip
+
+    least, answer = fastest(run, repeats)
+    if not answer.success:
+        raise RuntimeError(answer.message)
+    return least
 
 
 def cvode(form: str, surface: str, rtol: float, atol: float, max_step: float, repeats: int = 1) -> Timed:

@@ -19,6 +19,7 @@ __all__ = [
     "KEYS",
     "LARGEST_FILE",
     "RECORD_OPTIONS",
+    "STATED",
     "Table",
     "at_place",
     "check_sections",
@@ -30,15 +31,28 @@ __all__ = [
 LARGEST_FILE = 1_000_000
 """Largest site file [bytes]; a real one has a few thousand."""
 
+STATED = "stated in the site file"
+"""Source of values that the user gave."""
+
 RECORD_OPTIONS = (
     *("column", "unit", "time_column", "time_zone", "date_order", "values", "stamp_at"),
-    *("longest_gap", "missing_values", "allowed_range", "stuck_after"),
+    *("longest_gap", "gap_filling", "longest_climatology_gap"),
+    *("missing_values", "allowed_range", "stuck_after", "station"),
 )
 KEYS: dict[str, tuple[str, ...]] = {
     "site": ("name", "latitude", "longitude", "altitude"),
-    "climate": ("air_temperature", "surface_temperature", "periodic", *RECORD_OPTIONS),
+    "climate": ("air_temperature", "surface_temperature", "periodic", "warming", *RECORD_OPTIONS),
     "climate.periodic": ("mean", "amplitude", "coldest", "daily_amplitude"),
-    "surface": ("cover", "n_factor_table", "freezing_n_factor", "thawing_n_factor"),
+    "surface": (
+        *("cover", "n_factor_table", "freezing_n_factor", "thawing_n_factor"),
+        *("heat_transfer", "wind", "snow", "sun"),
+    ),
+    "surface.wind": ("model", "speed", "record", *RECORD_OPTIONS),
+    "surface.snow": (
+        *("record", "monthly_depth", "density", "conductivity_model"),
+        *("clearing", "remainder", *RECORD_OPTIONS),
+    ),
+    "surface.sun": ("record", "absorptivity", "snow_absorptivity", "longwave_loss", *RECORD_OPTIONS),
     "layer": ("name", "material", "soil", "conductivity_model", "thickness"),
     "layer.soil": (
         *("grain", "dry_density", "water_content", "quartz_fraction", "grain_density", "freezing_point"),
@@ -50,9 +64,10 @@ KEYS: dict[str, tuple[str, ...]] = {
     ),
     "line": ("name", "cover", "outside_diameter"),
     "study": (
-        *("start", "end", "initial", "base_heat_flux", "output_every", "depths", "max_step"),
+        *("start", "end", "winters", "initial", "base_heat_flux", "output_every", "depths", "max_step"),
         *("tolerance",),
     ),
+    "design": ("practice", "return_period", "shorter_record", "rule"),
 }
 """Sections of a site file, tables inside them, and the keys of each."""
 
@@ -173,14 +188,18 @@ class Table:
         """A key of it, for messages."""
         return f"{self.where}{key}"
 
+    def _term(self, key: str) -> str:
+        """Name of a key in the glossary; the options of all records stand there once."""
+        return f"climate.{key}" if key in RECORD_OPTIONS else f"{self.glossary}{key}"
+
     def kind(self, key: str) -> str:
         """Kind of quantity, empty for texts."""
-        term = GLOSSARY.get(f"{self.glossary}{key}")
+        term = GLOSSARY.get(self._term(key))
         return "" if term is None else term.kind
 
     def allowed(self, key: str) -> str:
         """What the glossary says of a key."""
-        term = GLOSSARY.get(f"{self.glossary}{key}")
+        term = GLOSSARY.get(self._term(key))
         meaning = "a text" if term is None else term.meaning.rstrip(".")
         return meaning[:1].lower() + meaning[1:]
 
