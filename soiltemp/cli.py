@@ -28,9 +28,12 @@ from soiltemp.errors import InputError, SoilTempError, SolverError, message
 from soiltemp.ground import Layer, Profile
 from soiltemp.materials import Material
 from soiltemp.site import WINTERS, Record, Site, read_site
-from soiltemp.site_run import Weather, forcing_of, read_weather, run, site_from_result
+from soiltemp.site_run import Weather, compare_snow, forcing_of, read_weather, run, site_from_result
+from soiltemp.site_run.comparison import snow_of
 from soiltemp.site_run.plan import plan_of
 from soiltemp.study import solve
+from soiltemp.text_table import UNITS, Units
+from soiltemp.winter_text import snow_lines
 
 __all__ = ["main"]
 
@@ -190,6 +193,11 @@ def _parser() -> argparse.ArgumentParser:
         choices=WINTERS,
         help="every winter of the study, or the one that is designed for; else as the site file says",
     )
+    start.add_argument(
+        "--compare-snow",
+        action="store_true",
+        help="run it thrice: snow left to lie, cleared, and none; the result saved is that of the site file",
+    )
     start.add_argument("--quiet", action="store_true", help="no progress and no notices; the summary stays")
     start.set_defaults(command=_run)
     add_climate(commands, [common], epilog=_STATUS_HELP, target=_target, progress=_Progress)
@@ -218,8 +226,9 @@ def _run(options: argparse.Namespace, ending: _Ending) -> None:
         targets.append(None if path is None else _target(path, suffix, option, inputs))
     if weather is None:
         weather = read_weather(site)
-    plan_of(site, weather)
-    forcing_of(site, weather)
+    if options.compare_snow:
+        snow_of(site)
+    forcing_of(site, plan_of(site, weather).weather)
     _prepare(None if options.quiet else sys.stderr)
     if not options.quiet:
         ending.progress = _Progress(sys.stderr)
@@ -234,6 +243,11 @@ def _run(options: argparse.Namespace, ending: _Ending) -> None:
             ending.written.append(str(target))
             files.append(f"{'Replaced' if replaced else 'Written'}: {target}")
     lines = summary(site, result, options.units)
+    if options.compare_snow:
+        compared = compare_snow(site, weather=weather, progress=ending.progress)
+        if ending.progress is not None:
+            ending.progress.clear()
+        lines += snow_lines(compared, Units(UNITS[options.units]))
     print("\n".join([*lines, *(files or ["Not saved; -o RESULT.nc keeps the result."])]))
 
 

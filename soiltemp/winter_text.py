@@ -10,7 +10,7 @@ import xarray as xr
 from soiltemp.climate.moments import show_moment
 from soiltemp.text_table import Units, table_lines, wrapped
 
-__all__ = ["design_lines", "return_lines", "winter_lines"]
+__all__ = ["design_lines", "return_lines", "snow_lines", "winter_lines"]
 
 
 def winter_lines(result: xr.Dataset, units: Units) -> list[str]:
@@ -92,6 +92,30 @@ def return_lines(result: xr.Dataset, units: Units) -> list[str]:
     ]
 
 
+def snow_lines(compared: xr.Dataset, units: Units) -> list[str]:
+    """Frost with the snow left to lie, cleared, and without any.
+
+    Parameters
+    ----------
+    compared : xr.Dataset
+        What :func:`soiltemp.site_run.compare_snow` returned.
+    units : Units
+        Units of the text.
+    """
+    unit = units.shown["length"][0]
+    has_line = "crown_minimum_temperature" in compared
+    head = ["snow", f"greatest frost, {unit}", f"frozen ground, {unit}"]
+    rows = [head + ([f"coldest at the crown, {units.shown['temperature'][0]}"] if has_line else [])]
+    for number, state in enumerate(compared["snow_state"].values):
+        names = ["maximum_frost_depth", "maximum_frozen_ground_depth"]
+        cells = [f"{units.value(float(compared[name][number]), 'length'):.2f}" for name in names]
+        if has_line:
+            coldest = float(compared["crown_minimum_temperature"][number])
+            cells.append(f"{units.value(coldest, 'temperature'):.2f}")
+        rows.append([str(state), *cells])
+    return ["What the snow is worth", *table_lines(rows, 0), ""]
+
+
 def design_lines(result: xr.Dataset, units: Units) -> list[str]:
     """The index that is designed for and the winter made for it; empty without a design."""
     if "design_freezing_index" not in result:
@@ -104,4 +128,9 @@ def design_lines(result: xr.Dataset, units: Units) -> list[str]:
         if "design_factor" in result:
             made += f", temperatures below freezing in its season times {float(result['design_factor']):.3f}"
         lines += wrapped(f"{made}; what follows is the frost of that winter alone, after a year of run-in")
+        if "snow_depth" in result and float(result["snow_depth"].max()) > 0.0:
+            lines += wrapped(
+                "Note: snow decides as much as cold. The deepest frost may belong to a milder winter with little snow: "
+                "run every winter too (--winters every), and see what the frost is with the snow cleared."
+            )
     return [*lines, ""]

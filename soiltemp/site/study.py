@@ -27,6 +27,9 @@ LONGEST_STUDY = 200.0 * YEAR
 WINTERS = ("every", "design")
 """Which winters a study runs through: all from its start to its end, or the one that is designed for."""
 
+WATER_CONTENT = ("left out", "saved")
+"""Whether the result holds ice and liquid water by time and depth."""
+
 SHORTER = ("refuse", "as the source allows")
 """What is done about a record with fewer winters than a practice wants."""
 
@@ -70,6 +73,7 @@ def read_study(table: Table, profile: Profile, design: Table | None) -> Study:
         tolerance=table.quantity("tolerance", low=1e-6, high=10.0) if "tolerance" in table else None,
         winters=winters,
         design=None if design is None else _design(design),
+        water_content=_choice(table, "water_content", WATER_CONTENT),
     )
 
 

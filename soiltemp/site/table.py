@@ -56,7 +56,8 @@ KEYS: dict[str, tuple[str, ...]] = {
     "layer": ("name", "material", "soil", "conductivity_model", "thickness"),
     "layer.soil": (
         *("grain", "dry_density", "water_content", "quartz_fraction", "grain_density", "freezing_point"),
-        *("freezing_range", "dry_conductivity", "specific_heat_grains", "name"),
+        *("freezing_range", "freezing_curve", "unfrozen_alpha", "unfrozen_beta", "specific_surface", "salinity"),
+        *("dry_conductivity", "specific_heat_grains", "name"),
     ),
     "layer.material": (
         *("name", "conductivity_thawed", "conductivity_frozen", "heat_capacity_thawed", "heat_capacity_frozen"),
@@ -65,7 +66,7 @@ KEYS: dict[str, tuple[str, ...]] = {
     "line": ("name", "cover", "outside_diameter"),
     "study": (
         *("start", "end", "winters", "initial", "base_heat_flux", "output_every", "depths", "max_step"),
-        *("tolerance",),
+        *("tolerance", "water_content"),
     ),
     "design": ("practice", "return_period", "shorter_record", "rule"),
 }

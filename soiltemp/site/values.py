@@ -94,6 +94,10 @@ class Surface:
     n_factors: NFactors | None
     exchange: Exchange | None = None
 
+    def with_snow(self, snow: Snow | None) -> Surface:
+        """Copy with other snow on it, or none; for a surface that has an exchange with the air."""
+        return self if self.exchange is None else replace(self, exchange=replace(self.exchange, snow=snow))
+
 
 @dataclass(frozen=True)
 class Line:
@@ -143,6 +147,8 @@ class Study:
     winters: str = "every"
     """"every" (all from start to end), or "design" (the one that is designed for)."""
     design: Design | None = None
+    water_content: str = "left out"
+    """"saved" (ice and liquid water go into the result) or "left out"."""
 
 
 @dataclass(frozen=True)

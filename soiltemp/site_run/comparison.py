@@ -10,10 +10,11 @@ import xarray as xr
 from soiltemp.errors import InputError, message
 from soiltemp.glossary import attributes
 from soiltemp.site import Site
+from soiltemp.site.values import Snow
 from soiltemp.site_run.running import run
 from soiltemp.site_run.weather import Weather, read_weather
 
-__all__ = ["SNOW_STATES", "compare_snow"]
+__all__ = ["SNOW_STATES", "compare_snow", "snow_of"]
 
 SNOW_STATES = ("natural", "cleared", "bare")
 """Snow left to lie; cleared down to the remainder that the site file states; none at all."""
@@ -51,13 +52,9 @@ def compare_snow(
     InputError
         A site without snow; and all that :func:`soiltemp.run` raises.
     """
-    exchange = site.surface.exchange
-    if exchange is None or exchange.snow is None:
-        where = f'site "{site.name}"'
-        raise InputError(message(where, "no snow in its surface", "a site with [surface.snow]", "describe the snow"))
+    snow = snow_of(site)
     if weather is None:
         weather = read_weather(site)
-    snow = exchange.snow
     states = {
         "natural": replace(snow, clearing="natural"),
         "cleared": replace(snow, clearing="cleared"),
@@ -66,12 +63,27 @@ def compare_snow(
     found: list[xr.Dataset] = []
     for number, state in enumerate(SNOW_STATES):
         told = None if progress is None else _part(progress, number, state)
-        surface = replace(site.surface, exchange=replace(exchange, snow=states[state]))
+        surface = site.surface.with_snow(states[state])
         result = run(replace(site, surface=surface), weather=weather, progress=told)
         found.append(result[[name for name in _COMPARED if name in result]].reset_coords(drop=True))
     states_of = xr.DataArray(list(SNOW_STATES), dims="snow_state", name="snow_state", attrs=attributes("snow_state"))
     together: xr.Dataset = xr.concat(found, dim=states_of)
     return together
+
+
+def snow_of(site: Site) -> Snow:
+    """The snow that a site describes.
+
+    Raises
+    ------
+    InputError
+        A site without snow.
+    """
+    exchange = site.surface.exchange
+    if exchange is None or exchange.snow is None:
+        where = f'site "{site.name}"'
+        raise InputError(message(where, "no snow in its surface", "a site with [surface.snow]", "describe the snow"))
+    return exchange.snow
 
 
 def _part(progress: Callable[[float, str], None], number: int, state: str) -> Callable[[float, str], None]:

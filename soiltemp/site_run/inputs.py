@@ -126,13 +126,16 @@ def _curves(profile: Profile) -> dict[str, Any]:
     }
     for key, rows, text in (
         ("knot", [curve.knots for curve in curves], f"temperature {upper}"),
-        ("frozen_share", [curve.frozen_share for curve in curves], f"share of the pore water that is ice {upper}"),
+        ("frozen_share", [curve.frozen_share for curve in curves], f"share of the freezing water that is ice {upper}"),
         ("heat_capacity", [curve.heat_capacity for curve in curves], "slope of the enthalpy, latent heat included"),
         ("conductivity", [curve.conductivity for curve in curves], "slope of the conduction potential"),
     ):
         labels = {**attributes("knots" if key == "knot" else key), "long_name": text}
         labels.pop("standard_name", None)  # one material's curve, not a field of the ground
         found[f"input_{key}"] = (dims, table(rows), labels)
+    for key in ("water", "unfrozen_rest"):
+        values = np.array([getattr(curve, key) for curve in curves])
+        found[f"input_{key}"] = ("input_layer", values, attributes(key))
     return found
 
 

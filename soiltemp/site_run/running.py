@@ -21,6 +21,7 @@ from soiltemp.site_run.plan import plan_of
 from soiltemp.site_run.weather import Weather, cut_to_study, read_weather
 from soiltemp.study import solve
 from soiltemp.surface import exchange_knots, forcing_knots
+from soiltemp.water import water_content
 from soiltemp.winter_frost import frost_by_winter, frost_return_values
 
 __all__ = ["run"]
@@ -49,6 +50,7 @@ def run(site: Site, *, progress: Progress | None = None, weather: Weather | None
     xr.Dataset
         What :func:`soiltemp.solve` gives, at the depths asked for and at those of the line, and
 
+        - `ice_content` and `unfrozen_water_content` (time, depth) [1], where the site file wants them saved;
         - `surface_temperature` and `air_temperature` (time) [degC] at the output times, where they exist;
         - for a line: `crown_depth`, `crown_minimum_temperature`, `crown_time_of_minimum`,
           `crown_days_below_freezing`, the same for `axis` and `invert`, and `frost_margin` (crown less greatest
@@ -116,6 +118,8 @@ def run(site: Site, *, progress: Progress | None = None, weather: Weather | None
     )
     if plan.results_from is not None:
         result = result.isel(time=result["time"].values >= plan.results_from)
+    if study.water_content == "saved":
+        result = result.merge(water_content(result, site.profile))
     result = result.merge(_at_outputs(site, plan.weather, forcing, result))
     surface = _surface_series(forcing, result)
     if site.line is not None:
