@@ -198,6 +198,7 @@ def write_bounds(group: Any, name: str, bounds: str, edges: NDArray[Any]) -> Non
     since = edges - np.datetime64(origin.replace(" ", "T"), "ns")
     target = group.createVariable(bounds, of.dtype, (name, "bnds"), zlib=True, complevel=1)
     target[...] = since / np.timedelta64(1, "ns" if unit == "nanoseconds" else "s")
+    of.bounds = bounds
 
 
 def _clean_text(where: str, text: str) -> str:

@@ -351,7 +351,6 @@ def _write_time_bounds(file: Any, root: xr.Dataset) -> None:
     if any("time: mean" in str(variable.attrs.get("cell_methods")) for variable in root.variables.values()):
         times = root["time"].values
         write_bounds(file, "time", "time_bnds", np.stack([np.concatenate([times[:1], times[:-1]]), times], axis=1))
-        file["time"].bounds = "time_bnds"
 
 
 def _write_site(file: Any, root: xr.Dataset) -> None:

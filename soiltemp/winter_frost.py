@@ -86,7 +86,19 @@ def frost_by_winter(profile: Profile, air: xr.DataArray, surface: xr.DataArray, 
     found: dict[str, Any] = {f"winter_{name}": values for name, values in depths.items()}
     found["winter_frost_depth_time"] = when
     found |= _formulas(profile, table, whole, _mean_of_years(surface))
-    return table.assign({name: ("winter", values, attributes(name)) for name, values in found.items()})
+    greatest = {f"winter_{name}" for name in depths}
+    table = table.assign(
+        {
+            name: (
+                "winter",
+                values,
+                attributes(name) | ({"cell_methods": "winter: maximum"} if name in greatest else {}),
+            )
+            for name, values in found.items()
+        }
+    )
+    table["winter"].attrs.pop("bounds", None)  # a file says so of itself
+    return table
 
 
 def _mean_of_years(surface: xr.DataArray) -> float:

@@ -14,6 +14,7 @@ from soiltemp.errors import InputError, SoilTempError
 from soiltemp.netcdf import open_result, save
 from soiltemp.site import Site, parse_site
 from soiltemp.site_run import compare_snow, forcing_of, read_weather, run, site_from_result
+from tests.helpers.cf import cfchecks_messages, compliance_messages
 from tests.test_site_run import same_bits
 
 YEARS = 14
@@ -169,6 +170,23 @@ def test_winters_of_the_command_line_ride_in_the_result(folder: pathlib.Path, tm
     rerun = run(again, weather=weather)
     assert np.array_equal(rerun.ground_temperature.values, found.ground_temperature.values)
     assert np.array_equal(rerun.snow_depth.values, found.snow_depth.values)
+
+
+def test_file_of_winters_is_cf(result: xr.Dataset, tmp_path: pathlib.Path) -> None:
+    """Winters with their bounds and labels, return periods, snow: nothing to complain about, and read back as saved."""
+    path = tmp_path / "winters.nc"
+    save(result, path)
+    assert compliance_messages(path, "cf:1.11", tmp_path) == []
+    assert cfchecks_messages(path, tmp_path) == []
+    again = open_result(path)
+    assert again.winter_frost_depth.attrs["cell_methods"] == "winter: maximum"
+    for name in set(result.variables) - {"ground_temperature"}:
+        assert again[name].dims == result[name].dims, name
+        assert again[name].attrs.keys() == result[name].attrs.keys(), name
+        same = again[name].values == result[name].values
+        assert np.all(same | (again[name].isnull().values & result[name].isnull().values)), name
+    save(again, tmp_path / "again.nc")
+    assert compliance_messages(tmp_path / "again.nc", "cf:1.11", tmp_path) == []
 
 
 def test_warming_makes_winters_milder(folder: pathlib.Path, result: xr.Dataset) -> None:
