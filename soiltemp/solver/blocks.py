@@ -92,11 +92,9 @@ def _factor(x, n, c, top, base, width):
         above = c * x[q + V - NEXT]
         below = c * x[q + U + NEXT]
         pivot = 1.0 / (
-            x[q + B]
-            + c * (x[q + U] + x[q + V])
-            - above * (c * x[q + U]) * x[q + P - NEXT]
-            - below * (c * x[q + V]) * x[q + P + NEXT]
-        )
+            x[q + B] + c * (x[q + U] + x[q + V])
+            - above * (c * x[q + U]) * x[q + P - NEXT] - below * (c * x[q + V]) * x[q + P + NEXT]
+        )  # fmt: skip
         x[q + P] = pivot
         x[q + F] = pivot * above
         x[q + E] = pivot * below
