@@ -338,10 +338,8 @@ def _march_block(
     lost, dead = np.zeros(WIDTH, dtype=np.bool_), np.zeros(WIDTH, dtype=np.bool_)
     table_of, force_of = np.zeros(WIDTH, dtype=np.int64), np.zeros(WIDTH, dtype=np.int64)
     tops = np.zeros((WIDTH, tables.shape[2], 3))
-    bottom = np.zeros((1, 3))
-    bottom[0, 1], bottom[0, 2] = 1.0, np.inf  # the base value is a heat flux
-    end = uintp(n - 1) * NEXT
-    turn = 0
+    bottom = np.array([[0.0, 1.0, np.inf]])  # the base value is a heat flux
+    end, turn = uintp(n - 1) * NEXT, 0
     prepared = C_STAGE * dt[0] / parts[0]
     for j in range(WIDTH):
         column = first + min(j, lanes - 1)  # spare lanes repeat the last column and are not looked at
