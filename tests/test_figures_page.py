@@ -143,7 +143,9 @@ def with_inputs(result: xr.Dataset, *, name: str = "silt", source: str = "a data
         input_air_temperature=("input_time", np.zeros(4), {"time_zone": "UTC-6", "source_sha256": "af32"}),
         input_air_temperature_filled=("input_time", filled),
     )
-    made.attrs.update(n_factors="freezing 0.5; a table", quality_report="air.csv: 2 interpolated", elements="172")
+    made.attrs.update(
+        surface_rule="n-factors: freezing 0.5; a table", quality_report="air.csv: 2 interpolated", elements="172"
+    )
     return made
 
 
@@ -158,7 +160,7 @@ def test_page_tells_what_it_stands_on(tmp_path: Path) -> None:
     assert words[at + 3 : at + 10] == ["0.036", "0.036", "0.045", "0.045", "0", "nothing freezes", "source not stated"]
     facts = {words[n]: words[n + 1] for n in range(len(words) - 1)}
     assert facts["Cover of the surface"] == "grass & snow"
-    assert facts["n-factors"] == "freezing 0.5; a table"
+    assert facts["Surface"] == "n-factors: freezing 0.5; a table"
     assert facts["Air temperature, SHA-256 of the file"] == "af32"
     assert facts["Air temperature, time zone"] == "UTC-6"
     assert facts["Air temperature, values used"] == "4, 2 of them interpolated"

@@ -1,17 +1,15 @@
-"""Frost through time: how deep it reaches, how the ground thaws from above and below, and what the surface did."""
+"""Frost through time: how deep it reaches, how the ground thaws from above and below, what surface and snow did."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from itertools import pairwise
 from typing import Any
 
 import numpy as np
 import xarray as xr
 from bokeh.core.properties import value
 from bokeh.plotting import figure
-from contourpy import FillType, contour_generator
 
+from soiltemp.figures.above_ground import SNOW, AboveGround, above_ground
 from soiltemp.figures.display import Display, date, display
 from soiltemp.figures.drawing import (
     AIR,
@@ -32,17 +30,15 @@ from soiltemp.figures.drawing import (
     assign,
     band_of,
     bm,
-    nice_limits,
     packed,
     style_time_axis,
 )
+from soiltemp.figures.frozen_areas import frozen_areas
 from soiltemp.figures.reading import (
     BuriedLine,
     Floats,
-    block_means,
     check_field,
     frost_curves,
-    has_fine_depths,
     line_of,
     milliseconds,
     picture_depth,
@@ -53,9 +49,13 @@ from soiltemp.figures.reading import (
 
 __all__ = ["make_frost"]
 
-MOST_COLUMNS = 1500
-SKY = 0.45
-"""Height of the part above the ground, where the surface temperature is drawn, as a share of the part below."""
+LINES_OF, AREAS_OF = "each point of a line tells", "pale areas from means"
+
+MOST_TIMES = 15000
+"""Points of a curve; of more output times, each point tells of a group of them."""
+
+LONG = 8.0
+"""Length of a run [year] from which its lines are drawn thin, for the winters stand close."""
 
 
 def make_frost(
@@ -73,14 +73,15 @@ def make_frost(
     Parameters
     ----------
     result : xr.Dataset
-        With `ground_temperature` (time, depth) [degC], and `frost_depth`, `frozen_ground_depth` (time) [m] where it has
-        them.
+        With `ground_temperature` (time, depth) [degC], and `frost_depth`, `frozen_ground_depth` and `snow_depth`
+        (time) [m] where it has them.
     units : {"si", "us"}
         Metres and degC, or feet and degF.
     line : (depth of the crown, outside diameter), optional
         A buried line [m or strings]; else the one that the result has, if any.
     surface : {"shown", "left out"}
-        Whether the surface temperature is drawn above the ground, where the result holds it when the picture is made.
+        Whether surface temperature and snow are drawn above the ground, where the result holds them when the picture is
+        made.
     deepest : float or str, optional
         Depth down to which the picture goes [m]; else a quarter beyond the greatest frost depth.
     width, height : int
@@ -95,77 +96,115 @@ def make_frost(
     ------
     InputError, UnitError
         A result without ground temperature, or an argument that cannot be right.
+
+    Notes
+    -----
+    Of very many output times groups are drawn, and told under the title: their greatest depths, and the means of their
+    surface temperature and snow.
     """
     shown = display(units)
     check_field(result)
     is_sky = surface == "shown" and surface_of(result) is not None
+    is_snow = is_sky and "snow_depth" in result
 
-    def read(new: xr.Dataset, new_line: Any) -> tuple[Picture, tuple[float, float]]:
-        return _picture(new, line_of(new, new_line), shown, deepest, is_sky)
+    def read(new: xr.Dataset, new_line: Any) -> tuple[Picture, AboveGround]:
+        return _picture(new, line_of(new, new_line), shown, deepest, is_sky, is_snow)
 
-    picture, air = read(result, line)
+    picture, above = read(result, line)
     sheet = Sheet(picture, title="Frost in the ground", width=width, height=height, x_axis_type="datetime")
     drawn = sheet.figure
     style_time_axis(drawn)
     drawn.yaxis.axis_label = f"Depth below ground surface [{shown.depth_unit}]"
     if is_sky:
-        drawn.extra_y_ranges = {"surface": bm.Range1d(*_surface_range(air))}
+        drawn.extra_y_ranges = {"surface": bm.Range1d(*above.surface_range), "snow": bm.Range1d(*above.snow_range)}
         axis = bm.LinearAxis(y_range_name="surface", ticker=bm.FixedTicker())
         drawn.add_layout(axis, "right")
         sheet.dress()
-    _fit_axes(sheet, air, is_sky, shown)
-    _draw(sheet, shown, is_sky)
+    curves = _draw(sheet, shown, is_sky, is_snow)
+    _fit_axes(sheet, above, is_sky, shown)
+    _fit_lines(sheet, curves)
 
     def update(result: xr.Dataset, *, line: Any = line, layers: Any = None) -> None:  # noqa: ARG001 (one form for all pictures)
-        renewed, new_air = read(result, line)
+        renewed, new_above = read(result, line)
         sheet.show(renewed)
-        _fit_axes(sheet, new_air, is_sky, shown)
+        _fit_axes(sheet, new_above, is_sky, shown)
+        _fit_lines(sheet, curves)
 
     return drawn, update
 
 
 def _picture(
-    result: xr.Dataset, line: BuriedLine | None, shown: Display, deepest: Any, is_sky: bool
-) -> tuple[Picture, tuple[float, float]]:
+    result: xr.Dataset, line: BuriedLine | None, shown: Display, deepest: Any, is_sky: bool, is_snow: bool
+) -> tuple[Picture, AboveGround]:
     check_field(result)
     frost, frozen = frost_curves(result)
     known_thaw = thawed_depth(result)
-    thawed = np.full(frost.size, np.nan) if known_thaw is None else known_thaw
+    nothing = np.full(frost.size, np.nan)
+    thawed = nothing if known_thaw is None else known_thaw
     surface = surface_of(result) if is_sky else None
+    snow = np.asarray(result["snow_depth"], dtype=np.float64) if is_snow and "snow_depth" in result else None
     times = milliseconds(result["time"])
     ends = (float(times[0]), float(times[-1]) if times.size > 1 else float(times[0]) + 86400e3)
     to_depth = picture_depth(result, line, until="frost", deepest=deepest)
-    temperatures = np.empty(0) if surface is None else shown.temperature(surface)
-    air = (0.0, 1.0)
-    if temperatures.size:
-        low, high = float(temperatures.min()), float(temperatures.max())
-        air = nice_limits(min(low, shown.freezing), max(high, shown.freezing), 5.0 * shown.band)
+    temperatures = nothing if surface is None else shown.temperature(surface)
+    above = above_ground(temperatures, None if snow is None else shown.depth(snow), shown)
     bottom = float(shown.depth(to_depth))
+    areas, per_area = frozen_areas(result, times, frost, known_thaw, to_depth, shown)
+    count = -(-times.size // MOST_TIMES)
+    points = _means(times, count)
+    depths = {
+        "frost_depth": frost,
+        "frozen_ground_depth": nothing if frozen is None else frozen,
+        "thawed_depth": thawed,
+    }
+    curves = {name: packed(shown.depth(_greatest_of(values, count))) for name, values in depths.items()}
+    no_snow = {"time": np.empty(0), "snow_depth": packed([])}
+    means = {"surface_temperature": temperatures, "snow": nothing if snow is None else shown.depth(snow)}
+    curves |= {name: packed(_means(values, count)) for name, values in means.items()}
+    has_ice = bool(np.any(depths["frozen_ground_depth"] > 0.0))
     picture = Picture(
         sources={
-            "curves": {
-                "time": times,
-                "frost_depth": packed(shown.depth(frost)),
-                "frozen_ground_depth": packed(np.full(times.size, np.nan) if frozen is None else shown.depth(frozen)),
-                "thawed_depth": packed(shown.depth(thawed)),
-                "surface_temperature": packed(temperatures if temperatures.size else np.full(times.size, np.nan)),
-            },
-            "ice": _curve(times, shown.depth(frozen)) if frozen is not None and np.any(frozen > 0.0) else _NO_CURVE,
-            "thaw": _curve(times, shown.depth(thawed)) if np.isfinite(thawed).any() else _NO_CURVE,
-            "ground": _frozen_ground(result, times, frost, known_thaw, to_depth, shown),
+            "curves": {"time": points, **curves},
+            "ice": _curve(points, curves["frozen_ground_depth"]) if has_ice else _NO_CURVE,
+            "thaw": _curve(points, curves["thawed_depth"]) if np.isfinite(thawed).any() else _NO_CURVE,
+            "snow": no_snow if snow is None else {"time": points, "snow_depth": curves["snow"]},
+            "ground": areas,
             "greatest": _greatest(times, frost, result, shown, ends),
             "level": {"x": np.asarray(ends), "depth": packed([0.0, 0.0]), "freezing": packed([shown.freezing] * 2)},
             "line": band_of(line, shown, ends),
         },
         x=ends,
-        y=(bottom, -SKY * bottom if is_sky else 0.0),
-        subtitle=_subtitle(result, shown, is_thaw_known=known_thaw is not None),
-    )
-    return picture, air
+        y=(bottom, -above.height * bottom if is_sky else 0.0),
+        subtitle=_subtitle(result, shown, is_thaw_known=known_thaw is not None) + _groups_text(count, per_area),
+    )  # fmt: skip
+    return picture, above
+
+
+def _groups(values: Floats, count: int) -> Any:
+    return np.arange(0, values.size, count)
+
+
+def _greatest_of(values: Floats, count: int) -> Floats:
+    """The greatest of each group of so many values; missing ones count only where all are."""
+    return values if count == 1 else np.fmax.reduceat(values, _groups(values, count))
+
+
+def _means(values: Floats, count: int) -> Floats:
+    """The mean of each group of so many values."""
+    if count == 1:
+        return values
+    starts = _groups(values, count)
+    return np.asarray(np.add.reduceat(values, starts) / np.diff(np.append(starts, values.size)), dtype=np.float64)
+
+
+def _groups_text(count: int, per_area: int) -> str:
+    """What is told of output times drawn together."""
+    found = [f"{what} of {n} output times" for what, n in ((LINES_OF, count), (AREAS_OF, per_area)) if n > 1]
+    return "".join(f"; {text}" for text in found)
 
 
 def _curve(times: Floats, depths: Any) -> Columns:
-    return {"time": times, "depth": packed(depths)}
+    return {"time": times, "depth": depths}
 
 
 _NO_CURVE: Columns = {"time": np.empty(0), "depth": packed([])}
@@ -180,45 +219,6 @@ def _subtitle(result: xr.Dataset, shown: Display, *, is_thaw_known: bool) -> str
         ground = shown.error_text(float(result["frozen_ground_depth_error"]), "length")
         texts.append(f"depth of frozen ground {ground}")
     return "Numerical error: " + ", ".join(texts) + lacking
-
-
-def _frozen_ground(
-    result: xr.Dataset, times: Floats, frost: Floats, thawed: Floats | None, to_depth: float, shown: Display
-) -> Columns:
-    """Frozen ground as polygons in time and depth, with holes where they have some; none where it cannot be told."""
-    columns: Columns = {"x": [], "y": []}
-    if thawed is None or times.size < 2:
-        return columns
-    for rings in _frozen_rings(result, times, to_depth) if has_fine_depths(result) else _bands(times, frost, thawed):
-        columns["x"].append([[ring[:, 0] for ring in rings]])
-        columns["y"].append([[packed(shown.depth(ring[:, 1])) for ring in rings]])
-    return columns
-
-
-def _frozen_rings(result: xr.Dataset, times: Floats, to_depth: float) -> Iterator[list[Floats]]:
-    """The parts of the time-depth plane below 0 degC: of each the outer ring, and those of its holes."""
-    depths = np.asarray(result["depth"], dtype=np.float64)
-    field = np.asarray(result["ground_temperature"].transpose("time", "depth"), dtype=np.float64)
-    kept = depths <= depths[min(int(np.searchsorted(depths, to_depth)), depths.size - 1)]
-    times, field, _ = block_means(times, field[:, kept], MOST_COLUMNS)
-    if times.size < 2 or int(kept.sum()) < 2 or field.min() >= 0.0:
-        return
-    generator = contour_generator(times - times[0], depths[kept], field.T, fill_type=FillType.OuterOffset)
-    areas: Any = generator.filled(float(field.min()) - 1.0, -1e-9)  # points and offsets of rings, by the fill type
-    for outline, breaks in zip(*areas, strict=True):
-        points = np.asarray(outline, dtype=np.float64) + np.array([times[0], 0.0])
-        yield [points[a:b] for a, b in pairwise(breaks)]
-
-
-def _bands(times: Floats, frost: Floats, thawed: Floats) -> Iterator[list[Floats]]:
-    """Between frost depth and thawed depth, one ring for each time of unbroken frost."""
-    edges = np.flatnonzero(np.diff(np.concatenate([[0], (frost > 0.0).astype(int), [0]])))
-    top = np.nan_to_num(thawed)
-    for first, last in zip(edges[::2], edges[1::2], strict=True):
-        at = slice(first, last)
-        down = np.stack([times[at], frost[at]], axis=1)
-        up = np.stack([times[at], top[at]], axis=1)[::-1]
-        yield [np.concatenate([down, up])]
 
 
 def _greatest(times: Floats, frost: Floats, result: xr.Dataset, shown: Display, ends: tuple[float, float]) -> Columns:
@@ -243,30 +243,30 @@ def _greatest(times: Floats, frost: Floats, result: xr.Dataset, shown: Display, 
     }
 
 
-def _surface_range(air: tuple[float, float]) -> tuple[float, float]:
-    """Ends of the axis that put `air` into the part above the ground, with a little room under it."""
-    share = SKY / (1.0 + SKY) * 0.92
-    return air[1] - (air[1] - air[0]) / share, air[1]
-
-
-def _fit_axes(sheet: Sheet, air: tuple[float, float], is_sky: bool, shown: Display) -> None:
-    """Let the depth axis begin at the ground and the temperature axis end above it."""
+def _fit_axes(sheet: Sheet, above: AboveGround, is_sky: bool, shown: Display) -> None:
+    """Let the depth axis begin at the ground, and the axis of temperature and snow end above it."""
     drawn = sheet.figure
     bottom = float(drawn.y_range.start)
     assign(drawn.yaxis[0], bounds=(0.0, bottom))
     assign(drawn.ygrid[0], bounds=(0.0, bottom))
-    if is_sky:
-        first, last = _surface_range(air)
-        assign(drawn.extra_y_ranges["surface"], start=first, end=last)
-        step = next(s for s in (5.0, 10.0, 20.0, 50.0, 100.0) if (air[1] - air[0]) / s <= 5.0)
-        ticks = [step * n for n in range(int(np.ceil(air[0] / step)), int(np.floor(air[1] / step)) + 1)]
-        # the unit stands at each number: a title of the axis would run down into the ground
-        words = {tick: f"{tick:.0f} {shown.temperature_unit}".replace("-", "−") for tick in ticks}
-        assign(drawn.yaxis[1], bounds=air, major_label_overrides=words)
-        assign(drawn.yaxis[1].ticker, ticks=ticks)
+    if not is_sky:
+        return
+    for name, (first, last) in (("surface", above.surface_range), ("snow", above.snow_range)):
+        assign(drawn.extra_y_ranges[name], start=first, end=last)
+    words = above.labels(shown)
+    assign(drawn.yaxis[1], bounds=above.bounds, major_label_overrides=words)
+    assign(drawn.yaxis[1].ticker, ticks=list(words))
 
 
-def _draw(sheet: Sheet, shown: Display, is_sky: bool) -> None:
+def _fit_lines(sheet: Sheet, curves: list[Any]) -> None:
+    """Lines of a width that leaves winters apart that stand close."""
+    years = (float(sheet.figure.x_range.end) - float(sheet.figure.x_range.start)) / (365.25 * 86400e3)
+    for curve, width in zip(curves, (2.2, 1.8, 2.2, 1.2) if years < LONG else (1.3, 1.0, 1.2, 0.8), strict=False):
+        assign(curve.glyph, line_width=width)
+
+
+def _draw(sheet: Sheet, shown: Display, is_sky: bool, is_snow: bool) -> list[Any]:
+    """Draw all; the lines whose width depends on the length of the run are returned."""
     drawn, curves = sheet.figure, sheet.sources["curves"]
     ground = drawn.multi_polygons("x", "y", source=sheet.sources["ground"], fill_color=FROZEN, line_color=None)
     band = drawn.quad(
@@ -282,10 +282,17 @@ def _draw(sheet: Sheet, shown: Display, is_sky: bool) -> None:
     drawn.line("x", "depth", source=sheet.sources["level"], line_color=SOIL, line_width=2.5)
     items.append(("depth of frozen ground (ice)", "ice", [frozen]))
     items.append(("thawed from above down to here", "thaw", [thawed]))
+    lines = [frost, frozen, thawed]
+    if is_snow:
+        snow = drawn.varea(
+            "time", 0.0, "snow_depth", source=sheet.sources["snow"], y_range_name="snow", fill_color=SNOW
+        )
+        items.append(("snow on the ground (above)", "snow", [snow]))
     if is_sky:
         surface = drawn.line(
             "time", "surface_temperature", source=curves, y_range_name="surface", line_color=AIR, line_width=1.2
         )
+        lines.append(surface)
         items.append(("surface temperature (above)", "curves", [surface]))
         drawn.line(
             "x", "freezing", source=sheet.sources["level"], y_range_name="surface", line_color=QUIET, line_dash="dotted"
@@ -304,7 +311,7 @@ def _draw(sheet: Sheet, shown: Display, is_sky: bool) -> None:
         y_offset=9, text_color=INK, text_font_style="bold", padding=2, **words,
     )  # fmt: skip
     drawn.text(
-        "left", "top", text="text", source=sheet.sources["line"], x_offset=8, y_offset=-4, text_baseline="bottom",
+        "left", "bottom", text="text", source=sheet.sources["line"], x_offset=8, y_offset=5, text_baseline="top",
         text_color=LINE, **words,
     )  # fmt: skip
     tooltips = [
@@ -315,8 +322,11 @@ def _draw(sheet: Sheet, shown: Display, is_sky: bool) -> None:
     ]
     if is_sky:
         tooltips.append(("surface", f"@surface_temperature{{0.0}} {shown.temperature_unit}"))
+    if is_snow:
+        tooltips.append(("snow", f"@snow{{0.00}} {shown.depth_unit}"))
     sheet.hover(frost, tooltips, "vline", time="datetime")
     drawn.xgrid.grid_line_color = QUIET
     drawn.xgrid.grid_line_alpha = 0.15
     items += [("frozen ground", "ground", [ground]), ("buried line", "line", [band])]
-    sheet.legend(items, columns=3)
+    sheet.legend(items, columns=4 if is_snow else 3)
+    return lines

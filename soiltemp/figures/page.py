@@ -5,7 +5,6 @@ from __future__ import annotations
 import importlib.metadata
 import os
 import tomllib
-from dataclasses import dataclass
 from functools import cache
 from typing import Any
 
@@ -21,12 +20,15 @@ from soiltemp.errors import InputError, message
 from soiltemp.figures.answers import answers, depth_rows, trust, winter_rows
 from soiltemp.figures.display import Display, date, display
 from soiltemp.figures.envelope import make_envelope
+from soiltemp.figures.frost_return import has_return_values, make_frost_return
 from soiltemp.figures.frost_time import make_frost
+from soiltemp.figures.material_table import MATERIAL_UNITS, material_heads, material_number, materials, written
 from soiltemp.figures.page_text import STYLE, TEMPLATE
 from soiltemp.figures.reading import BuriedLine, layers_of, line_of
 from soiltemp.figures.temperatures import make_temperatures
 from soiltemp.figures.time_depth import make_time_depth
-from soiltemp.units import from_si
+from soiltemp.figures.winter_frost import make_winter_frost
+from soiltemp.figures.winter_tables import deepest_winter, design_facts, return_table, winter_notes, winter_table
 from soiltemp.whole_file import file_place, write_whole
 
 __all__ = ["save_page"]
@@ -41,15 +43,15 @@ FROST_CAPTION = (
     "lies below."
 )
 
-MATERIAL_UNITS = {
-    "si": {"conductivity": "W/(m K)", "heat_capacity": "MJ/(m^3 K)", "latent_heat": "MJ/m^3", "heat_flux": "W/m^2"},
-    "us": {
-        "conductivity": "BTU/(hour ft delta_degF)",
-        "heat_capacity": "BTU/(ft^3 delta_degF)",
-        "latent_heat": "BTU/ft^3",
-        "heat_flux": "BTU/(hour ft^2)",
-    },
-}
+WINTER_CAPTION = (
+    "Frost of each winter. Bar: the {freezing} line, its dark core the frozen ground. Beside it the closed forms of "
+    "the same winter."
+)
+
+RETURN_CAPTION = (
+    "Winters against their return periods. On this axis the Gumbel distribution is a straight line as long as every "
+    "winter has frost. The small marks on the curves are the numbers of the table below."
+)
 
 RUN_FACTS = (
     ("initial_state", "Start of the run"),
@@ -123,23 +125,29 @@ def _page(result: xr.Dataset, shown: Display, units: str, title: str, line: Any,
     buried, strata = line_of(result, line), layers_of(result, layers)
     key_answers = answers(result, shown, buried)  # first, for it checks the result
     pictures = _pictures(result, shown, units, buried, strata)
-    materials = _materials(result, shown, units)
+    solved = materials(result, shown, units)
     times = result["time"].values
     texts = {
         "style": STYLE,
         "picture_width": PICTURE_WIDTH,
         "period": f"{date(times[0])} to {date(times[-1])}",
         "answers": key_answers,
-        "winters": winter_rows(result, shown),
+        # a run tells of its winters in a section of their own; what solve() returns has none
+        "winters": [] if "winter_frost_depth" in result else winter_rows(result, shown),
+        "every_winter": winter_table(result, shown),
+        "deepest_winter": deepest_winter(result),
+        "winter_notes": winter_notes(result, shown),
+        "returned": return_table(result, shown),
+        "design": design_facts(result, shown),
         "depths": depth_rows(result, shown),
         "trust": trust(result, shown),
         "closed_forms": "\n".join(closed_form_lines(result, units=units)),
-        "material_heads": _material_heads(shown, units),
-        "materials": materials,
+        "material_heads": material_heads(shown, units),
+        "materials": solved,
         "facts": _facts(result, units),
         "quality_report": str(result.attrs.get("quality_report", "")),
         "layers": []
-        if materials and layers is None
+        if solved and layers is None
         else [
             (layer.name, *map(shown.depth_text, (layer.top, layer.bottom, layer.bottom - layer.top)))
             for layer in strata
@@ -159,84 +167,14 @@ def _page(result: xr.Dataset, shown: Display, units: str, title: str, line: Any,
     )
 
 
-@dataclass(frozen=True)
-class _Material:
-    """A layer as solved: the cells of its row, and where its values come from."""
-
-    cells: tuple[str, ...]
-    source: str
-
-
-def _written(unit: str) -> str:
-    return (
-        unit.replace("delta_degF", "°F")
-        .replace("hour", "h")
-        .replace("^3", "³")
-        .replace("^2", "²")
-        .replace(" ", "\N{NO-BREAK SPACE}")
-    )
-
-
-def _material_heads(shown: Display, units: str) -> tuple[str, ...]:
-    named = {kind: _written(unit) for kind, unit in MATERIAL_UNITS[units].items()}
-    return (
-        "layer",
-        "from",
-        "thickness",
-        f"conductivity thawed [{named['conductivity']}]",
-        "frozen",
-        f"heat capacity thawed [{named['heat_capacity']}]",
-        "frozen",
-        f"latent heat [{named['latent_heat']}]",
-        f"freezes over [{shown.temperature_unit}]",
-    )
-
-
-def _materials(result: xr.Dataset, shown: Display, units: str) -> list[_Material]:
-    """Thawed and frozen values of each layer, read off the curves that were solved."""
-    curves = ("input_conductivity", "input_heat_capacity", "input_knot", "input_frozen_share")
-    if not {"input_layer_name", "input_layer_thickness", *curves} <= set(result.variables):
-        return []
-    sources = result["input_layer_source"].values if "input_layer_source" in result else None
-    rows: list[_Material] = []
-    for number, layer in enumerate(layers_of(result)):
-        k, c, knots, shares = (_pieces(result[name].values[number]) for name in curves)
-        latent = 0.0
-        if knots.size:
-            # the heat capacity of a piece, less what it would be by its mean share of ice, is latent heat
-            ice = 0.5 * (shares[:-1] + shares[1:])
-            latent = float(np.sum((c[1:-1] - c[-1] + ice * (c[-1] - c[0])) * np.diff(knots)))
-        values = ((k[-1], "conductivity"), (k[0], "conductivity"), (c[-1], "heat_capacity"), (c[0], "heat_capacity"))
-        cells = [_number(float(value), kind, units) for value, kind in values]
-        cells.append(_number(latent, "latent_heat", units))
-        ends = (
-            [f"{float(shown.temperature(knot)):.3g}".replace("-", "−") for knot in (knots[0], knots[-1])]
-            if (knots.size)
-            else []
-        )
-        name_and_place = (layer.name, shown.depth_text(layer.top), shown.depth_text(layer.bottom - layer.top))
-        source = str(sources[number]) if sources is not None and str(sources[number]) else "source not stated"
-        rows.append(_Material((*name_and_place, *cells, " to ".join(ends) or "nothing freezes"), source))
-    return rows
-
-
-def _pieces(row: Any) -> Any:
-    return row[np.isfinite(row)]
-
-
-def _number(value: float, kind: str, units: str) -> str:
-    shown = from_si(value, kind, MATERIAL_UNITS[units][kind])
-    return f"{shown:.0f}" if abs(shown) >= 1000.0 else f"{shown:.3g}"
-
-
 def _facts(result: xr.Dataset, units: str) -> list[tuple[str, str]]:
     """Surface, record and run: what the result tells of them."""
     found: list[tuple[str, str]] = []
     cover = _cover(result)
     if cover:
         found.append(("Cover of the surface", cover))
-    if "n_factors" in result.attrs:
-        found.append(("n-factors", str(result.attrs["n_factors"])))
+    if "surface_rule" in result.attrs:
+        found.append(("Surface", str(result.attrs["surface_rule"])))
     for name in ("input_air_temperature", "input_surface_temperature"):
         if name not in result:
             continue
@@ -244,13 +182,16 @@ def _facts(result: xr.Dataset, units: str) -> list[tuple[str, str]]:
         found += [(f"{what}, {text}", str(labels[key])) for key, text in RECORD_FACTS if key in labels]
         count = f"{result[name].size}"
         if f"{name}_filled" in result:
-            count += f", {int(result[f'{name}_filled'].sum())} of them interpolated"
+            flags = result[f"{name}_filled"].to_numpy()
+            count += f", {int((flags == 1).sum())} of them interpolated"
+            by_climatology = int((flags == 2).sum())
+            count += f", {by_climatology} by climatology plus anomaly" if by_climatology else ""
         found.append((f"{what}, values used", count))
     flux = result.get("base_heat_flux")
     if flux is not None and flux.size and float(flux.max()) == float(flux.min()):
-        unit = _written(MATERIAL_UNITS[units]["heat_flux"])
+        unit = written(MATERIAL_UNITS[units]["heat_flux"])
         # positive downward inside; a reader knows the heat of the earth as upward
-        amount = _number(abs(float(flux[0])), "heat_flux", units)
+        amount = material_number(abs(float(flux[0])), "heat_flux", units)
         way = "none" if float(flux[0]) == 0.0 else f"{amount} {unit} {'upward' if float(flux[0]) < 0.0 else 'downward'}"
         found.append(("Heat through the base", way))
     found += [(text, str(result.attrs[name])) for name, text in RUN_FACTS if name in result.attrs]
@@ -292,12 +233,15 @@ def _pictures(
     """Name, figure and caption of each picture."""
     size: dict[str, Any] = {"units": units, "width": PICTURE_WIDTH}
     freezing = f"{shown.freezing:.0f} {shown.temperature_unit}"
+    is_snow = "snow_depth" in result
     found = [
         (
             "frost",
-            make_frost(result, line=line, height=470, **size)[0],
-            f"Frost through time. Solid: the {freezing} line, the cautious one of the two depths. {FROST_CAPTION}",
+            make_frost(result, line=line, height=540 if is_snow else 470, **size)[0],
+            f"Frost through time. Solid: the {freezing} line, the cautious one of the two depths. {FROST_CAPTION}"
+            + (" Above the ground: the snow, on a scale of its own, and the surface temperature." if is_snow else ""),
         ),
+        *_winter_pictures(result, line, size, freezing),
         (
             "envelope",
             make_envelope(result, line=line, layers=strata, height=430, **size)[0],
@@ -322,6 +266,30 @@ def _pictures(
     )
     for name, drawn, _ in found:
         drawn.name = name
+    return found
+
+
+def _winter_pictures(
+    result: xr.Dataset, line: BuriedLine | None, size: dict[str, Any], freezing: str
+) -> list[tuple[str, Any, str]]:
+    """Frost of each winter, and by its return period, where the result tells of them."""
+    found: list[tuple[str, Any, str]] = []
+    if "winter_frost_depth" in result:
+        found.append(
+            (
+                "winter_frost",
+                make_winter_frost(result, line=line, height=430, **size)[0],
+                WINTER_CAPTION.format(freezing=freezing),
+            )
+        )
+    if has_return_values(result):
+        found.append(
+            (
+                "frost_return",
+                make_frost_return(result, line=line, height=470, **size)[0],
+                RETURN_CAPTION,
+            )
+        )
     return found
 
 

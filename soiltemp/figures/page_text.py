@@ -17,6 +17,11 @@ header { border-bottom: 6px solid var(--soil); padding: 24px 0 12px; margin-bott
 .layers .numbers td { border-bottom: 0; padding-bottom: 0; }
 .layers .source td { color: var(--quiet); padding-top: 0; }
 .trust td:first-child { width: 32%; }
+.every th { overflow-wrap: normal; }
+.every td { white-space: nowrap; padding-top: 4px; padding-bottom: 4px; }
+.every .deepest td { font-weight: bold; background: var(--ice); }
+#design dd:not(:first-of-type) { font-weight: normal; }
+.note { margin: 6px 0 0; font-size: 14px; color: var(--quiet); }
 .trust td:nth-child(2) { width: 26%; }
 h1 { font-size: 26px; line-height: 1.25; margin: 0 0 4px; overflow-wrap: anywhere; }
 h2 { font-size: 19px; margin: 34px 0 10px; }
@@ -59,6 +64,8 @@ summary { cursor: pointer; }
   figcaption { padding-left: 48px; font-size: 9.5pt; }
   table, li { font-size: 9.5pt; }
   th, td, dt, dd { padding-top: 3px; padding-bottom: 3px; }
+  .note { font-size: 9.5pt; }
+  .every td { padding-top: 2px; padding-bottom: 2px; }
   details:not([open]) { display: none; }
 }
 """
@@ -124,6 +131,47 @@ Object.defineProperty(window, "devicePixelRatio", { value: Math.max(2, window.de
 <p>The result holds one depth only: there is no map through time and depth.</p>
 {% endif %}
 </section>
+{% if every_winter or design %}
+<section class="wide" id="winters">
+<h2>Winters</h2>
+{% if design %}
+<h3>Design</h3>
+<dl id="design">
+{% for name, text in design %}
+<dt>{{ name }}</dt><dd>{{ text }}</dd>
+{% endfor %}
+</dl>
+{% endif %}
+{% if returned %}
+<h3>Rare frost</h3>
+<div class="scroll"><table id="returned">
+<caption>Frost that is exceeded on average once in so many winters, with the interval that holds 90 %</caption>
+<thead><tr>{% for cell in returned[0] %}<th>{{ cell }}</th>{% endfor %}</tr></thead>
+<tbody>
+{% for row in returned[1:] %}
+<tr>{% for cell in row %}<td>{{ cell }}</td>{% endfor %}</tr>
+{% endfor %}
+</tbody></table></div>
+<p class="note">Fitted to the greatest frost of each winter. The intervals hold the shortness of the record, not a
+climate that changes, nor what is uncertain in the ground and its surface.</p>
+{% endif %}
+{% if every_winter %}
+<h3>Every winter</h3>
+<div class="scroll"><table class="every" id="every-winter">
+<thead><tr>{% for cell in every_winter[0] %}<th>{{ cell }}</th>{% endfor %}</tr></thead>
+<tbody>
+{% for row in every_winter[1:] %}
+<tr{% if loop.index0 == deepest_winter %} class="deepest"{% endif %}>
+{% for cell in row %}<td>{{ cell }}</td>{% endfor %}
+</tr>
+{% endfor %}
+</tbody></table></div>
+{% for note in winter_notes %}
+<p class="note">{{ note }}</p>
+{% endfor %}
+{% endif %}
+</section>
+{% endif %}
 {% if materials or facts or layers %}
 <section class="wide" id="inputs">
 <h2>What it stands on</h2>
