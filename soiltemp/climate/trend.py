@@ -102,8 +102,8 @@ def warming_trend(values: xr.Dataset | xr.DataArray, *, confidence: float = 0.95
             found = "a dataset without air_mean_temperature"
             raise InputError(message("values", found, "winters of a record", "give the result of winters(air)"))
         # a whole winter may lack weeks of summer, and the mean of its frost year is then too low
-        known = (values["air_complete"] == 1) & (values["air_missing_share"] < MOST_MISSING)
-        values = values["air_mean_temperature"].where(known)
+        whole = (values["air_complete"] == 1) & (values["air_missing_share"] < MOST_MISSING)
+        values = values["air_mean_temperature"].where(whole)
     if not isinstance(values, xr.DataArray) or values.dims not in (("winter",), ("time",)):
         found = f"{type(values).__name__} {show_value(getattr(values, 'dims', values))}"
         remedy = "give winters(air), or one value a year as a DataArray"
