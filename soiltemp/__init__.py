@@ -15,6 +15,7 @@ if TYPE_CHECKING:
     from soiltemp.netcdf import open_result, save
     from soiltemp.site import Site, read_site
     from soiltemp.site_run import run
+    from soiltemp.water import water_content
 
 __all__ = [
     "Layer",
@@ -34,6 +35,7 @@ __all__ = [
     "run",
     "save",
     "solve",
+    "water_content",
 ]
 
 # Found when first asked for: not every notebook has a site file, and an import should cost little.
@@ -44,6 +46,7 @@ _LATER = {
     "read_site": "soiltemp.site",
     "run": "soiltemp.site_run",
     "save": "soiltemp.netcdf",
+    "water_content": "soiltemp.water",
 }
 
 

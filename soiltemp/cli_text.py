@@ -275,6 +275,8 @@ def _coldest(site: Site, result: xr.Dataset, units: Units) -> list[str]:
         if float(result["frost_depth"].max()) == 0.0:
             where = f"at {units.show(site.line.cover, 'length')}; no frost in the time studied."
         lines.append(f"  The crown of the line lies {where}")
+        if "design_winter" in result and "snow_depth" in result:
+            lines.append("  That is the margin in this one winter: others may freeze deeper under less snow.")
     return lines
 
 

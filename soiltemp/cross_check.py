@@ -39,6 +39,9 @@ Floats = NDArray[np.float64]
 FEWEST_OUTPUTS = 12
 """Outputs in the last year below which no wave is fitted to them."""
 
+LONGEST_FROST = 330 * DAY
+"""Time from the first frost of a winter in which its frost is looked for [s]: it may last into summer."""
+
 SMALLEST_WAVE = 0.5
 """Amplitude of the surface [K] below which a year has no wave worth comparing."""
 
@@ -312,6 +315,7 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
             else (np.nan, "Left out: the result does not hold frozen_ground_depth.")
         ),
     }
+    found |= _numerical_frost(surface, winter, result)
     if reason:
         return found | dict.fromkeys(names, (np.nan, f"Left out: {reason}."))
     number = wet_layers(profile)
@@ -342,6 +346,18 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
     )
     why = "What the stored heat leaves of Stefan's depth with these mean properties."
     found[names[2]] = (steps[0].lambda_coefficient, why) if steps else (np.nan, found[names[1]][1])
+    return found
+
+
+def _numerical_frost(surface: _Surface, winter: _Winter, result: xr.Dataset) -> dict[str, tuple[Any, str]]:
+    """Numerical frost of the coldest winter: from its first moment until it has had time to thaw."""
+    seconds = np.asarray((result["time"].values - surface.start) / np.timedelta64(1, "ns") / 1e9)
+    inside = (seconds >= winter.first) & (seconds <= winter.first + LONGEST_FROST)
+    found: dict[str, tuple[Any, str]] = {}
+    for name in ("frost_depth", "frozen_ground_depth"):
+        known = name in result and winter.index > 0.0 and bool(inside.any())
+        value = float(result[name].values[inside].max()) if known else (0.0 if name in result else np.nan)
+        found[f"coldest_winter_{name}"] = (value, f"Numerical, of the winter of {winter.text}.")
     return found
 
 
@@ -428,8 +444,8 @@ def closed_form_lines(dataset: xr.Dataset, *, units: str = "si") -> tuple[str, .
         ("freezing index of the surface", f"{index} in {season:.0f} days"),
         ("frost by Stefan's equation", shown("stefan_frost_depth", "length", 2)),
         ("frost by the modified Berggren equation", shown("modified_berggren_frost_depth", "length", 2)),
-        (f"numerical, line of {zero}", shown("maximum_frost_depth", "length", 2)),
-        ("numerical, frozen ground", shown("maximum_frozen_ground_depth", "length", 2)),
+        (f"numerical, line of {zero}, of that winter", shown("coldest_winter_frost_depth", "length", 2)),
+        ("numerical, frozen ground, of that winter", shown("coldest_winter_frozen_ground_depth", "length", 2)),
     )
     comments = (
         ("damping depth", "damping_depth_annual"),
@@ -442,8 +458,8 @@ def closed_form_lines(dataset: xr.Dataset, *, units: str = "si") -> tuple[str, .
     return (
         f"Annual wave of the surface: mean {mean}, amplitude {wave}",
         *_wave_table(dataset, units),
-        "Frost of the coldest winter",
-        *(f"  {text:<42}{value}" for text, value in rows),
+        "Frost of the winter that is coldest at the surface",
+        *(f"  {text:<43}{value}" for text, value in rows),
         "Why they differ",
         *(f"  {text}: {dataset[name].attrs['comment']}" for text, name in comments),
     )

@@ -18,14 +18,21 @@ __all__ = [
     "extremes",
     "frost_depth",
     "frozen_ground_depth",
+    "ground_temperature",
     "heat_balance",
     "temperature_at",
     "zones",
 ]
 
 
-def _temperature(result: xr.Dataset) -> xr.DataArray:
-    """The ground temperature of a result, checked and in the order (time, depth)."""
+def ground_temperature(result: xr.Dataset) -> xr.DataArray:
+    """The ground temperature of a result, checked and in the order (time, depth).
+
+    Raises
+    ------
+    InputError
+        No ground temperature, other dimensions, missing values.
+    """
     if "ground_temperature" not in result:
         raise InputError(
             message("result", f"variables {list(result.data_vars)}", "a dataset with ground_temperature(time, depth)",
@@ -80,7 +87,7 @@ def frost_depth(result: xr.Dataset) -> xr.DataArray:
     """
     if "frost_depth" in result:
         return result["frost_depth"]
-    temperature = _temperature(result)
+    temperature = ground_temperature(result)
     values = deepest_frost(np.asarray(temperature["depth"], dtype=np.float64), np.asarray(temperature))
     return xr.DataArray(
         values,
@@ -122,7 +129,7 @@ def zones(result: xr.Dataset) -> xr.Dataset:
     >>> zones(xr.Dataset({"ground_temperature": field})).zone_bottom.values
     array([[0.5, 2.5]])
     """
-    temperature = _temperature(result)
+    temperature = ground_temperature(result)
     depths = np.asarray(temperature["depth"], dtype=np.float64)
     found = [frozen_zones(depths, row) for row in np.asarray(temperature)]
     width = max([1, *(len(row) for row in found)])
@@ -159,7 +166,7 @@ def envelope(result: xr.Dataset) -> xr.Dataset:
     InputError
         No ground temperature, other dimensions, missing values.
     """
-    temperature = _temperature(result)
+    temperature = ground_temperature(result)
     return xr.Dataset(
         {
             "minimum_temperature": temperature.min("time").assign_attrs(attributes("minimum_temperature")),
@@ -184,7 +191,7 @@ def temperature_at(result: xr.Dataset, depth: Any) -> xr.DataArray:
     InputError, UnitError
         A depth outside the result's, or without a unit where it needs one.
     """
-    temperature = _temperature(result)
+    temperature = ground_temperature(result)
     known = np.asarray(temperature["depth"], dtype=np.float64)
     place = to_si(depth, "length", "depth", low=float(known[0]), high=float(known[-1]))
     if known.size == 1:

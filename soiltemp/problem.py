@@ -209,7 +209,9 @@ def _frost_zone(profile: Profile, seconds: Floats, surface: Floats, resistance: 
         material = layer.material
         conductivity = max(material.conductivity_frozen, material.conductivity_thawed)
         # water-poor layers freeze as fast as their heat capacity lets them: 5 K of it stands in for latent heat
-        latent = max(material.latent_heat, 5.0 * material.heat_capacity_thawed)
+        # of what freezes by and by, mild frost sets free the first part only
+        latent = material.latent_heat * max(0.5, float(material.curves().frozen(-2.0)))
+        latent = max(latent, 5.0 * material.heat_capacity_thawed)
         covered = depth + above * conductivity
         needed = latent * layer.thickness * (covered + 0.5 * layer.thickness) / conductivity
         if needed >= index:

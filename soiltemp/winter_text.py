@@ -88,8 +88,39 @@ def return_lines(result: xr.Dataset, units: Units) -> list[str]:
             "Fitted to the greatest frost of each winter. The intervals hold the shortness of the record, not a "
             "climate that changes, nor what is uncertain in the ground and its surface."
         ),
+        *_step_note(result),
+        *_line_note(result, units),
         "",
     ]
+
+
+def _step_note(result: xr.Dataset) -> list[str]:
+    """That the record has a step, which spoils whatever is reckoned from many of its winters."""
+    if "step change" not in str(result.attrs.get("quality_report", "")):
+        return []
+    return wrapped(
+        "Note: the record may have a step (see its quality report, soiltemp check): until that is explained, values by "
+        "return period cannot be trusted."
+    )
+
+
+def _line_note(result: xr.Dataset, units: Units) -> list[str]:
+    """Whether rare frost may reach the crown of the line, by the interval that holds 90 %."""
+    if "crown_depth" not in result:
+        return []
+    crown = float(result["crown_depth"])
+    for number, period in enumerate(result["return_period"].values):
+        high = max(
+            float(result[f"frost_depth_{name}_high"].values[number])
+            for name in ("gumbel", "gev")
+            if f"frost_depth_{name}" in result
+        )
+        if high >= crown:
+            return wrapped(
+                f"The frost once in {period:g} winters may reach the crown of the line at "
+                f"{units.show(crown, 'length')}: its interval goes down to {units.show(high, 'length')}."
+            )
+    return []
 
 
 def snow_lines(compared: xr.Dataset, units: Units) -> list[str]:
@@ -121,8 +152,14 @@ def design_lines(result: xr.Dataset, units: Units) -> list[str]:
     if "design_freezing_index" not in result:
         return []
     index = result["design_freezing_index"]
-    lines = ["Design", *wrapped(f"freezing index of the air {units.show(float(index), 'freezing_index', 0)}")]
-    lines += wrapped(str(index.attrs.get("comment", "")), "    ")
+    text = f"freezing index of the air {units.show(float(index), 'freezing_index', 0)}"
+    if "design_freezing_index_low" in result:
+        ends = (float(result[f"design_freezing_index_{end}"]) for end in ("low", "high"))
+        low, high = (f"{units.value(end, 'freezing_index'):.0f}" for end in ends)
+        text += f" (90 % interval {low} to {high})"
+    lines = ["Design", *wrapped(text), *wrapped(str(index.attrs.get("comment", "")), "    "), *_step_note(result)]
+    if "design_winter" not in result:
+        lines += wrapped("No winter is made to meet it here: every winter is run as recorded (--winters design).")
     if "design_winter" in result:
         made = f"winter of {result['design_winter'].item()}"
         if "design_factor" in result:

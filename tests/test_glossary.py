@@ -40,6 +40,7 @@ CF_NAMES = {
     "thermal_conductivity_of_frozen_ground": "W m-1 K-1",
     "time": "",
     "volume_fraction_of_condensed_water_in_soil": "1",
+    "volume_fraction_of_frozen_water_in_soil": "1",
     "wind_speed": "m s-1",
 }
 

@@ -291,6 +291,6 @@ def test_every_key_of_the_file_is_in_the_glossary() -> None:
     keys = {f"{section}.{key}" for section, names in KEYS.items() for key in names if "." not in section}
     assert keys <= set(GLOSSARY), sorted(keys - set(GLOSSARY))
     # the properties of a soil or a material go by their own names
-    words = {"name", "source", "grain", "dry_conductivity"}
+    words = {"name", "source", "grain", "dry_conductivity", "freezing_curve"}
     inner = {key for section in ("layer.soil", "layer.material") for key in KEYS[section]} - words
     assert all(GLOSSARY[key].kind in KINDS for key in inner)

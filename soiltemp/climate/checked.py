@@ -10,9 +10,10 @@ import numpy.typing as npt
 import xarray as xr
 
 from soiltemp.climate.axis import regular_series
+from soiltemp.climate.column_names import telling_word
 from soiltemp.climate.findings import TAKEN_OUT, Finding, QualityReport, each_run
 from soiltemp.climate.gaps import FLAG_MEANINGS, fill_gaps
-from soiltemp.climate.moments import counted, interval_text, show_moment
+from soiltemp.climate.moments import counted, interval_text, show_moment, show_name
 from soiltemp.climate.options import STAMPS, ReadingOptions
 from soiltemp.climate.quality import check_unit_plausible, find_jumps, mask_impossible, mask_sentinels, mask_stuck
 from soiltemp.climate.quantities import Quantity
@@ -212,6 +213,9 @@ def _meaning(raw: RawRecord, options: ReadingOptions, interval: float, where: st
         raise DataFileError(message(where, found, "means or points, stated", remedy))
     if interval >= 86400.0:
         text = "one value a date, taken as the mean of that day"
+        word = telling_word(raw.column) if options.wanted.is_temperature and len(raw.values) == 1 else None
+        if word is not None:
+            text += f', though "{show_name(word)}" tells that it may be something else'
         return "mean", (Finding("assumption", None, None, 1, text, 'state values="point" if it is a reading'),)
     text = f"values every {interval_text(interval)}, taken as readings at their time"
     return "point", (Finding("assumption", None, None, 1, text, 'state values="mean" if they are means'),)

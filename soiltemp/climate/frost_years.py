@@ -34,6 +34,9 @@ HALF_SEEN = 91.0 * DAY
 
 _FLAGS = {"flag_values": np.array([0, 1], dtype=np.int8), "flag_meanings": "not_whole whole"}
 
+FARTHEST_SPLIT = 91
+"""Farthest from the warmest day that frost years may be split [days]: beyond lies the cold half of the year."""
+
 _NEVER = np.datetime64("NaT", "ns")
 
 Floats = npt.NDArray[np.float64]
@@ -112,6 +115,8 @@ def winters(air: xr.DataArray, *, surface: xr.DataArray | None = None, begins: s
     """
     part = partial_series(air, "air")
     day = _month_and_day(warmest_moment(part) if begins is None else begins)
+    if begins is not None:
+        _check_split(part, day)
     starts, ends = _frost_years(part, day)
     if not starts.size:
         found = f"values from {show_moment(part.series.start)} to {show_moment(_moment(part, part.series.seconds[-1]))}"
@@ -139,6 +144,21 @@ def winters(air: xr.DataArray, *, surface: xr.DataArray | None = None, begins: s
         if name in air.attrs:
             result.attrs[name] = air.attrs[name]
     return result
+
+
+def _check_split(part: PartialSeries, day: tuple[int, int]) -> None:
+    """Refuse to split frost years in their cold half, where the record shows which half that is."""
+    try:
+        warmest = warmest_moment(part)
+    except InputError:
+        return
+    at = np.datetime64(f"2001-{day[0]:02d}-{day[1]:02d}", "D")
+    own = np.datetime64(f"2001{str(warmest.astype('datetime64[D]'))[4:]}".replace("-02-29", "-03-01"), "D")
+    apart = abs((int((at - own) / np.timedelta64(1, "D")) + 182) % 365 - 182)
+    if apart > FARTHEST_SPLIT:
+        found = f"{day[0]:02d}-{day[1]:02d}, {apart} days from the warmest day of the year"
+        remedy = "leave it out, or split in summer, so that winters stay whole"
+        raise InputError(message("begins", found, f"up to {FARTHEST_SPLIT} days from it", remedy))
 
 
 def _month_and_day(begins: Any) -> tuple[int, int]:

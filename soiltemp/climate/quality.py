@@ -215,6 +215,10 @@ def mask_impossible(
     return np.where(hit, np.nan, result), tuple(findings)
 
 
+FAR_FROM_ZERO = 3.0
+"""Distance [K] of the values beside a run at 0 degC from which it is no ground that freezes (our choice)."""
+
+
 def mask_stuck(
     times: Times, values: Floats, interval: float, longest: float | None, wanted: Quantity
 ) -> tuple[Floats, tuple[Finding, ...]]:
@@ -238,7 +242,7 @@ def mask_stuck(
     -------
     values : array of float
         With NaN in their place, except runs near 0 (within 0.5 K of 0 degC): those of temperatures are reported and
-        kept, others are no finding.
+        kept where the values beside them lie within 3 K, others are no finding.
     findings : tuple of Finding
         One a run.
     """
@@ -259,6 +263,10 @@ def mask_stuck(
         if near_zero and not wanted.is_temperature:
             continue
         text = f"{value:.4g} {wanted.shown} all the time"
+        beside = np.array([values[place] for place in (begin - 1, end + 1) if 0 <= place < values.size])
+        if near_zero and np.any(np.abs(beside - value) > FAR_FROM_ZERO):
+            near_zero = False  # ground comes to 0 degC by and by; nought in place of a missing value does not
+            text += ", between values far from it"
         action = "kept, as ground at 0 degC may stay there" if near_zero else TAKEN_OUT
         findings.append(Finding("stuck", times[begin], times[end], int(end - begin + 1), text, action))
         if not near_zero:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from typing import Any
 
 import numpy as np
@@ -17,9 +16,6 @@ __all__ = ["deepest_winter", "design_facts", "return_table", "winter_notes", "wi
 Rows = list[tuple[str, ...]]
 
 NOT_KNOWN = "–"
-
-_STATED = re.compile(r"[\d.]+ K day(?: \((?P<share>[\d.]+) % interval [^)]*\))?, ")
-"""How the comment of a design index begins (`soiltemp.climate.DesignIndex` as text)."""
 
 _TITLES = {"gumbel": "Gumbel", "gev": "generalised extreme value"}
 
@@ -139,16 +135,12 @@ def design_facts(result: xr.Dataset, shown: Display) -> Rows:
     index = result["design_freezing_index"]
     text = f"{_index(float(index), shown)} {shown.difference_unit} days"
     comment = str(index.attrs.get("comment", ""))
-    stated = _STATED.match(comment)
     bounds = ("design_freezing_index_low", "design_freezing_index_high")
     if set(bounds) <= set(result.variables):
-        share = f"{stated['share']} % " if stated and stated["share"] else ""
-        text += f" ({share}interval {' to '.join(_index(float(result[bound]), shown) for bound in bounds)})"
+        text += f" (90 % interval {' to '.join(_index(float(result[bound]), shown) for bound in bounds)})"
     facts: Rows = [("Design freezing index of the air", text)]
-    # the comment begins with the number in K days, which stands above in the unit of the reader
-    how = comment[stated.end() :] if stated else comment
-    if how:
-        facts.append(("How it is found", how))
+    if comment:
+        facts.append(("How it is found", comment))
     if "design_winter" in result:
         made = f"winter of {result['design_winter'].item()}"
         if "design_factor" in result:

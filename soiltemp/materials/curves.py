@@ -12,12 +12,16 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from soiltemp.constants import DENSITY_ICE, DENSITY_WATER
 from soiltemp.errors import InputError, message
 from soiltemp.units import to_si
 
 __all__ = ["Curves"]
 
 Array = NDArray[np.float64]
+
+_MOST_WATER = 1050.0
+"""Most water in a unit volume [kg m-3]: pure water, and what a latent heat up to 3.4e8 J m-3 stands for."""
 
 
 @dataclass(frozen=True)
@@ -37,8 +41,12 @@ class Curves:
     conductivity : tuple of float, shape (K + 1,)
         Slope of the conduction potential in each segment: the thermal conductivity [W m-1 K-1]; above 0.
     frozen_share : tuple of float, shape (K,)
-        Share of the pore water that is ice at each knot [1]: 1 at the first and below, 0 at the last and
-        above, never rising in between, and linear between the knots.
+        Share of the water that freezes which is ice at each knot [1]: 1 at the first and below, 0 at the last
+        and above, never rising in between, and linear between the knots.
+    water : float, optional
+        All water, liquid and ice, in a unit volume [kg m-3], 0 to 1050.
+    unfrozen_rest : float, optional
+        Part of it that stays liquid below the first knot [kg m-3], 0 to `water`.
 
     Raises
     ------
@@ -63,6 +71,8 @@ class Curves:
     heat_capacity: tuple[float, ...]
     conductivity: tuple[float, ...]
     frozen_share: tuple[float, ...]
+    water: float = 0.0
+    unfrozen_rest: float = 0.0
 
     def __post_init__(self) -> None:
         for name, kind in (
@@ -79,6 +89,10 @@ class Curves:
             label = name.replace("_", " ")
             numbers = tuple(to_si(v, kind, f"curves, {label} {i}") for i, v in enumerate(members))
             object.__setattr__(self, name, numbers)
+        water = to_si(self.water, "density", "curves, water", low=0.0, high=_MOST_WATER)
+        rest = to_si(self.unfrozen_rest, "density", "curves, unfrozen rest", low=0.0, high=water)
+        object.__setattr__(self, "water", water)
+        object.__setattr__(self, "unfrozen_rest", rest)
         self._check_shape()
         self._check_values()
 
@@ -188,7 +202,7 @@ class Curves:
         return self._integral(self.conductivity, temperature)
 
     def frozen(self, temperature: ArrayLike) -> Array:
-        """Share of the pore water that is ice, 0 to 1.
+        """Share of the water that freezes which is ice, 0 to 1.
 
         Parameters
         ----------
@@ -205,6 +219,41 @@ class Curves:
         if not self.knots:
             return np.asarray(at * 0.0)
         return np.asarray(np.interp(at, self._knots, np.asarray(self.frozen_share)))
+
+    def ice(self, temperature: ArrayLike) -> Array:
+        """Volume of ice in a unit volume [m3 m-3].
+
+        Parameters
+        ----------
+        temperature : float or array
+            Temperatures [degC].
+
+        Returns
+        -------
+        numpy.ndarray
+            Volume, in the shape of `temperature`; 9 % more than that of the water it was. NaN where the temperature is
+            NaN.
+        """
+        return np.asarray(self._ice_mass(temperature) / DENSITY_ICE)
+
+    def unfrozen_water(self, temperature: ArrayLike) -> Array:
+        """Volume of liquid water in a unit volume [m3 m-3].
+
+        Parameters
+        ----------
+        temperature : float or array
+            Temperatures [degC].
+
+        Returns
+        -------
+        numpy.ndarray
+            Volume, in the shape of `temperature`; NaN where the temperature is NaN.
+        """
+        return np.asarray((self.water - self._ice_mass(temperature)) / DENSITY_WATER)
+
+    def _ice_mass(self, temperature: ArrayLike) -> Array:
+        """Ice in a unit volume [kg m-3]."""
+        return self.frozen(temperature) * (self.water - self.unfrozen_rest)
 
     def temperature_from_enthalpy(self, enthalpy: ArrayLike) -> Array:
         """Temperature at which the material holds `enthalpy`; the inverse of :meth:`enthalpy`.

@@ -160,7 +160,7 @@ def _from_soil(name: str, row: dict[str, Any]) -> Material:
 
 def _from_properties(name: str, row: dict[str, Any], sources: tuple[tuple[str, str], ...]) -> Material:
     """Material from stated properties, the frozen ones worked out from the pore water where it is given."""
-    values = {key: number(v) for key, v in row.items() if isinstance(v, dict)}
+    values: dict[str, Any] = {key: number(v) for key, v in row.items() if isinstance(v, dict)}
     for key in ("conductivity", "heat_capacity"):
         if key in values:
             values[f"{key}_thawed"] = values[f"{key}_frozen"] = values.pop(key)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, fields
 from typing import Any
 
@@ -63,7 +64,8 @@ def check_name(name: object, where: str) -> str:
 class Material:
     """Thermal properties of a material, thawed and frozen.
 
-    All its pore water freezes linearly between ``freezing_point - freezing_range`` and ``freezing_point``.
+    All its pore water freezes linearly between ``freezing_point - freezing_range`` and ``freezing_point``, unless it
+    has freezing curves of its own.
 
     Parameters
     ----------
@@ -76,20 +78,22 @@ class Material:
         Heat capacity by volume, without latent heat [J m-3 K-1], 1e3 to 1e7 (air 1e3, foam boards 3e4, water
         and metals 4e6).
     latent_heat : float or str
-        Heat set free by freezing all the pore water of a unit volume [J m-3], 0 to 3.4e8 (pure water:
-        3.34e8).
+        Heat set free by all the water of a unit volume that freezes [J m-3], 0 to 3.4e8 (pure water: 3.34e8).
     freezing_point : float or str, optional
         Temperature at which freezing begins [degC], -30 to 0.
     freezing_range : float or str, optional
         How far below the freezing point the last water freezes [K], 1e-4 to 20.
     source : str, optional
         Where the values come from; rides along into tables and result files.
+    freezing_curves : Curves, optional
+        What the solver gets in place of the linear freezing range, such as :class:`soiltemp.Soil` makes of a power law.
+        The values above must then be those of its ends: thawed, and below the last temperature at which water freezes.
 
     Raises
     ------
     InputError, UnitError
-        A value outside its range, or in a unit of another kind; the message names the material, value and
-        range.
+        A value outside its range, in a unit of another kind, or unlike that of the freezing curves; the message names
+        the material, value and range.
 
     Examples
     --------
@@ -109,6 +113,7 @@ class Material:
     freezing_point: float
     freezing_range: float
     source: str
+    freezing_curves: Curves | None
 
     def __init__(
         self,
@@ -122,8 +127,12 @@ class Material:
         freezing_range: QuantityLike = 0.5,
         *,
         source: str = "",
+        freezing_curves: Curves | None = None,
     ) -> None:
         name = check_name(name, "material")
+        if freezing_curves is not None and not isinstance(freezing_curves, Curves):
+            found = type(freezing_curves).__name__
+            raise InputError(message(f'material "{name}", freezing curves', found, "Curves", "leave them out"))
         if not isinstance(source, str):
             found = f"{source!r}"[:60]
             raise InputError(message(f'material "{name}", source', found, "a text", "give the source in quotes"))
@@ -141,6 +150,30 @@ class Material:
             where = f'material "{name}", {key.replace("_", " ")}'
             object.__setattr__(self, key, to_si(value, kind, where, low=low, high=high))
         object.__setattr__(self, "source", source)
+        object.__setattr__(self, "freezing_curves", freezing_curves)
+        if freezing_curves is not None:
+            self._check_ends(freezing_curves)
+
+    def _check_ends(self, curves: Curves) -> None:
+        """Refuse values that are not those of the ends of the freezing curves."""
+        if not curves.knots:
+            remedy = "leave them out"
+            where = f'material "{self.name}", freezing curves'
+            raise InputError(message(where, "curves in which nothing freezes", "curves with knots", remedy))
+        for key, value in (
+            ("conductivity_thawed", curves.conductivity[-1]),
+            ("conductivity_frozen", curves.conductivity[0]),
+            ("heat_capacity_thawed", curves.heat_capacity[-1]),
+            ("heat_capacity_frozen", curves.heat_capacity[0]),
+            ("latent_heat", LATENT_HEAT_FUSION * (curves.water - curves.unfrozen_rest)),
+            ("freezing_point", curves.knots[-1]),
+            ("freezing_range", curves.knots[-1] - curves.knots[0]),
+        ):
+            stated = getattr(self, key)
+            if not math.isclose(stated, value, rel_tol=1e-6, abs_tol=1e-9):
+                where = f'material "{self.name}", {key.replace("_", " ")}'
+                remedy = "state what the curves say, or set freezing_curves to None (of a soil: change the soil)"
+                raise InputError(message(where, f"{stated:g}", f"{value:g}, as in its freezing curves", remedy))
 
     def with_values(self, **changes: Any) -> Material:
         """Copy with some arguments changed.
@@ -195,8 +228,11 @@ class Material:
         Curves
             Knots at both ends of the freezing range. Inside it the conductivity is the mean of frozen and
             thawed, and the heat capacity the mean plus ``latent_heat / freezing_range``. No knots where
-            nothing freezes and the frozen properties are the thawed ones.
+            nothing freezes and the frozen properties are the thawed ones. Where the material has freezing curves
+            of its own, those.
         """
+        if self.freezing_curves is not None:
+            return self.freezing_curves
         is_inert = (
             self.latent_heat == 0.0
             and self.conductivity_thawed == self.conductivity_frozen
@@ -220,4 +256,5 @@ class Material:
                 self.conductivity_thawed,
             ),
             frozen_share=(1.0, 0.0),
+            water=self.latent_heat / LATENT_HEAT_FUSION,
         )

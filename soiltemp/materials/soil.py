@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
 from dataclasses import dataclass, fields
 from typing import Any
 
@@ -15,68 +14,25 @@ from soiltemp.materials.composition import (
     check_choice,
     check_fraction,
 )
-from soiltemp.materials.conductivity import (
-    conductivity_cote_konrad_2005,
-    conductivity_johansen_1975,
-    conductivity_kersten_1949,
+from soiltemp.materials.conductivity_choice import (
+    CONDUCTIVITY_MODELS,
+    ConductivityEstimate,
+    conductivity_as_it_freezes,
+    conductivity_of,
 )
+from soiltemp.materials.freezing_choice import Freezing, carried_over, read_freezing
+from soiltemp.materials.freezing_curve import CURVE_ERROR, freezing_curves
 from soiltemp.materials.heat import (
     SPECIFIC_HEAT_LIMITS,
     heat_capacity_by_composition,
     latent_heat_by_composition,
 )
-from soiltemp.materials.properties import FREEZING_POINT_LIMITS, FREEZING_RANGE_LIMITS, Material, check_name
+from soiltemp.materials.properties import Material, check_name
 from soiltemp.materials.tables import coefficients, number
+from soiltemp.materials.unfrozen_water import UnfrozenWater
 from soiltemp.units import QuantityLike, to_si
 
-__all__ = ["CONDUCTIVITY_MODELS", "ConductivityEstimate", "Soil"]
-
-_CONDUCTIVITY: dict[str, Callable[[Soil, str], float]] = {
-    "cote_konrad_2005": lambda soil, state: conductivity_cote_konrad_2005(
-        soil.dry_density,
-        soil.water_content,
-        grain=soil.grain,
-        state=state,
-        quartz_fraction=soil.quartz_fraction_used,
-        grain_density=soil.grain_density,
-        dry_conductivity=soil.dry_conductivity,
-    ),
-    "johansen_1975": lambda soil, state: conductivity_johansen_1975(
-        soil.dry_density,
-        soil.water_content,
-        grain=soil.grain,
-        state=state,
-        quartz_fraction=soil.quartz_fraction_used,
-        grain_density=soil.grain_density,
-        dry_conductivity=soil.dry_conductivity,
-    ),
-    "kersten_1949": lambda soil, state: conductivity_kersten_1949(
-        soil.dry_density, soil.water_content, grain=soil.grain, state=state
-    ),
-}
-
-CONDUCTIVITY_MODELS = tuple(_CONDUCTIVITY)
-"""Names of the conductivity models that a soil can be asked for."""
-
-
-@dataclass(frozen=True)
-class ConductivityEstimate:
-    """What one published model says of one soil.
-
-    Parameters
-    ----------
-    model : str
-        Name of the model, one of :data:`CONDUCTIVITY_MODELS`.
-    thawed, frozen : float
-        Thermal conductivity [W m-1 K-1]; NaN where the model does not apply.
-    reason : str
-        Why it does not apply; empty where it does.
-    """
-
-    model: str
-    thawed: float
-    frozen: float
-    reason: str = ""
+__all__ = ["Soil"]
 
 
 @dataclass(frozen=True, init=False)
@@ -102,10 +58,21 @@ class Soil:
     grain_density : float or str, optional
         Density of the grains [kg m-3], 1000 to 5300. Left out: 2700, organic 1300.
     freezing_point : float or str, optional
-        Temperature at which freezing begins [degC], -30 to 0.
+        Temperature at which freezing begins [degC], -30 to 0; 0 where it is left out. Of the linear curve.
     freezing_range : float or str, optional
-        How far below it the last water freezes [K], 1e-4 to 20. Clays keep some liquid water for several
-        kelvins.
+        How far below it the last water freezes [K], 1e-4 to 20; 0.5 where it is left out. Of the linear curve.
+    freezing_curve : {"linear", "at once", "power law", "anderson_tice_1972"}
+        How the water freezes: evenly over the freezing range; at once (within 0.02 K, or as its salt lets it), as in
+        sand and gravel; with what a power law leaves unfrozen; or by the power law of the specific surface. What is
+        still unfrozen at -20 degC stays so.
+    unfrozen_alpha, unfrozen_beta : float or str, optional
+        Power law ``w_u = alpha |T|^beta``: unfrozen water 1 K below 0 degC [kg/kg], 1e-4 to 5, and exponent [1], -5 to
+        -0.05.
+    specific_surface : float or str, optional
+        Surface of the grains by mass [m2 kg-1]: "60 m^2/g". For "anderson_tice_1972".
+    salinity : float or str, optional
+        Salt by mass of the pore water, thawed [kg/kg], 0 to 0.04: "8 g/kg"; `water_content` counts it as water. Not
+        with the linear curve, whose freezing point states it.
     dry_conductivity : {"natural", "crushed"}, optional
         Rounded natural grains, or crushed rock (coarse only).
     specific_heat_grains : float or str, optional
@@ -136,6 +103,11 @@ class Soil:
     grain_density: float
     freezing_point: float
     freezing_range: float
+    freezing_curve: str
+    unfrozen_alpha: float | None
+    unfrozen_beta: float | None
+    specific_surface: float | None
+    salinity: float
     dry_conductivity: str
     specific_heat_grains: float
     name: str
@@ -148,8 +120,13 @@ class Soil:
         quartz_fraction: QuantityLike | None = None,
         *,
         grain_density: QuantityLike | None = None,
-        freezing_point: QuantityLike = 0.0,
-        freezing_range: QuantityLike = 0.5,
+        freezing_point: QuantityLike | None = None,
+        freezing_range: QuantityLike | None = None,
+        freezing_curve: str = "linear",
+        unfrozen_alpha: QuantityLike | None = None,
+        unfrozen_beta: QuantityLike | None = None,
+        specific_surface: QuantityLike | None = None,
+        salinity: QuantityLike = 0.0,
         dry_conductivity: str = "natural",
         specific_heat_grains: QuantityLike | None = None,
         name: str | None = None,
@@ -180,18 +157,30 @@ class Soil:
             low=low,
             high=high,
         )
-        low, high = FREEZING_POINT_LIMITS
-        point = to_si(freezing_point, "temperature", f"{where}, freezing point", low=low, high=high)
-        low, high = FREEZING_RANGE_LIMITS
-        width = to_si(freezing_range, "temperature_difference", f"{where}, freezing range", low=low, high=high)
+        freezing = read_freezing(
+            where,
+            freezing_curve,
+            soil.water_content,
+            freezing_point=freezing_point,
+            freezing_range=freezing_range,
+            unfrozen_alpha=unfrozen_alpha,
+            unfrozen_beta=unfrozen_beta,
+            specific_surface=specific_surface,
+            salinity=salinity,
+        )
         for key, value in (
             ("dry_density", soil.dry_density),
             ("water_content", soil.water_content),
             ("grain", grain),
             ("quartz_fraction", quartz),
             ("grain_density", soil.grain_density),
-            ("freezing_point", point),
-            ("freezing_range", width),
+            ("freezing_point", freezing.point),
+            ("freezing_range", freezing.width),
+            ("freezing_curve", freezing_curve),
+            ("unfrozen_alpha", freezing.alpha),
+            ("unfrozen_beta", freezing.beta),
+            ("specific_surface", freezing.specific_surface),
+            ("salinity", freezing.salinity),
             ("dry_conductivity", dry_conductivity),
             ("specific_heat_grains", grains_heat),
             ("name", _described(soil, grain) if name is None else name.strip()),
@@ -204,7 +193,8 @@ class Soil:
         Parameters
         ----------
         **changes
-            Arguments of :class:`Soil` by name. A description made for want of a name is made anew.
+            Arguments of :class:`Soil` by name. A description made for want of a name is made anew; what belonged to
+            another freezing curve than the new one falls away, salinity excepted.
 
         Returns
         -------
@@ -228,7 +218,8 @@ class Soil:
                 raise InputError(message(where, f'"{key}"', ", ".join(values), "correct the name of the argument"))
         if self.name == _described(self._composition, self.grain):
             values["name"] = None
-        return Soil(**(values | changes))
+        given_by_curve = carried_over(self.freezing_curve, changes.get("freezing_curve", self.freezing_curve))
+        return Soil(**(values | given_by_curve | changes))
 
     @property
     def _composition(self) -> Composition:
@@ -262,7 +253,8 @@ class Soil:
         Returns
         -------
         tuple of ConductivityEstimate
-            One for each of :data:`CONDUCTIVITY_MODELS`, NaN with the reason where a model does not apply.
+            One for each of :data:`CONDUCTIVITY_MODELS`, NaN with the reason where a model does not apply. Frozen is
+            what :meth:`material` has below the last temperature at which water freezes.
 
         Examples
         --------
@@ -273,16 +265,22 @@ class Soil:
         kersten_1949 nan nan
         """
         estimates = []
-        for model, conductivity in _CONDUCTIVITY.items():
+        for model in CONDUCTIVITY_MODELS:
             try:
-                thawed, frozen = conductivity(self, "thawed"), conductivity(self, "frozen")
+                thawed, frozen = self._both_conductivities(model)
             except InputError as error:
                 estimates.append(ConductivityEstimate(model, math.nan, math.nan, str(error)))
             else:
                 estimates.append(ConductivityEstimate(model, thawed, frozen))
         return tuple(estimates)
 
-    def material(self, conductivity_model: str = "johansen_1975") -> Material:
+    def _both_conductivities(self, model: str) -> tuple[float, float]:
+        """Conductivity thawed, and frozen with the water that never freezes [W m-1 K-1]."""
+        return conductivity_of(self, model, "thawed"), conductivity_of(self, model, "frozen", self._rest)
+
+    def material(
+        self, conductivity_model: str = "johansen_1975", *, curve_error: QuantityLike = CURVE_ERROR
+    ) -> Material:
         """Material of this soil: conductivity by a published model, heat capacity and latent heat by sums.
 
         Parameters
@@ -290,6 +288,10 @@ class Soil:
         conductivity_model : {"cote_konrad_2005", "johansen_1975", "kersten_1949"}
             Published model of the conductivity. They differ by tens of percent: compare
             :meth:`conductivities`.
+        curve_error : float or str, optional
+            How far the straight pieces of a smooth freezing curve may miss it [1], 1e-4 to 0.1: in enthalpy by this
+            part of the latent heat, in conduction potential by this part of that across 1 K of frozen soil. The
+            curves "linear" and "at once" without salt are straight and have no such error.
 
         Returns
         -------
@@ -298,36 +300,69 @@ class Soil:
 
         Raises
         ------
-        InputError
-            An unknown model, or one that does not apply to this soil.
+        InputError, UnitError
+            An unknown model, or one that does not apply to this soil; an error out of range.
         """
         check_choice(conductivity_model, CONDUCTIVITY_MODELS, f'soil "{self.name}", conductivity model')
-        conductivity = _CONDUCTIVITY[conductivity_model]
+        water, rest = self.unfrozen_water, self._rest
         try:
-            thawed, frozen = conductivity(self, "thawed"), conductivity(self, "frozen")
+            thawed, frozen = self._both_conductivities(conductivity_model)
+            curves = None
+            if water is not None:
+                curves = freezing_curves(
+                    water,
+                    conductivity_as_it_freezes(self, conductivity_model, rest),
+                    dry_density=self.dry_density,
+                    specific_heat_grains=self.specific_heat_grains,
+                    curve_error=curve_error,
+                )
         except InputError as error:
             raise InputError(f'soil "{self.name}", {error}') from error
+        grains = self.specific_heat_grains
         return Material(
             self.name,
             thawed,
             frozen,
             heat_capacity_by_composition(
-                self.dry_density,
-                self.water_content,
-                state="thawed",
-                specific_heat_grains=self.specific_heat_grains,
+                self.dry_density, self.water_content, state="thawed", specific_heat_grains=grains
             ),
             heat_capacity_by_composition(
                 self.dry_density,
                 self.water_content,
                 state="frozen",
-                specific_heat_grains=self.specific_heat_grains,
+                specific_heat_grains=grains,
+                unfrozen_water_content=rest,
             ),
-            latent_heat_by_composition(self.dry_density, self.water_content),
+            latent_heat_by_composition(self.dry_density, self.water_content, unfrozen_water_content=rest),
             self.freezing_point,
             self.freezing_range,
             source=self._source(conductivity_model),
+            freezing_curves=curves,
         )
+
+    @property
+    def _freezing(self) -> Freezing:
+        return Freezing(
+            self.freezing_curve,
+            self.freezing_point,
+            self.freezing_range,
+            self.unfrozen_alpha,
+            self.unfrozen_beta,
+            self.specific_surface,
+            self.salinity,
+        )
+
+    @property
+    def unfrozen_water(self) -> UnfrozenWater | None:
+        """Unfrozen water by temperature, where it is a smooth curve; else None."""
+        if self.unfrozen_alpha is None and self.salinity == 0.0:
+            return None
+        return UnfrozenWater(self.water_content, self.unfrozen_alpha, self.unfrozen_beta, self.salinity)
+
+    @property
+    def _rest(self) -> float:
+        """Water that never freezes [kg/kg]."""
+        return 0.0 if self.unfrozen_water is None else self.unfrozen_water.rest
 
     def _source(self, conductivity_model: str) -> str:
         """Model and assumptions, for `Material.source`."""
@@ -341,6 +376,8 @@ class Soil:
                 parts.append(f"quartz fraction {self.quartz_fraction_used:g} {stated}")
             parts.append(f"grain density {self.grain_density:g} kg/m^3")
         parts.append(f"specific heat of the grains {self.specific_heat_grains:g} J/(kg K)")
+        if self.freezing_curve != "linear":
+            parts.append(self._freezing.text())
         return "; ".join(parts)
 
 

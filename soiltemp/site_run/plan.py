@@ -112,7 +112,9 @@ def _same_day(moment: np.datetime64, earliest: np.datetime64) -> np.datetime64:
 def _answers(index: DesignIndex, **told: Any) -> xr.Dataset:
     """The design index and its winter as variables."""
     notes = "; ".join(index.notes)
-    comment = f"{index}; {index.practice.source}" + (f"; {notes}" if notes else "")
+    period = f", {index.return_period:g} winters" if index.return_period is not None else ""
+    coldest = f" ({', '.join(index.coldest)})" if index.coldest else ""
+    comment = f"{index.practice.long_name}{period}{coldest}; {index.practice.source}" + (f"; {notes}" if notes else "")
     found: dict[str, Any] = {"design_freezing_index": index.value, **told}
     if index.low is not None and index.high is not None:
         found |= {"design_freezing_index_low": index.low, "design_freezing_index_high": index.high}
