@@ -32,6 +32,19 @@ def test_python_example(tmp_path: pathlib.Path, monkeypatch: pytest.MonkeyPatch)
     assert (tmp_path / "result.nc").stat().st_size > 10_000
 
 
+def test_python_example_of_winters(tmp_path: pathlib.Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    (tmp_path / "example_sites").symlink_to(ROOT / "example_sites")
+    monkeypatch.chdir(tmp_path)
+    printed = io.StringIO()
+    names: dict[str, object] = {}
+    with contextlib.redirect_stdout(printed):
+        exec(compile(block("python") + block("python", 1), "README.md", "exec"), names)
+    *_, design, frost, margin = printed.getvalue().splitlines()
+    assert design == "1394 K day, mean of the 3 coldest winters in 30 (1995-96, 2006-07, 2005-06)"
+    assert float(re.findall(r"[\d.]+", frost)[0]) == pytest.approx(1.1, abs=0.15)
+    assert margin == "margin 0.35 m"
+
+
 def test_site_file_is_read() -> None:
     site = parse_site(block("toml"), folder=ROOT / "example_sites")
     assert site.profile.base == pytest.approx(20.0)
@@ -40,7 +53,7 @@ def test_site_file_is_read() -> None:
 
 
 @pytest.mark.parametrize(
-    ("number", "title", "site"), [(2, "Wether Lane water main", "wether_lane"), (3, "Winters", "osier_flats")]
+    ("number", "title", "site"), [(2, "Wether Lane water main", "wether_lane"), (4, "Winters", "osier_flats")]
 )
 def test_printed_numbers_are_those_of_the_run(
     number: int, title: str, site: str, capsys: pytest.CaptureFixture[str]

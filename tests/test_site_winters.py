@@ -223,7 +223,8 @@ def test_monthly_snow_wind_and_sun(folder: pathlib.Path) -> None:
     months = '["20 cm", "25 cm", "10 cm", "0 cm", "0 cm", "0 cm", "0 cm", "0 cm", "0 cm", "0 cm", "2 cm", "10 cm"]'
     snow = (
         f'[surface.snow]\nmonthly_depth = {months}\ndensity = "sturm_2010_prairie"\n'
-        'conductivity_model = "calonne_2011"\n[surface.sun]\nrecord = "sun.csv"\nvalues = "mean"\nstuck_after = "never"\nabsorptivity = 0.6\n'
+        'conductivity_model = "calonne_2011"\n'
+        '[surface.sun]\nrecord = "sun.csv"\nvalues = "mean"\nstuck_after = "never"\nabsorptivity = 0.6\n'
         'snow_absorptivity = 0.2\nlongwave_loss = "40 W/m^2"\n'
     )
     wind = ('heat_transfer = "15 W/(m^2 K)"', 'wind = { model = "mcadams_1954", speed = "3 m/s" }')

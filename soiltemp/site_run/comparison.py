@@ -51,6 +51,25 @@ def compare_snow(
     ------
     InputError
         A site without snow; and all that :func:`soiltemp.run` raises.
+
+    Examples
+    --------
+    >>> from soiltemp.site import parse_site
+    >>> site = parse_site('''
+    ... site = { name = "Made up", latitude = 47.2, longitude = -94.6 }
+    ... climate.periodic = { mean = "4 degC", amplitude = "17 K", coldest = "01-20" }
+    ... layer = [{ material = "silt, moist", thickness = "12 m" }]
+    ... study = { start = "2019-07-01", end = "2020-06-30", initial = "5 degC", output_every = "5 days" }
+    ... [surface]
+    ... heat_transfer = "15 W/(m^2 K)"
+    ... [surface.snow]
+    ... monthly_depth = ["20 cm", "25 cm", "10 cm", "0 m", "0 m", "0 m", "0 m", "0 m", "0 m", "0 m", "0 m", "10 cm"]
+    ... density = "250 kg/m^3"
+    ... conductivity_model = "yen_1981"
+    ... ''', folder=".")
+    >>> depth = compare_snow(site).maximum_frost_depth
+    >>> bool(depth.sel(snow_state="natural") < depth.sel(snow_state="bare"))
+    True
     """
     snow = snow_of(site)
     if weather is None:

@@ -80,6 +80,7 @@ def run(site: Site, *, progress: Progress | None = None, weather: Weather | None
 
     Examples
     --------
+    >>> from soiltemp.site import parse_site
     >>> site = parse_site('''
     ... site = { name = "Made up", latitude = 47.2, longitude = -94.6 }
     ... climate.periodic = { mean = "4 degC", amplitude = "17 K", coldest = "01-20" }
