@@ -353,11 +353,18 @@ def _numerical_frost(surface: _Surface, winter: _Winter, result: xr.Dataset) -> 
     """Numerical frost of the coldest winter: from its first moment until it has had time to thaw."""
     seconds = np.asarray((result["time"].values - surface.start) / np.timedelta64(1, "ns") / 1e9)
     inside = (seconds >= winter.first) & (seconds <= winter.first + LONGEST_FROST)
+    series = {"frost_depth": frost_depth(result), "frozen_ground_depth": result.get("frozen_ground_depth")}
     found: dict[str, tuple[Any, str]] = {}
-    for name in ("frost_depth", "frozen_ground_depth"):
-        known = name in result and winter.index > 0.0 and bool(inside.any())
-        value = float(result[name].values[inside].max()) if known else (0.0 if name in result else np.nan)
-        found[f"coldest_winter_{name}"] = (value, f"Numerical, of the winter of {winter.text}.")
+    for name, depths in series.items():
+        if depths is None:
+            found[f"coldest_winter_{name}"] = np.nan, f"Left out: the result does not hold {name}."
+        elif winter.index == 0.0 or not inside.any():
+            found[f"coldest_winter_{name}"] = 0.0, "The surface never freezes."
+        else:
+            found[f"coldest_winter_{name}"] = (
+                float(depths.values[inside].max()),
+                f"Numerical, of the winter of {winter.text}.",
+            )
     return found
 
 
@@ -444,8 +451,8 @@ def closed_form_lines(dataset: xr.Dataset, *, units: str = "si") -> tuple[str, .
         ("freezing index of the surface", f"{index} in {season:.0f} days"),
         ("frost by Stefan's equation", shown("stefan_frost_depth", "length", 2)),
         ("frost by the modified Berggren equation", shown("modified_berggren_frost_depth", "length", 2)),
-        (f"numerical, line of {zero}, of that winter", shown("coldest_winter_frost_depth", "length", 2)),
-        ("numerical, frozen ground, of that winter", shown("coldest_winter_frozen_ground_depth", "length", 2)),
+        (f"numerical, line of {zero}, that winter", shown("coldest_winter_frost_depth", "length", 2)),
+        ("numerical, frozen ground, that winter", shown("coldest_winter_frozen_ground_depth", "length", 2)),
     )
     comments = (
         ("damping depth", "damping_depth_annual"),
@@ -459,7 +466,7 @@ def closed_form_lines(dataset: xr.Dataset, *, units: str = "si") -> tuple[str, .
         f"Annual wave of the surface: mean {mean}, amplitude {wave}",
         *_wave_table(dataset, units),
         "Frost of the winter that is coldest at the surface",
-        *(f"  {text:<43}{value}" for text, value in rows),
+        *(f"  {text:<42}{value}" for text, value in rows),
         "Why they differ",
         *(f"  {text}: {dataset[name].attrs['comment']}" for text, name in comments),
     )

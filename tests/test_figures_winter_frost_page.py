@@ -22,7 +22,7 @@ from tests.test_figures_page import saved
 from tests.test_figures_wave import wave
 from tests.test_figures_winter_frost import FLOAT32, FOOT, source, subtitle, with_winters
 
-COMMENT = "1800 K day (90 % interval 1500 to 2100), mean of the 3 coldest winters in 30"
+COMMENT = "mean of the 3 coldest winters in 30"
 
 
 def with_snow(result: xr.Dataset, most: float = 0.43) -> xr.Dataset:

@@ -101,8 +101,8 @@ class Reference:
 
 
 SOILS: dict[str, dict[str, Any]] = {
-    # alpha and beta of a silt as in Andersland & Ladanyi, Frozen Ground Engineering (Fairbanks silt); from memory
-    "silt": {"freezing_curve": "power law", "unfrozen_alpha": 0.0481, "unfrozen_beta": -0.326},
+    # beta of a silt as in Andersland & Ladanyi, Frozen Ground Engineering (Fairbanks silt, alpha 0.0481); from memory
+    "silt": {"freezing_curve": "power law", "unfrozen_alpha": 0.0681, "unfrozen_beta": -0.326},
     "clay": {"freezing_curve": "anderson_tice_1972", "specific_surface": "84 m^2/g"},
     "salty sand": {"freezing_curve": "at once", "salinity": "10 g/kg"},
     "salty clay": {"freezing_curve": "power law", "unfrozen_alpha": 0.1, "unfrozen_beta": -0.5, "salinity": "20 g/kg"},

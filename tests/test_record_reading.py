@@ -12,6 +12,7 @@ import xarray as xr
 
 from soiltemp.climate import CheckedRecord, Finding, read_checked, read_record
 from soiltemp.climate.quality import SENTINELS
+from soiltemp.errors import DataFileError
 
 VALUES = [-3.1, -2.0, 0.4, 1.5]
 DAYS = ["2020-01-30", "2020-01-31", "2020-02-01", "2020-02-02"]
@@ -307,6 +308,9 @@ def test_stuck_sensor(tmp_path: Any) -> None:
         assert ("stuck" in kinds(checked)) is stuck
         assert int(checked.temperature.filled.sum()) == (count if stuck else 0)
     values[20:35] = [0.1] * 15
+    with pytest.raises(DataFileError, match="between values far from it"):  # nought in place of what is missing
+        read_checked(write(tmp_path, table(days(), values)))
+    values[19], values[35] = -1.8, 2.6  # ground comes to 0 degC by and by
     checked = read_checked(write(tmp_path, table(days(), values)))
     assert kinds(checked)["stuck"].action.startswith("kept")
     assert checked.report.filled == 0

@@ -52,6 +52,7 @@ def computed(probes, station, resistance, top, below):
         {
             "exchange_temperature": ("time", infrared(station), labels),
             "surface_resistance": ("time", resistance, {"units": "m2 K W-1"}),
+            "snow_depth": ("time", np.zeros(resistance.size), {"units": "m"}),  # the infrared is that of the snow
         },
         {"time": probes.time},
     )  # fmt: skip

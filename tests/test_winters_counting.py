@@ -12,6 +12,7 @@ from soiltemp import periodic_surface
 from soiltemp.climate import cumulative_degree_days, daily_means, freezing_index, thawing_index, winters
 from soiltemp.climate.degree_days import accumulate, largest_fall
 from soiltemp.climate.series import temperature_series
+from soiltemp.errors import InputError
 from soiltemp.glossary import attributes
 from tests.helpers.weather import DAY, daily, record
 
@@ -125,10 +126,11 @@ def test_split_at_the_warmest_time_in_either_hemisphere(coldest: str, begins: st
 
 
 def test_stated_split_cuts_southern_winters() -> None:
-    """A July-to-June split would cut the winters of the south in two: none of the halves holds the whole."""
+    """A July-to-June split would cut the winters of the south in two, and is refused."""
     air = periodic_surface(3.0, 12.0, "07-20", "2001-01-01", 4, every="1D")
-    right, wrong = winters(air), winters(air, begins="07-01")
-    assert float(wrong.air_freezing_index.max()) < 0.8 * float(right.air_freezing_index.max())
+    with pytest.raises(InputError, match=r"^begins: found 07-01, 164 days from.*split in summer"):
+        winters(air, begins="07-01")
+    assert winters(air, begins="12-15").sizes["winter"] >= 3
 
 
 def test_record_that_cuts_winters_says_so() -> None:
