@@ -15,6 +15,7 @@ import pytest
 ROOT = Path(__file__).parents[1]
 LIST = tomllib.loads((Path(__file__).with_name("mutants.toml")).read_text(encoding="utf-8"))
 MUTANTS = {mutant["name"]: mutant for mutant in LIST["mutant"]}
+ALL_TESTS = sorted({*LIST["tests"], *(test for mutant in LIST["mutant"] for test in mutant.get("tests", ()))})
 
 
 def test_the_list_fits_the_code():
@@ -36,15 +37,15 @@ def copy(tmp_path_factory):
     shutil.copytree(ROOT / "tests" / "helpers", folder / "tests" / "helpers", ignore=ignore)
     shutil.copy(ROOT / "tests" / "__init__.py", folder / "tests" / "__init__.py")
     shutil.copy(ROOT / "pyproject.toml", folder)
-    for test in LIST["tests"]:
+    for test in ALL_TESTS:
         shutil.copy(ROOT / test, folder / test)
     return folder
 
 
-def run_tests(folder):
-    """Run the small tests in the copy, to the first failure; give exit status and the end of the output."""
+def run_tests(folder, tests):
+    """Run tests in the copy, to the first failure; give exit status and the end of the output."""
     done = subprocess.run(
-        [sys.executable, "-m", "pytest", "-x", "-q", "-p", "no:cacheprovider", *LIST["tests"]],
+        [sys.executable, "-m", "pytest", "-x", "-q", "-p", "no:cacheprovider", *tests],
         cwd=folder, capture_output=True, text=True, timeout=300, check=False,
         env={**os.environ, "NUMBA_DISABLE_JIT": "1", "PYTHONPATH": str(folder), "PYTHONDONTWRITEBYTECODE": "1"},
     )  # fmt: skip
@@ -53,7 +54,7 @@ def run_tests(folder):
 
 @pytest.mark.long
 def test_without_a_fault_all_pass(copy):
-    status, output = run_tests(copy)
+    status, output = run_tests(copy, ALL_TESTS)
     assert status == 0, output
     # it was the copy that ran
     where = subprocess.run(
@@ -71,7 +72,7 @@ def test_fault_is_noticed(copy, name):
     text = path.read_text(encoding="utf-8")
     try:
         path.write_text(text.replace(mutant["original"], mutant["replacement"]), encoding="utf-8")
-        status, output = run_tests(copy)
+        status, output = run_tests(copy, mutant.get("tests", LIST["tests"]))
     finally:
         path.write_text(text, encoding="utf-8")
     # 1: tests failed. Anything else (no tests found, a fault that does not even import) proves nothing.
