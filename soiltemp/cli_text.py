@@ -18,6 +18,7 @@ from soiltemp.problem import DEFAULT_MAX_STEP, DEFAULT_TOLERANCE
 from soiltemp.site import Periodic, Site
 from soiltemp.site_run import Weather
 from soiltemp.site_run.forcing import describe
+from soiltemp.site_run.weather import span_of
 from soiltemp.surface import PUBLISHED_FREEZING
 from soiltemp.text_table import UNITS, Units, table_lines, wrapped
 from soiltemp.winter_text import design_lines, return_lines, winter_lines
@@ -61,7 +62,7 @@ def understood(site: Site, weather: Weather, forcing: xr.DataArray | xr.Dataset,
     tolerance = units.show(study.tolerance or DEFAULT_TOLERANCE, "temperature_difference", 3)
     return [
         *lines,
-        f"Study: {_span(study.start, study.end, climate)}",
+        f"Study: {' to '.join(show_moment(moment) for moment in span_of(site, weather))}",
         *_design_text(site),
         f"  start of the run: {start}",
         f"  heat up into the base: {units.show(study.base_heat_flux, 'heat_flux', 3)}",
@@ -70,13 +71,6 @@ def understood(site: Site, weather: Weather, forcing: xr.DataArray | xr.Dataset,
         "",
         CAUTION_SHORT,
     ]
-
-
-def _span(start: np.datetime64 | None, end: np.datetime64 | None, climate: xr.DataArray) -> str:
-    """Time that is studied, of the record where none is stated."""
-    times = climate["time"].values
-    first, last = (times[0] if start is None else start), (times[-1] if end is None else end)
-    return f"{show_moment(first)} to {show_moment(last)}"
 
 
 def _design_text(site: Site) -> list[str]:

@@ -320,11 +320,15 @@ def _frost(profile: Profile, surface: _Surface, result: xr.Dataset) -> dict[str,
         return found | dict.fromkeys(names, (np.nan, f"Left out: {reason}."))
     number = wet_layers(profile)
     dry = f" Layer {number} is the last that holds water." if number < len(profile.layers) else ""
+    is_smooth = any(layer.material.freezing_curves is not None for layer in profile.layers[:number])
+    smooth = (
+        " Soil with unfrozen water enters as it is at -20 degC: its 0 degC line lies far deeper." if is_smooth else ""
+    )
     found[names[0]] = _attempt(
         lambda: stefan_of(profile, winter.index),
         f"{when} Latent heat and frozen conductivity only; to be set beside the frozen ground, which the heat stored "
         "in the ground, left out here, makes shallower. The 0 degC line runs ahead of the ice where water freezes over "
-        "a range of temperatures, and may be the deeper one.",
+        f"a range of temperatures, and may be the deeper one.{smooth}",
         dry,
     )
     if not surface.years:

@@ -109,7 +109,7 @@ def ice_depth(depths: Floats, share: Floats) -> Floats:
     Found from the deepest node of which at least half is frozen; from its upper end down, the frozen shares of the
     volumes are added up. A sharp front is placed within its element this way, where a straight line between node
     temperatures errs by up to the element. Where water freezes over a range of temperatures, ground counts as frozen
-    that holds half of its water as ice, and the ice below adds its share.
+    that holds half of its freezing water as ice, and the ice below adds its share.
 
     Parameters
     ----------

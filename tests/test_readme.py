@@ -63,6 +63,9 @@ def test_printed_numbers_are_those_of_the_run(
     assert title in shown
     assert main(["run", str(ROOT / "example_sites" / f"{site}.toml"), "--quiet"]) == 0
     said = capsys.readouterr().out
+    if site == "osier_flats":  # what an engineer must not miss
+        assert "the record may have a step" in said
+        assert "may reach the crown of the line at 1.10 m" in said
     for line in shown.splitlines():
         numbers = [float(word) for word in re.findall(r"(?<![\w-])\d+\.\d+", line)]
         label = line.split("  ")[1 if line.startswith("  ") else 0].strip() if line.strip() else ""

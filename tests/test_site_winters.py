@@ -364,3 +364,32 @@ def test_records_that_do_not_fit_are_refused(folder: pathlib.Path) -> None:
     site = made(folder, ('record = "weather.csv"', 'record = "short.csv"'))
     with pytest.raises(SoilTempError, match=r"snow"):
         forcing_of(site, read_weather(site))
+
+
+def test_deep_snow_is_asked_about(folder: pathlib.Path) -> None:
+    """Centimetres read as metres: what is not impossible is told."""
+    lines = (folder / "weather.csv").read_text().splitlines()
+    rows = [line.split(",") for line in lines[1:]]
+    text = "\n".join(f"{day},{value},{min(float(depth), 8.0)}" for day, value, depth in rows)
+    (folder / "deep.csv").write_text("date,t [degC],snow_depth [m]\n" + text + "\n")
+    old = 'record = "weather.csv"\ncolumn = "snow_depth [cm]"'
+    site = made(folder, (old, 'record = "deep.csv"\ncolumn = "snow_depth [m]"'))
+    report = read_weather(site).snow_depth.attrs["quality_report"]
+    assert "snow up to 8.0 m deep" in report
+    assert "is the unit of the file right?" in report
+    plain = read_weather(made(folder)).snow_depth.attrs["quality_report"]
+    assert "deep;" not in plain
+
+
+def test_soil_with_unfrozen_water_under_snow(folder: pathlib.Path) -> None:
+    """A clay by its specific surface: the 0 degC line runs ahead of the ice, and the closed forms say what they leave."""
+    soil = 'water_content = 0.24, freezing_curve = "anderson_tice_1972", specific_surface = "80 m^2/g" }'
+    site = made(
+        folder, ("water_content = 0.24 }", soil), ('winters = "every"', 'winters = "every"\nwater_content = "saved"')
+    )
+    found = run(site)
+    assert float(found.maximum_frost_depth) > float(found.maximum_frozen_ground_depth) + 0.1
+    assert "unfrozen water enters as it is at -20 degC" in found.stefan_frost_depth.attrs["comment"]
+    water = 1000.0 * found.unfrozen_water_content + 917.0 * found.ice_content
+    assert float(water.max()) == pytest.approx(1500.0 * 0.24, rel=1e-9)
+    assert float(water.min()) == pytest.approx(1500.0 * 0.24, rel=1e-9)

@@ -26,6 +26,9 @@ __all__ = ["check_raw"]
 
 _MOST_SWAPPED = 0.01
 
+DEEP_SNOW = 3.0
+"""Depth of snow [m] beyond which its unit is asked about (our choice): more lies on mountains only."""
+
 Floats = npt.NDArray[np.float64]
 Times = npt.NDArray[np.datetime64]
 
@@ -82,6 +85,8 @@ def check_raw(raw: RawRecord, options: ReadingOptions, sha256: str) -> tuple[xr.
     inside = slice(low - before, high - before + 1)
     times, filled, flags = times[low : high + 1], filled[inside], flags[inside]
     told = (*raw.findings, *findings, *series.findings, *stuck, *seen)
+    if options.wanted.name == "snow_depth":
+        notes += _deep_snow(times, filled)
     everything = (*notes, *assumed, *_inside(told, times[0], times[-1]), *trimmed, *gaps)
     report = QualityReport(
         source=raw.source,
@@ -219,6 +224,15 @@ def _meaning(raw: RawRecord, options: ReadingOptions, interval: float, where: st
         return "mean", (Finding("assumption", None, None, 1, text, 'state values="point" if it is a reading'),)
     text = f"values every {interval_text(interval)}, taken as readings at their time"
     return "point", (Finding("assumption", None, None, 1, text, 'state values="mean" if they are means'),)
+
+
+def _deep_snow(times: Times, depth: Floats) -> list[Finding]:
+    """Snow that is deep enough to doubt the unit of the file."""
+    deepest = int(np.argmax(depth))
+    if depth[deepest] <= DEEP_SNOW:
+        return []
+    text = f"snow up to {depth[deepest]:.1f} m deep"
+    return [Finding("note", times[deepest], times[deepest], 1, text, "kept; is the unit of the file right?")]
 
 
 def _window(

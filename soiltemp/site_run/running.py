@@ -18,7 +18,7 @@ from soiltemp.site import Line, Site, Study
 from soiltemp.site_run.forcing import describe, forcing_of
 from soiltemp.site_run.inputs import inputs_of
 from soiltemp.site_run.plan import plan_of
-from soiltemp.site_run.weather import Weather, cut_to_study, read_weather
+from soiltemp.site_run.weather import Weather, cut_to_study, read_weather, span_of
 from soiltemp.study import solve
 from soiltemp.surface import exchange_knots, forcing_knots
 from soiltemp.water import water_content
@@ -128,11 +128,11 @@ def run(site: Site, *, progress: Progress | None = None, weather: Weather | None
     result = result.merge(closed_forms_beside(site.profile, surface, result))
     result = _with_winters(site, plan.weather.temperature, surface, result)
     result = result.merge(plan.answers).merge(inputs_of(site, weather)).assign_coords(_place(site))
-    times = plan.weather.temperature["time"].values
+    first, last = span_of(site, plan.weather)
     result.attrs.update(
         site_name=site.name,
-        study_start=show_moment(study.start if study.start is not None else times[0]),
-        study_end=show_moment(study.end if study.end is not None else times[-1]),
+        study_start=show_moment(first),
+        study_end=show_moment(last),
         surface_rule=_surface_rule(site),
         quality_report=str(weather.temperature.attrs.get("quality_report", "periodic climate, no record")),
         caution="\n".join(CAUTIONS),

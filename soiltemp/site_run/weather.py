@@ -15,7 +15,7 @@ from soiltemp.constants import YEAR
 from soiltemp.errors import InputError, message
 from soiltemp.site import Periodic, Record, Site, Study
 
-__all__ = ["Weather", "cut_to_study", "read_weather"]
+__all__ = ["Weather", "cut_to_study", "read_weather", "span_of"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -98,6 +98,13 @@ def _other(record: Record, first: np.datetime64, last: np.datetime64) -> xr.Data
     series = read_series(record.path, quantity=record.quantity, **options).values
     day = np.timedelta64(1, "D")
     return series.sel(time=slice(first - day, last + 2 * day))
+
+
+def span_of(site: Site, weather: Weather) -> tuple[np.datetime64, np.datetime64]:
+    """First and last moment of a study; those that the temperature covers where the site file states none."""
+    study, series = site.study, temperature_series(weather.temperature, "temperature")
+    edges = series.start + np.round(series.seconds[[0, -1]] * 1e9).astype("timedelta64[ns]")
+    return (edges[0] if study.start is None else study.start), (edges[1] if study.end is None else study.end)
 
 
 def cut_to_study(series: xr.DataArray, study: Study) -> xr.DataArray:
