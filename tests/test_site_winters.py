@@ -382,7 +382,7 @@ def test_deep_snow_is_asked_about(folder: pathlib.Path) -> None:
 
 
 def test_soil_with_unfrozen_water_under_snow(folder: pathlib.Path) -> None:
-    """A clay by its specific surface: the 0 degC line runs ahead of the ice; the closed forms say what they leave out."""
+    """A clay by its specific surface: the 0 degC line runs ahead of the ice; closed forms say what they leave out."""
     soil = 'water_content = 0.24, freezing_curve = "anderson_tice_1972", specific_surface = "80 m^2/g" }'
     site = made(
         folder, ("water_content = 0.24 }", soil), ('winters = "every"', 'winters = "every"\nwater_content = "saved"')
