@@ -68,10 +68,10 @@ class HeatContent:
 class ApparentCapacity:
     """The same balance as it is usually written: state temperature, latent heat as heat capacity, k by temperature."""
 
-    def __init__(self, surface: Callable[[float], float]) -> None:
+    def __init__(self, surface: Callable[[float], float], depths: np.ndarray | None = None) -> None:
         self.surface = surface
         curves = MATERIAL.curves()
-        depths = grid()
+        depths = grid() if depths is None else depths
         self.knots = np.asarray(curves.knots)
         self.capacity, self.conductivity = np.asarray(curves.heat_capacity), np.asarray(curves.conductivity)
         self.h = np.diff(depths)
@@ -111,15 +111,18 @@ def lsoda(form: str, surface: str, rtol: float, atol: float, max_step: float, re
     return Timed(least, system.temperature(answer.t, answer.y.T), f"{answer.nfev} evaluations", surface)
 
 
-def lsoda_winter(depths: np.ndarray, seconds: np.ndarray, celsius: np.ndarray, repeats: int) -> float:
-    """Time of SciPy's LSODA (heat content, banded) for one winter of a record [s]; grid and knots are the solver's."""
+def lsoda_winter(
+    form: str, depths: np.ndarray, seconds: np.ndarray, celsius: np.ndarray, repeats: int
+) -> tuple[float, np.ndarray]:
+    """SciPy's LSODA (banded) for one winter of a record: time [s], and temperatures at the end of each day
+    below the surface; grid and knots are the solver's."""
     times, values = seconds.tolist(), celsius.tolist()
 
     def surface(time: float) -> float:
         i = min(bisect.bisect_right(times, time) - 1, len(times) - 2)
         return values[i] + (values[i + 1] - values[i]) * (time - times[i]) / (times[i + 1] - times[i])
 
-    system = HeatContent(surface, depths)
+    system = FORMS[form](surface, depths)
     outputs = np.arange(0.0, times[-1] + 1.0, DAY)
 
     def run():
@@ -131,7 +134,8 @@ def lsoda_winter(depths: np.ndarray, seconds: np.ndarray, celsius: np.ndarray, r
     least, answer = fastest(run, repeats)
     if not answer.success:
         raise RuntimeError(answer.message)
-    return least
+    states = answer.y.T
+    return least, np.interp(states, system.heat, system.knots) if form == "heat content" else states
 
 
 def cvode(form: str, surface: str, rtol: float, atol: float, max_step: float, repeats: int = 1) -> Timed:
