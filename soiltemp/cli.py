@@ -228,7 +228,8 @@ def _run(options: argparse.Namespace, ending: _Ending) -> None:
         weather = read_weather(site)
     if options.compare_snow:
         snow_of(site)
-    forcing_of(site, plan_of(site, weather).weather)
+    if site.surface.exchange is None:  # what it costs little to find out before the solver is compiled
+        forcing_of(site, plan_of(site, weather).weather)
     _prepare(None if options.quiet else sys.stderr)
     if not options.quiet:
         ending.progress = _Progress(sys.stderr)

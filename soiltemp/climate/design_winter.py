@@ -6,7 +6,6 @@ from typing import Any
 
 import numpy as np
 import xarray as xr
-from scipy import optimize
 
 from soiltemp.climate.degree_days import accumulate, largest_fall
 from soiltemp.climate.design import Definition, DesignIndex, freezing_indices
@@ -161,6 +160,8 @@ def _factor(reached: Any, wanted: float, coldest: float, label: str) -> float:
         raise InputError(message(f"winter {label}, freezing index wanted", found, allowed, remedy))
     if least == wanted:
         return low
+    from scipy import optimize  # costs time to import, and only a scaled winter needs it
+
     root = optimize.brentq(lambda factor: reached(factor) - wanted, low, high, xtol=1e-14, rtol=1e-14)
     return float(root)
 

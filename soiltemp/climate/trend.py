@@ -7,7 +7,6 @@ from typing import Any
 
 import numpy as np
 import xarray as xr
-from scipy import stats
 
 from soiltemp.climate.moments import show_value
 from soiltemp.climate.series import temperature_series
@@ -122,6 +121,8 @@ def warming_trend(values: xr.Dataset | xr.DataArray, *, confidence: float = 0.95
         found = f"{years.size} values{doubled}"
         remedy = "use a longer record, or means of years"
         raise InputError(message("values", found, f"one a year of at least {FEWEST_YEARS} years", remedy))
+    from scipy import stats  # takes a second to import, and a shift does not need it
+
     slope, middle, low, high = stats.theilslopes(y, years, confidence)
     # of values that are all the same the rank correlation is not defined: no trend
     tau, p_value = stats.kendalltau(years, y) if np.ptp(y) > 0.0 else (0.0, 1.0)
