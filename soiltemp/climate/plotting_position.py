@@ -16,7 +16,7 @@ from soiltemp.climate.moments import show_value
 from soiltemp.errors import InputError, message
 from soiltemp.glossary import attributes
 
-__all__ = ["PlottingPosition", "plotting_positions", "probability_plot"]
+__all__ = ["PlottingPosition", "plotting_positions", "probability_plot", "reduced_variate"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -107,3 +107,29 @@ def probability_plot(values: Any, *, positions: str = "gringorten") -> xr.Datase
         result = result.assign_coords(winter_label=("rank", values["winter_label"].values[order]))
     result.attrs = {"positions": positions, "source": rules[positions].source}
     return result
+
+
+def reduced_variate(return_period: Any) -> Any:
+    """Reduced variate of the Gumbel distribution at a return period: where it stands on a probability plot.
+
+    Parameters
+    ----------
+    return_period : float or array
+        Mean numbers of winters between exceedances, above 1.
+
+    Returns
+    -------
+    float or numpy.ndarray
+        ``-ln(-ln(1 - 1/n))`` [1].
+
+    References
+    ----------
+    E. J. Gumbel, Statistics of Extremes, Columbia 1958 (value from memory).
+
+    Examples
+    --------
+    >>> round(reduced_variate(50.0), 4)
+    3.9019
+    """
+    found = -np.log(-np.log1p(-1.0 / np.asarray(return_period, dtype=np.float64)))
+    return float(found) if found.ndim == 0 else found

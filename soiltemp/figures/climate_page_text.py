@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from soiltemp.figures.page_text import HEAD
+
 __all__ = ["CLIMATE_STYLE", "CLIMATE_TEMPLATE"]
 
 CLIMATE_STYLE = """
@@ -31,23 +33,9 @@ code { font-size: 13px; background: var(--pale); padding: 2px 6px; overflow-wrap
 }
 """
 
-CLIMATE_TEMPLATE = """<!DOCTYPE html>
-<html lang="en">
-<head>
-<meta charset="utf-8">
-<meta name="viewport" content="width=device-width, initial-scale=1">
-<title>{{ title }}</title>
-{{ bokeh_css | safe }}
-<style>{{ style | safe }}
-.picture { width: {{ picture_width }}px; }</style>
-<script>
-// pictures are drawn with two pixels or more for each of the screen's, so that they print sharp
-Object.defineProperty(window, "devicePixelRatio", { value: Math.max(2, window.devicePixelRatio) });
-</script>
-</head>
-<body>
-<main>
-<header>
+CLIMATE_TEMPLATE = (
+    HEAD
+    + """<header>
 <h1>Winters of {{ source }}</h1>
 <p>Freezing indices, design values and climate of the record, {{ period }}</p>
 </header>
@@ -170,3 +158,4 @@ Object.defineProperty(window, "devicePixelRatio", { value: Math.max(2, window.de
 </body>
 </html>
 """
+)

@@ -10,6 +10,7 @@ from bokeh.core.properties import value
 from bokeh.plotting import figure
 
 from soiltemp.climate import fit_gev, fit_gumbel, probability_plot, return_value
+from soiltemp.climate.plotting_position import reduced_variate
 from soiltemp.errors import InputError, message
 from soiltemp.figures.display import Display, display
 from soiltemp.figures.drawing import (
@@ -95,8 +96,8 @@ def make_frost_return(
     drawn = sheet.figure
     drawn.yaxis.axis_label = f"Depth below ground surface [{shown.depth_unit}]"
     drawn.xaxis.axis_label = "Return period [winters], on the scale of the Gumbel distribution"
-    drawn.xaxis.ticker = bm.FixedTicker(ticks=[_variate(period) for period in TICKS])
-    drawn.xaxis.major_label_overrides = {_variate(period): f"{period:g}" for period in TICKS}
+    drawn.xaxis.ticker = bm.FixedTicker(ticks=[reduced_variate(period) for period in TICKS])
+    drawn.xaxis.major_label_overrides = {reduced_variate(period): f"{period:g}" for period in TICKS}
     drawn.xgrid.ticker = drawn.xaxis[0].ticker
     drawn.min_border_left = 66
     _draw(sheet)
@@ -106,12 +107,6 @@ def make_frost_return(
         assign(drawn.ygrid[0], bounds=(0.0, float(drawn.y_range.start)))
 
     return drawn, update
-
-
-def _variate(period: Any) -> Any:
-    """Reduced variate of the Gumbel distribution at a return period: ``-ln(-ln(1 - 1 / T))``."""
-    found = -np.log(-np.log1p(-1.0 / np.asarray(period, dtype=np.float64)))
-    return float(found) if found.ndim == 0 else found
 
 
 def _picture(result: xr.Dataset, line: BuriedLine | None, shown: Display) -> Picture:
@@ -134,13 +129,13 @@ def _picture(result: xr.Dataset, line: BuriedLine | None, shown: Display) -> Pic
         }
     }
     periods = np.asarray(result["return_period"], dtype=np.float64)
-    first = min(float(points["reduced_variate"][0]), _variate(TICKS[0]))
-    last = max(float(points["reduced_variate"][-1]), float(_variate(periods.max())))
+    first = min(float(points["reduced_variate"][0]), reduced_variate(TICKS[0]))
+    last = max(float(points["reduced_variate"][-1]), reduced_variate(periods.max()))
     for name, (_, fit, _, _, _) in FITS.items():
         sources[name] = _values(result, name, periods, shown)
         sources[f"{name}_curve"] = {"variate": packed([]), "depth": packed([])}
         if f"frost_depth_{name}" in result:
-            variates = np.linspace(first, float(_variate(periods.max())), CURVE)
+            variates = np.linspace(first, reduced_variate(periods.max()), CURVE)
             fitted = fit(depth[whole].tolist())
             between = [return_value(fitted, float(one)) for one in 1.0 / -np.expm1(-np.exp(-variates))]
             sources[f"{name}_curve"] = {"variate": packed(variates), "depth": packed(shown.depth(between))}
@@ -177,7 +172,7 @@ def _values(result: xr.Dataset, name: str, periods: Any, shown: Display) -> Colu
     found = {key: np.asarray(result[f"frost_depth_{name}{end}"], dtype=np.float64) for key, end in ends.items()}
     columns: Columns = {key: packed(shown.depth(values)) for key, values in found.items()}
     return columns | {
-        "variate": packed(_variate(periods)),
+        "variate": packed(reduced_variate(periods)),
         "period": [f"{period:g} winters" for period in periods],
         "text": [shown.depth_text(one) for one in found["depth"].tolist()],
         "interval": [

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-__all__ = ["STYLE", "TEMPLATE"]
+__all__ = ["HEAD", "STYLE", "TEMPLATE"]
 
 STYLE = """
 :root { --ink: #1d2730; --quiet: #525d66; --rule: #cfd5d9; --soil: #6b4f2a; --pale: #f5f1ea; --ice: #e9f3fa; }
@@ -70,7 +70,7 @@ summary { cursor: pointer; }
 }
 """
 
-TEMPLATE = """<!DOCTYPE html>
+HEAD = """<!DOCTYPE html>
 <html lang="en">
 <head>
 <meta charset="utf-8">
@@ -86,7 +86,12 @@ Object.defineProperty(window, "devicePixelRatio", { value: Math.max(2, window.de
 </head>
 <body>
 <main>
-<header>
+"""
+"""How every page begins: it asks for `title`, `bokeh_css`, `style` and `picture_width`."""
+
+TEMPLATE = (
+    HEAD
+    + """<header>
 <h1>{{ title }}</h1>
 <p>Ground temperature and frost depth, {{ period }}</p>
 </header>
@@ -246,3 +251,4 @@ weather and the surface are known is another matter and mostly the larger doubt:
 </body>
 </html>
 """
+)

@@ -13,6 +13,7 @@ from soiltemp.climate import DesignIndex, ExtremeFit, fit_gev, fit_gumbel, freez
 from soiltemp.climate.bootstrap import return_values
 from soiltemp.climate.design import Definition
 from soiltemp.climate.extremes import FEWEST_WINTERS, LARGEST_RETURN_PERIOD
+from soiltemp.climate.plotting_position import reduced_variate
 from soiltemp.constants import DAY
 from soiltemp.errors import InputError, message
 from soiltemp.figures.display import Display, display
@@ -78,8 +79,8 @@ def make_probability_plot(
     drawn.yaxis.axis_label = f"Freezing index of the {of} [{shown.difference_unit} days]"
     drawn.xaxis.axis_label = "Return period [winters], on the scale of the Gumbel distribution"
     shown_periods = [period for period in RETURN_PERIODS if period <= longest]
-    drawn.xaxis.ticker = bm.FixedTicker(ticks=[float(_variate(period)) for period in shown_periods])
-    drawn.xaxis.major_label_overrides = {float(_variate(period)): f"{period:g}" for period in shown_periods}
+    drawn.xaxis.ticker = bm.FixedTicker(ticks=[reduced_variate(period) for period in shown_periods])
+    drawn.xaxis.major_label_overrides = {reduced_variate(period): f"{period:g}" for period in shown_periods}
     drawn.xgrid.ticker = drawn.xaxis[0].ticker
     band = drawn.varea("variate", "low", "high", source=sources["band"], fill_color=SPREAD, fill_alpha=0.7)
     items: list[tuple[str, str, list[Any]]] = []
@@ -107,11 +108,6 @@ def make_probability_plot(
     return drawn, update
 
 
-def _variate(period: Any) -> Any:
-    """Reduced variate of the Gumbel distribution at a return period."""
-    return -np.log(-np.log1p(-1.0 / np.asarray(period, dtype=np.float64)))
-
-
 def _points(
     winters: xr.Dataset,
     designs: tuple[DesignIndex, ...],
@@ -133,8 +129,8 @@ def _points(
             "text": [str(label) for label in points["winter_label"].values],
         }
     }
-    first = min(float(points["reduced_variate"][0]), float(_variate(RETURN_PERIODS[0]))) - 0.1
-    last = float(_variate(min(longest, LARGEST_RETURN_PERIOD * values.size)))
+    first = min(float(points["reduced_variate"][0]), reduced_variate(RETURN_PERIODS[0])) - 0.1
+    last = reduced_variate(min(longest, LARGEST_RETURN_PERIOD * values.size))
     periods = 1.0 / -np.expm1(-np.exp(-np.linspace(first, last, 120)))
     frosty = int(np.sum(values.values > 0.0)) if np.ptp(values.values) > 0.0 else 0
     fits: dict[str, ExtremeFit] = {}
@@ -148,7 +144,7 @@ def _points(
             sources["band"] = sources[name] if found is not None else _curve(None, periods, shown)
     chosen = [design for design in designs if design.return_period is not None]
     sources["designs"] = {
-        "variate": packed([float(_variate(design.return_period)) for design in chosen]),
+        "variate": packed([reduced_variate(design.return_period) for design in chosen]),
         "index": packed([float(shown.difference(design.value / DAY)) for design in chosen]),
         "period": packed([design.return_period for design in chosen]),
         "text": [design.practice.long_name for design in chosen],
@@ -159,7 +155,7 @@ def _points(
     few = "" if fits else "; too few for a fit"
     return Picture(
         sources=sources,
-        x=(first, float(_variate(longest)) + 0.1),
+        x=(first, reduced_variate(longest) + 0.1),
         y=nice_limits(0.0, high, index_step(high)),
         subtitle=f"{count} whole winter{'' if count == 1 else 's'}; {DEFINITIONS[definition]}; positions by "
         f"{positions.capitalize()}{few}",
@@ -171,4 +167,4 @@ def _curve(found: xr.Dataset | None, periods: Any, shown: Display) -> Columns:
     if found is None:
         return {name: packed([]) for name in ("variate", *names)}
     columns = {name: packed(shown.difference(found[source].values / DAY)) for name, source in names.items()}
-    return {"variate": packed(_variate(periods))} | columns
+    return {"variate": packed(reduced_variate(periods))} | columns
