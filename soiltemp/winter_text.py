@@ -23,6 +23,8 @@ def winter_lines(result: xr.Dataset, units: Units) -> list[str]:
     units : Units
         Units of the text.
     """
+    if "winters_left_out" in result.attrs:
+        return [*wrapped(f"Winters are left out: {result.attrs['winters_left_out']}", ""), ""]
     if "winter_frost_depth" not in result:
         return []
     index, length = units.shown["freezing_index"][0], units.shown["length"][0]

@@ -14,6 +14,8 @@ from soiltemp.errors import InputError, SoilTempError
 from soiltemp.netcdf import open_result, save
 from soiltemp.site import Site, parse_site
 from soiltemp.site_run import compare_snow, forcing_of, read_weather, run, site_from_result
+from soiltemp.text_table import UNITS, Units
+from soiltemp.winter_text import winter_lines
 from tests.helpers.cf import cfchecks_messages, compliance_messages
 from tests.test_site_run import same_bits
 
@@ -364,6 +366,22 @@ def test_records_that_do_not_fit_are_refused(folder: pathlib.Path) -> None:
     site = made(folder, ('record = "weather.csv"', 'record = "short.csv"'))
     with pytest.raises(SoilTempError, match=r"snow"):
         forcing_of(site, read_weather(site))
+
+
+def test_climate_without_winters_says_so(folder: pathlib.Path) -> None:
+    """The same temperature all year: no frost year to split at, and the text gives the reason."""
+    wave = 'periodic = { mean = "4 degC", amplitude = "0 K", coldest = "01-20" }'
+    site = made(
+        folder,
+        ('air_temperature = "weather.csv"\ncolumn = "t [degC]"', wave),
+        (SNOW, ""),
+        ('winters = "every"\n\n[design]\npractice = "coldest_in_10"', "start = 2001-07-01\nend = 2002-07-01"),
+    )
+    found = run(site)
+    assert "winter_frost_depth" not in found
+    assert found.attrs["winters_left_out"]
+    text = " ".join(winter_lines(found, Units(UNITS["si"])))
+    assert text.startswith("Winters are left out: ")
 
 
 def test_deep_snow_is_asked_about(folder: pathlib.Path) -> None:

@@ -189,8 +189,8 @@ def _with_winters(site: Site, air: xr.DataArray, surface: xr.DataArray, result: 
     inside = air.isel(time=air["time"].values >= times[0])
     try:
         table = frost_by_winter(site.profile, inside, surface, result)
-    except InputError:  # a climate without an annual wave, or one too short to show it
-        return result
+    except InputError as error:  # a climate without an annual wave, or one too short to show it
+        return result.assign_attrs(winters_left_out=str(error))
     return result.merge(table).merge(frost_return_values(table))
 
 
